@@ -1,0 +1,1 @@
+"""The balances and the questions asked of them."""

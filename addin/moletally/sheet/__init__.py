@@ -1,0 +1,1 @@
+"""Ranges in, cells out: table readers, `want`, errors with reasons, the one table of worksheet functions."""
