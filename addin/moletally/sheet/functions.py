@@ -49,10 +49,13 @@ FEED = Argument("feed", "Feed table: species and their feed; leave empty if the 
 REACTOR = Argument(
     "reactor", "Residence time, a range of them, a block of label | value | unit, or a table of cases"
 )
-OPTIONAL_REACTOR = Argument("reactor", "Block with the temperature, where a rate law needs one", optional=True)
-WANT = Argument("want", "What to return, such as Mono/Di or 100*conversion(Ox); default: outlet of each species",
-                optional=True)  # fmt: skip
-CONSTANTS = Argument("constants", "Constants shared by the rate laws: name, value, unit, E or dH, T ref", True)
+OPTIONAL_REACTOR = Argument(
+    "reactor", "Block with the temperature, where a rate law needs one", optional=True
+)
+WANT = Argument("want", "What to return, such as Mono/Di or 100*conversion(Ox); default: every species", True)
+CONSTANTS = Argument(
+    "constants", "Constants shared by the rate laws: name, value, unit, E or dH, T ref", True
+)
 POINTS = Argument("points", "Number of rows below the header, default 51", optional=True)
 AT = Argument("at", "Feed table with the concentrations at which the rates are wanted")
 
@@ -72,7 +75,7 @@ FUNCTIONS: dict[str, Function] = {
         Function("MOLE_RATES", "Rates of the reactions and of the species at given concentrations.",
                  (REACTIONS, AT, OPTIONAL_REACTOR, CONSTANTS),
                  "A header row, then a row per reaction and a row per species: name, rate", reaction_rates),
-        Function("MOLE_AUDIT", "What was read, assumed, checked and found doubtful in a call; the verdict first.",
+        Function("MOLE_AUDIT", "What was read, assumed, checked and found doubtful in a call, verdict first.",
                  (Argument("function", 'Which function to audit: "CSTR", "PFR", "PROFILE" or "RATES"'),
                   Argument("arguments", "The arguments of that function, in its order", repeats=True)),
                  "Rows of level (stop, doubt, note, fine), where, what and what to do", audit),

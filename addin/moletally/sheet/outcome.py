@@ -37,9 +37,7 @@ def outcome(rows: Sequence[Sequence[Cell | SheetError]]) -> Outcome:
         problems.append(Problem(row, column, value.code, value.reason))
         return ExcelError(value.code)
 
-    block = tuple(
-        tuple(shown(value, i, j) for j, value in enumerate(row)) for i, row in enumerate(rows)
-    )
+    block = tuple(tuple(shown(value, i, j) for j, value in enumerate(row)) for i, row in enumerate(rows))
     return Outcome(block, tuple(problems))
 
 

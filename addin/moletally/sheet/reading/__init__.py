@@ -1,0 +1,1 @@
+"""Table readers: ranges become the records of `chemistry.tables`; every complaint names its cell."""

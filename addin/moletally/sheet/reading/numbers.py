@@ -1,0 +1,97 @@
+"""One cell as a number or a name; what looks like one but is not is an error that says what it is."""
+
+import datetime as dt
+import re
+
+from moletally.chemistry.errors import InputError, Place, SheetError
+from moletally.sheet.cells import Cell, ExcelError
+
+__all__ = ["CellFault", "is_blank", "read_name", "read_number"]
+
+PLAIN = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?", re.ASCII)
+DECIMAL_COMMA = re.compile(r"[+-]?[\d.\s]*\d,\d+([eE][+-]?\d+)?|[+-]?\d{1,3}(,\d{3})+(\.\d*)?", re.ASCII)
+OTHER_MINUS = "−–—‐‑"
+
+
+class CellFault(SheetError):
+    """An error value in an input cell: it is passed on as it stands."""
+
+    def __init__(self, what: str, place: Place | None = None, code: str = "#VALUE!") -> None:
+        super().__init__(what, place)
+        self.args = (what, place, code)
+        self.code = code
+
+    def at(self, place: Place) -> "CellFault":
+        """The same fault with its place."""
+        return self if self.place else CellFault(self.what, place, self.code)
+
+
+def is_blank(cell: Cell) -> bool:
+    """True for an empty cell and for one that shows nothing: `=""`, blanks."""
+    return cell is None or (isinstance(cell, str) and not cell.strip())
+
+
+def refuse_odd(cell: Cell, place: Place, what: str) -> None:
+    """Raise for error values, dates and booleans, where `what` ("a number", "a name") belongs."""
+    if isinstance(cell, ExcelError):
+        raise CellFault(f"the cell holds {cell.code}: mend it there", place, cell.code)
+    if isinstance(cell, bool):
+        raise InputError(f"the cell holds {'TRUE' if cell else 'FALSE'}, where {what} belongs", place)
+    if isinstance(cell, dt.date):
+        raise InputError(
+            f"the cell contains a date ({cell:%Y-%m-%d}), where {what} belongs: format it as text"
+            " and type it again",
+            place,
+        )
+
+
+def read_number(cell: Cell, place: Place) -> float:
+    """A finite number; texts count where they can mean one number only.
+
+    Raises
+    ------
+    CellFault
+        The cell holds an error value.
+    InputError
+        The cell is blank or holds a text, date or boolean; the message says which and what to do.
+    """
+    if isinstance(cell, float | int) and not isinstance(cell, bool):
+        if cell - cell == 0:
+            return float(cell)
+        raise InputError("the number is not finite", place)
+    refuse_odd(cell, place, "a number")
+    if cell is None:
+        raise InputError("the cell is blank, where a number belongs (write 0 if zero is meant)", place)
+    assert isinstance(cell, str)
+    text = cell.strip()
+    if not text:
+        raise InputError('the cell holds an empty text (""), where a number belongs', place)
+    if PLAIN.fullmatch(text):
+        return read_number(float(text), place)
+    raise InputError(_why_not(cell, text), place)
+
+
+def _why_not(cell: str, text: str) -> str:
+    if DECIMAL_COMMA.fullmatch(text):
+        return f"{cell!r} is a text, not a number: which is its decimal mark? Type it as a number"
+    if text[0] in OTHER_MINUS and PLAIN.fullmatch(text[1:]):
+        return f"{cell!r} is a text: its minus is another character. Type it again with a plain -"
+    return f"{cell!r} is a text, where a number belongs"
+
+
+def read_name(cell: Cell, place: Place) -> str:
+    """A name: a text without the blanks around it.
+
+    Raises
+    ------
+    CellFault, InputError
+        As for `read_number`; a number is no name.
+    """
+    refuse_odd(cell, place, "a name")
+    if isinstance(cell, float | int):
+        raise InputError(
+            f"the cell holds the number {cell:g}, where a name belongs: type it as a text", place
+        )
+    if cell is None or not (isinstance(cell, str) and cell.strip()):
+        raise InputError("the cell is blank, where a name belongs", place)
+    return " ".join(cell.split())

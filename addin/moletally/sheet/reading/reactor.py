@@ -1,0 +1,210 @@
+"""The reactor argument: a number, a range of numbers, a block of labels, or a table of cases."""
+
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass, field
+from math import nan
+
+from moletally.chemistry.errors import InputError, Place, SheetError, near_miss
+from moletally.chemistry.tables import Quantity
+from moletally.sheet.cells import Argument, Block, Cell
+from moletally.sheet.reading.grid import Grid, as_block, fold, is_empty, split_header, text_of, trimmed
+from moletally.sheet.reading.labels import LABELS, Kind, canonical
+from moletally.sheet.reading.numbers import is_blank, read_number, refuse_odd
+
+__all__ = ["CaseColumn", "ReactorInput", "read_reactor"]
+
+TABLE = "Reactor"
+HEADERS = {"label", "value", "unit", "quantity", "name"}
+
+
+@dataclass(frozen=True, slots=True)
+class CaseColumn:
+    """A label that has a value per case."""
+
+    label: str
+    unit: str | None
+    place: Place
+
+
+@dataclass(frozen=True, slots=True)
+class ReactorInput:
+    """What the reactor argument says.
+
+    fixed : label -> quantity or word, the same for all cases
+    columns, rows : labels that vary, and their values per case (nan where a cell is empty), or the fault
+        that makes a case an error
+    shape : of the answer to one want, where the argument is a range of residence times
+    bare : True where the values are residence times without a label, in the time unit of the constants
+    single : True where there is one case that is not a row of a table
+    """
+
+    fixed: dict[str, Quantity | str] = field(default_factory=dict)
+    columns: tuple[CaseColumn, ...] = ()
+    rows: tuple[tuple[float, ...] | SheetError, ...] = ((),)
+    shape: tuple[int, int] | None = None
+    bare: bool = False
+    single: bool = True
+
+
+Known = Callable[[str], bool]
+
+
+def read_reactor(argument: Argument, known: Known, names: Iterable[str]) -> ReactorInput:
+    """Read the reactor argument.
+
+    known : says whether a text is the label of a constant, `k(2)` or `in(A)` of this call
+    names : those labels, for hints
+    """
+    if is_empty(argument):
+        what = "is missing" if not isinstance(argument, tuple) else "is blank"
+        raise InputError(
+            f"the reactor {what}: give a residence time, a range of them, a block of label | value | unit,"
+            " or a table of cases",
+            Place(TABLE),
+        )
+    block = as_block(argument, Place(TABLE))
+    if len(block) == 1 and len(block[0]) == 1:
+        place = Place(TABLE, 1, 1) if isinstance(argument, tuple) else Place(TABLE)
+        return _bare(((read_number(block[0][0], place),),), None)
+    cells = trimmed(block)
+    if not any(_is_text(cell) for row in cells for cell in row):
+        return _range(block)
+    return _labelled(Grid(TABLE, cells), known, tuple(names))
+
+
+def _is_text(cell: Cell) -> bool:
+    return isinstance(cell, str) and bool(cell.strip())
+
+
+def _bare(rows: tuple[tuple[float, ...] | SheetError, ...], shape: tuple[int, int] | None) -> ReactorInput:
+    column = CaseColumn("Residence time", None, Place(TABLE))
+    return ReactorInput(columns=(column,), rows=rows, shape=shape, bare=True, single=shape is None)
+
+
+def _range(block: Block) -> ReactorInput:
+    """A case for every cell of the range, in reading order; its shape is kept."""
+    rows = tuple(
+        _guarded(lambda cell=cell, i=i, j=j: (read_number(cell, Place(TABLE, i, j)),))  # type: ignore[misc]
+        for i, row in enumerate(block, start=1)
+        for j, cell in enumerate(row, start=1)
+    )
+    return _bare(rows, (len(block), len(block[0])))
+
+
+def _guarded(read: Callable[[], tuple[float, ...]]) -> tuple[float, ...] | SheetError:
+    """The values of a case, or the fault in it: a bad case is no other case's business."""
+    try:
+        return read()
+    except SheetError as error:
+        return error
+
+
+def _labelled(grid: Grid, known: Known, names: tuple[str, ...]) -> ReactorInput:
+    blank = [i for i, row in enumerate(grid.cells) if all(is_blank(cell) for cell in row)]
+    if len(blank) > 1:
+        raise InputError("more than one blank row in the reactor table", grid.place(blank[1], 0, ""))
+    if blank:
+        cut = blank[0]
+        fixed = _block(grid, 0, cut, known, names)
+        return _cases(grid, cut + 1, fixed, known, names)
+    if _starts_cases(grid):
+        return _cases(grid, 0, {}, known, names)
+    return ReactorInput(fixed=_block(grid, 0, len(grid.cells), known, names))
+
+
+def _starts_cases(grid: Grid) -> bool:
+    """A header row of texts over rows that do not begin with one."""
+    if len(grid.cells) < 2:
+        return False
+    head = all(is_blank(cell) or _is_text(cell) for cell in grid.cells[0])
+    body = any(not is_blank(cell) for cell in grid.cells[1])
+    return head and body and not any(_is_text(row[0]) and not _numeric(row[0]) for row in grid.cells[1:])
+
+
+def _numeric(cell: Cell) -> bool:
+    """True for a text that begins like a number: a bad number in a case, not a label."""
+    return isinstance(cell, str) and cell.strip()[:1] in set("0123456789.,+-−–≈~<>")
+
+
+def _label(text: str, known: Known, names: tuple[str, ...], place: Place) -> tuple[str, str | None]:
+    """Canonical label and unit of a text."""
+    whole = " ".join(text.split())
+    if known(whole):
+        return whole, None
+    name, unit = split_header(whole)
+    if known(name):
+        return name, unit
+    if fold(name) in LABELS:
+        return canonical(name), unit
+    hint = near_miss(name, [*(label.name for label in LABELS.values()), *names])
+    raise InputError(f"unknown label {name!r}. {hint}", place)
+
+
+def _block(
+    grid: Grid, first: int, last: int, known: Known, names: tuple[str, ...]
+) -> dict[str, Quantity | str]:
+    """Rows of label | value | unit, in any order; a label with an empty value is as if it were not there."""
+    fixed: dict[str, Quantity | str] = {}
+    for i in range(first, last):
+        cells = grid.cells[i]
+        place = grid.place(i, 0, "")
+        refuse_odd(cells[0], place, "a label")
+        if not _is_text(cells[0]):
+            raise InputError("a label is missing at the start of the row", place)
+        if i == first and {fold(c) for c in cells if isinstance(c, str) and c.strip()} <= HEADERS:
+            continue
+        label, unit = _label(str(cells[0]), known, names, place)
+        value_place = grid.place(i, 1, label)
+        if len(cells) < 2 or is_blank(cells[1]):
+            continue
+        if label in fixed:
+            raise InputError(f"the label {label!r} stands twice", place)
+        if len(cells) > 3 and any(not is_blank(cell) for cell in cells[3:]):
+            raise InputError("more than label, value and unit stand in the row", grid.place(i, 3, label))
+        own = text_of(cells[2], grid.place(i, 2, label)) if len(cells) > 2 else None
+        if own and unit and own != unit:
+            raise InputError(f"two units, {unit!r} and {own!r}", place)
+        fixed[label] = _value(label, cells[1], own or unit, value_place)
+    return fixed
+
+
+def _value(label: str, cell: Cell, unit: str | None, place: Place) -> Quantity | str:
+    if fold(label) in LABELS and LABELS[fold(label)].kind is Kind.TEXT:
+        text = text_of(cell, place)
+        assert text is not None
+        return text
+    return Quantity(read_number(cell, place), unit, place)
+
+
+def _cases(grid: Grid, head: int, fixed: dict[str, Quantity | str], known: Known,
+           names: tuple[str, ...]) -> ReactorInput:  # fmt: skip
+    """A header row of labels and a row per case."""
+    if head >= len(grid.cells):
+        raise InputError("the table of cases has no header row", grid.place(head - 1, 0, ""))
+    columns: list[tuple[int, CaseColumn]] = []
+    for j, cell in enumerate(grid.cells[head]):
+        place = grid.place(head, j, "")
+        if is_blank(cell):
+            if any(not is_blank(row[j]) for row in grid.cells[head + 1 :]):
+                raise InputError("the column of cases has no header", place)
+            continue
+        refuse_odd(cell, place, "a label")
+        label, unit = _label(str(cell), known, names, place)
+        if fold(label) in LABELS and LABELS[fold(label)].kind is Kind.TEXT:
+            raise InputError(f"{label} can't change from case to case: give it in the block above", place)
+        if label in fixed or any(label == other.label for _, other in columns):
+            raise InputError(f"the label {label!r} stands twice", place)
+        columns.append((j, CaseColumn(label, unit, grid.place(head, j, label))))
+    rows = tuple(_guarded(lambda i=i: _case(grid, i, columns))  # type: ignore[misc]
+                 for i in range(head + 1, len(grid.cells)))  # fmt: skip
+    if not rows:
+        raise InputError("the table of cases has a header row but no case", grid.place(head, 0, ""))
+    return ReactorInput(fixed, tuple(column for _, column in columns), rows, single=False)
+
+
+def _case(grid: Grid, row: int, columns: list[tuple[int, CaseColumn]]) -> tuple[float, ...]:
+    cells = grid.cells[row]
+    return tuple(
+        nan if is_blank(cells[j]) else read_number(cells[j], grid.place(row, j, column.label))
+        for j, column in columns
+    )

@@ -1,0 +1,188 @@
+"""`want`: what a cell asks of an outlet, such as `Mono/Di` or `flow(Mono) [kmol/h]`.
+
+Without a unit of its own, every name and function stands for the number that would be shown for it
+alone, so an expression reads like the cells beside it. With a unit, everything is evaluated in SI and
+with its dimension, and converted.
+"""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.chemistry.errors import InputError, Place, SheetError, Undefined
+from moletally.chemistry.evaluate import evaluate
+from moletally.chemistry.expression import (
+    MATHS,
+    Binary,
+    Call,
+    Name,
+    Node,
+    Num,
+    Unary,
+    check_reserved,
+    fold,
+    parse,
+    split_unit,
+)
+from moletally.chemistry.units import Dims, Unit, parse_unit
+from moletally.sheet.leaves import ONE, WANT, Leaf, call_leaf, name_leaf
+from moletally.sheet.state import State
+
+__all__ = ["Answer", "answer"]
+
+Floats = NDArray[np.float64]
+MATHS_NAMES = frozenset(f.name for f in MATHS)
+
+
+@dataclass(frozen=True)
+class Answer:
+    """Values of one want, shape (M,), their unit, and the fault of those that are not finite."""
+
+    values: Floats
+    unit: str
+    fault: SheetError | None = None
+
+    def cell(self, row: int) -> float | SheetError:
+        """The value of one state, or why there is none."""
+        value = float(self.values[row])
+        return value if np.isfinite(value) or self.fault is None else self.fault
+
+
+@lru_cache(maxsize=4096)
+def _read(text: str, species: tuple[str, ...]) -> tuple[Node, Unit | None]:
+    expression, unit = split_unit(text)
+    tree = parse(expression, WANT)
+    check_reserved(expression, tree, species)
+    return tree, None if unit is None else parse_unit(unit)
+
+
+def answer(text: str, state: State, place: Place) -> Answer:
+    """Values of a want in M states.
+
+    Raises
+    ------
+    InputError
+        Where the text can't be read, or asks for what these states do not have.
+    """
+    try:
+        tree, unit = _read(text, state.names)
+        with np.errstate(all="ignore"):
+            return _plain(tree, state) if unit is None else _converted(tree, unit, state)
+    except SheetError as error:
+        raise error.at(place) from None
+
+
+def _plain(tree: Node, state: State) -> Answer:
+    single = _single(tree, state)
+    if single is not None:
+        return _finish(single.shown, single.unit.text, [single], state)
+    leaves = _Leaves(state.in_common_units())
+    values = evaluate(tree, lambda n: leaves.name(n).shown, lambda n: leaves.call(n).shown)
+    return _finish(values, "", leaves.met, state)
+
+
+def _converted(tree: Node, unit: Unit, state: State) -> Answer:
+    single = _single(tree, state)
+    if single is not None and single.fits(unit):
+        return _finish(single.within(unit), unit.text, [single], state)
+    leaves = _Leaves(state.in_common_units())
+    dims = _dimension(tree, leaves)
+    if not np.allclose(dims, unit.dims, rtol=0, atol=1e-9):
+        raise InputError(
+            f"the result is not a quantity that {unit.text} measures: leave the unit out or mend it"
+        )
+    values = evaluate(tree, lambda n: leaves.name(n).si, lambda n: leaves.call(n).si)
+    return _finish(unit.from_si(values), unit.text, leaves.met, state)
+
+
+def _finish(values: object, unit: str, leaves: list[Leaf], state: State) -> Answer:
+    """Values as an array, with the reason for those that are not finite."""
+    array = np.broadcast_to(np.asarray(values, dtype=np.float64), (len(state),))
+    solved = np.isfinite(state.concentration).all(axis=1)
+    if np.isfinite(array[solved]).all():
+        return Answer(array, unit)
+    why = next((leaf.undefined for leaf in leaves if not np.isfinite(leaf.si[solved]).all()), "")
+    return Answer(
+        array, unit, Undefined(why or "a division by zero, or a root or logarithm that does not exist")
+    )
+
+
+class _Leaves:
+    """The leaves of one expression as they are met."""
+
+    def __init__(self, state: State) -> None:
+        self.state = state
+        self.met: list[Leaf] = []
+
+    def name(self, node: Name) -> Leaf:
+        return self._keep(name_leaf(self.state, node))
+
+    def call(self, node: Call) -> Leaf:
+        return self._keep(call_leaf(self.state, node))
+
+    def _keep(self, leaf: Leaf) -> Leaf:
+        self.met.append(leaf)
+        return leaf
+
+
+def _single(tree: Node, state: State) -> Leaf | None:
+    """The leaf, if the want is nothing else: then, and only then, what was fed in mass is shown in mass."""
+    if isinstance(tree, Name):
+        return name_leaf(state, tree)
+    if isinstance(tree, Call) and tree.function not in MATHS_NAMES:
+        return call_leaf(state, tree)
+    return None
+
+
+def _dimension(tree: Node, leaves: _Leaves) -> Dims:
+    """Dimension of an expression; a sum of unlike quantities is an error."""
+
+    def value(node: Node, parts: list[Dims]) -> Dims:
+        match node:
+            case Num():
+                return ONE
+            case Name():
+                return leaves.name(node).dims
+            case Unary():
+                return parts[0]
+            case Binary(op, _, right, _):
+                return _combine(op, parts[0], parts[1], right)
+            case Call(function, _, _):
+                return _of_function(function, parts) if function in MATHS_NAMES else leaves.call(node).dims
+
+    return fold(tree, value, lambda node: isinstance(node, Call) and node.function not in MATHS_NAMES)
+
+
+def _combine(op: str, left: Dims, right: Dims, exponent: Node) -> Dims:
+    if op == "*":
+        return _dims(a + b for a, b in zip(left, right, strict=True))
+    if op == "/":
+        return _dims(a - b for a, b in zip(left, right, strict=True))
+    if op == "^":
+        if left == ONE and right == ONE:
+            return ONE
+        power = exponent.arg if isinstance(exponent, Unary) else exponent
+        if not isinstance(power, Num):
+            raise InputError("with a unit, an exponent has to be a number")
+        return _dims(a * (-power.value if isinstance(exponent, Unary) else power.value) for a in left)
+    if left != right:
+        raise InputError("quantities of different kinds are added or subtracted")
+    return left
+
+
+def _of_function(function: str, parts: list[Dims]) -> Dims:
+    if function == "sqrt":
+        return _dims(a / 2 for a in parts[0])
+    if function in ("exp", "ln", "log10") and parts[0] != ONE:
+        raise InputError(f"{function}() of a quantity with a unit: divide it by a quantity of its kind")
+    if any(part != parts[0] for part in parts):
+        raise InputError(f"{function}() compares quantities of different kinds")
+    return parts[0]
+
+
+def _dims(values: Iterable[float]) -> Dims:
+    one, two, three, four, five = values
+    return one, two, three, four, five
