@@ -1,0 +1,97 @@
+"""Laws near zero concentrations, made fit for integrators.
+
+Below a floor delta of about rounding, a law r of order q in species i is continued as
+
+    r(max(c_i, delta)) g_q(c_i/delta),   g_q(u) = u ((2 - q) + (q - 1) u)
+
+which is zero at zero, has no corner at delta and is exact for q = 1 and q = 2. A law of order zero
+that consumes i settles where it takes what is supplied: all such laws are cut by one common factor.
+A law that only reads i (order zero or less, not consuming it) keeps its value at the floor.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.rates import Bound, Floats
+from moletally.kernel.structure import ZERO_ORDER, Structure
+
+__all__ = ["FLOOR", "Laws"]
+
+FLOOR = 1e-15  # of the species' scale: just above the rounding of what is subtracted from it
+
+Ints = NDArray[np.intp]
+
+
+@dataclass(frozen=True, slots=True)
+class Laws:
+    """The running terms of a structure, cut near zero of some species.
+
+    bound : Bound - of n cases
+    edged : ndarray - positions of the species that are cut
+    floor : ndarray, shape (n, edged) - delta [mol/m3]
+    factor : bool ndarray, shape (terms, edged) - where g applies
+    order : ndarray, shape (terms, edged)
+    """
+
+    bound: Bound
+    edged: Ints
+    floor: Floats
+    factor: NDArray[np.bool_]
+    order: Floats
+
+    @classmethod
+    def of(cls, structure: Structure, edged: Ints, scale: Floats, T: Floats, p: Floats) -> "Laws":
+        """Laws of N cases; scale, shape (N, present): what the floor of each species is measured by."""
+        order = structure.order[:, edged]
+        reading = (order < ZERO_ORDER) & (structure.nu[:, edged] >= 0)
+        bound = Bound.of(structure.tape, T, p)
+        return cls(bound, edged, FLOOR * scale[:, edged], ~reading, order)
+
+    def at(self, rows: Ints) -> "Laws":
+        """The cases in `rows`."""
+        return Laws(self.bound.at(rows), self.edged, self.floor[rows], self.factor, self.order)
+
+    def rates(self, c: Floats) -> Floats:
+        """r, shape (n, terms), at c, shape (n, present)."""
+        if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
+            return self.bound.rates(c)
+        g, _ = self._factors(c)
+        return np.asarray(self.bound.rates(self._lifted(c)) * g.prod(axis=2))
+
+    def slopes(self, c: Floats) -> tuple[Floats, Floats]:
+        """r and its exact derivatives dr/dc, shape (n, terms, present)."""
+        if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
+            return self.bound.slopes(c)
+        g, dg = self._factors(c)
+        r, v = self.bound.slopes(self._lifted(c))
+        whole = g.prod(axis=2)
+        v = v * whole[:, :, None]
+        below = c[:, self.edged] < self.floor
+        for k, i in enumerate(self.edged.tolist()):
+            others = np.delete(g, k, axis=2).prod(axis=2)
+            v[:, :, i] = np.where(below[:, None, k], r * others * dg[:, :, k], v[:, :, i])
+        return r * whole, v
+
+    def strict(self, c: Floats) -> Floats:
+        """r with nan where a root of a negative number is taken: for checking answers."""
+        return self.bound.rates(self._lifted(c) if len(self.edged) else c, strict=True)
+
+    def _lifted(self, c: Floats) -> Floats:
+        lifted: Floats = c.copy()
+        lifted[:, self.edged] = np.maximum(c[:, self.edged], self.floor)
+        return lifted
+
+    def _factors(self, c: Floats) -> tuple[Floats, Floats]:
+        """g and dg/dc, shape (n, terms, edged); 1 and 0 above the floor and where g does not apply."""
+        u = np.minimum(c[:, self.edged] / self.floor, 1.0)[:, None, :]
+        q = self.order
+        inside = u < 1
+        positive = np.maximum(u, 0.0)
+        with np.errstate(all="ignore"):
+            steep = np.where(u > 0, positive ** np.maximum(q, 2.0), 0.0)
+            g = np.where(q > 2, steep, u * ((2 - q) + (q - 1) * positive))
+            dg = np.where(q > 2, q * steep / np.where(u > 0, u, 1.0), (2 - q) + 2 * (q - 1) * positive)
+        applies = self.factor & inside
+        return np.where(applies, g, 1.0), np.where(applies, dg, 0.0) / self.floor[:, None, :]

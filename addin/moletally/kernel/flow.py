@@ -1,0 +1,49 @@
+"""The equations that integrators follow: dc/dt = nu^T r(c) + (feed - c)/tau."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.cutoff import Laws
+from moletally.kernel.rates import Floats
+
+__all__ = ["Flow"]
+
+
+@dataclass(frozen=True, slots=True)
+class Flow:
+    """n vessels: tubes (no exchange) or tanks in their start-up.
+
+    laws : Laws - of n cases; nu : ndarray, shape (terms, S)
+    feed : ndarray, shape (n, S), or None for tubes; exchange : ndarray, shape (n, 1) - 1/tau [1/s]
+    """
+
+    laws: Laws
+    nu: Floats
+    feed: Floats | None = None
+    exchange: Floats | None = None
+
+    def at(self, rows: NDArray[np.intp]) -> "Flow":
+        """The cases in `rows`."""
+        if self.feed is None or self.exchange is None:
+            return Flow(self.laws.at(rows), self.nu)
+        return Flow(self.laws.at(rows), self.nu, self.feed[rows], self.exchange[rows])
+
+    def slope(self, c: Floats) -> Floats:
+        """dc/dt, shape (n, S)."""
+        out: Floats = self.laws.rates(c) @ self.nu
+        if self.feed is not None and self.exchange is not None:
+            out += (self.feed - c) * self.exchange
+        return out
+
+    def linear(self, c: Floats) -> tuple[Floats, Floats]:
+        """dc/dt and its Jacobian, shape (n, S, S)."""
+        r, v = self.laws.slopes(c)
+        out: Floats = r @ self.nu
+        jacobian = np.matmul(self.nu.T, v)
+        if self.feed is not None and self.exchange is not None:
+            out += (self.feed - c) * self.exchange
+            diagonal = np.arange(c.shape[1])
+            jacobian[:, diagonal, diagonal] -= self.exchange
+        return out, jacobian

@@ -1,0 +1,174 @@
+"""Adaptive integration of many vessels at once, each on its own mesh of steps.
+
+A mesh depends on where it starts and on nothing else: not on where the answer is wanted, not on the
+other cases. Whoever asks for a point in between takes one shorter step from the mesh point before it.
+Integration starts explicit; where stability rather than accuracy limits the step, or a species sinks
+below the floor of its laws, it goes on with the stiff method.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.explicit import DOP853
+from moletally.kernel.flow import Flow
+from moletally.kernel.rates import Floats
+from moletally.kernel.rosenbrock import Rodas5P
+from moletally.kernel.status import Status
+from moletally.kernel.totals import Totals
+
+__all__ = ["METHODS", "STIFF", "Stepper", "Stride", "Tolerance"]
+
+METHODS = (DOP853, Rodas5P)
+EXPLICIT, STIFF = 0, 1
+
+SAFETY = 0.9
+MOST_SHRINK = 0.1
+NOT_FINITE_SHRINK = 0.1  # where a law has no value the step went far too far
+FIRST_CHANGE = 0.01  # a first step may change what is there by a hundredth
+STIFF_LIMIT = 3.0  # |h lambda|: accuracy asks for less than 1, stability for less than 6
+STIFF_STEPS = 12  # that many such steps in a row are no accident
+SMALLEST = 1e-22  # of the time gone; time is kept to twice the digits, as laws that end need small steps
+RUNAWAY = 1e6  # growth beyond which a vanishing step means that concentrations run away
+LARGEST = 1e250
+
+Ints = NDArray[np.intp]
+
+
+@dataclass(frozen=True, slots=True)
+class Tolerance:
+    """Accepted error of a step: relative (by method) times the concentration + absolute, shape (n, S)."""
+
+    relative: tuple[float, float]
+    absolute: Floats
+
+
+@dataclass(frozen=True, slots=True)
+class Stride:
+    """Steps just accepted: for each of `rows` from time t and state c a step of size h with a method."""
+
+    rows: Ints
+    t: Floats
+    c: Floats
+    h: Floats
+    method: int
+
+
+class Stepper:
+    """Steps n vessels; `attempt` tries one step for each that is still active.
+
+    t (n,), c (n, S), h (n,) - time, state and next step; mode (n,) - index in METHODS
+    active (n,) - set False by the caller when a vessel has arrived, by the stepper when it fails
+    status (n,), steps (n,), work (n,) - counts include rejected steps; work is in evaluations
+    """
+
+    def __init__(
+        self, flow: Flow, c: Floats, tolerance: Tolerance, most_steps: int, mode: int = EXPLICIT,
+        totals: Totals | None = None,
+    ) -> None:  # fmt: skip
+        n = len(c)
+        self.totals = totals
+        self.flow = flow
+        self.tolerance = tolerance
+        self.most_steps = most_steps
+        self.t = np.zeros(n)
+        self.c = c.copy()
+        self.h = self._first_step()
+        self._late = np.zeros(n)  # what rounding has kept from t
+        self.mode = np.full(n, mode)
+        self.active = np.ones(n, dtype=np.bool_)
+        self.status = np.zeros(n, dtype=np.int_)
+        self.steps = np.zeros(n, dtype=np.int_)
+        self.work = np.zeros(n, dtype=np.int_)
+        self._stiff_steps = np.zeros(n, dtype=np.int_)
+        self._rejected = np.zeros(n, dtype=np.bool_)
+        self._largest = np.maximum(np.abs(c).max(axis=1), 1e-300)
+        self._whole: tuple[Ints, Flow, Floats] | None = None
+
+    def attempt(self) -> list[Stride]:
+        """One step for every active vessel; returns those that were accepted."""
+        strides = []
+        active = np.flatnonzero(self.active)
+        for method in (EXPLICIT, STIFF):
+            rows = active[self.mode[active] == method]
+            if len(rows):
+                strides.append(self._try(rows, method))
+        return strides
+
+    def _first_step(self) -> Floats:
+        """A step that changes what is there a little. Species still at zero don't count."""
+        with np.errstate(all="ignore"):
+            f = np.abs(self.flow.slope(self.c))
+            there = np.abs(self.c)
+            change = np.where(there > 0, f / there, 0.0).max(axis=1)
+            made = np.where(there > 0, 0.0, f).max(axis=1) / there.max(axis=1)
+            fastest = np.maximum(change, np.where(np.isfinite(made), made, 0.0))
+            first = FIRST_CHANGE / fastest
+        return np.where(np.isfinite(first) & (first > 0), first, 1.0)
+
+    def _cut(self, rows: Ints) -> tuple[Flow, Floats]:
+        """Flow and absolute tolerance of some vessels; the last cut is kept, as it rarely changes."""
+        if len(rows) == len(self.t):
+            return self.flow, self.tolerance.absolute
+        if self._whole is None or not np.array_equal(self._whole[0], rows):
+            self._whole = (rows, self.flow.at(rows), self.tolerance.absolute[rows])
+        return self._whole[1], self._whole[2]
+
+    def _try(self, rows: Ints, method: int) -> Stride:
+        flow, absolute = self._cut(rows)
+        t, c, h = self.t[rows], self.c[rows], self.h[rows]
+        with np.errstate(all="ignore"):
+            new, error, stiffness = METHODS[method].step(flow, c, h, absolute)
+            allowed = absolute + self.tolerance.relative[method] * np.maximum(np.abs(c), np.abs(new))
+            size = (np.abs(error) / allowed).max(axis=1)
+            finite = np.isfinite(size) & np.isfinite(new).all(axis=1)
+            size = np.where(finite, np.maximum(size, 1e-10), np.inf)
+            size = np.where((new < -absolute).any(axis=1), np.maximum(size, 4.0), size)
+            factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
+        fine = size <= 1.0
+        growth = np.where(self._rejected[rows] & fine, 1.0, METHODS[method].most_growth)
+        factor = np.clip(factor, np.where(finite, MOST_SHRINK, NOT_FINITE_SHRINK), growth)
+        self.steps[rows] += 1
+        self.work[rows] += METHODS[method].evaluations
+        self.h[rows] = h * factor
+        self._rejected[rows] = ~fine
+        done = rows[fine]
+        self._pass_time(done, h[fine])
+        self.c[done] = new[fine] if self.totals is None else self.totals.restore(new[fine], done)
+        self._look_for_trouble(rows, fine, finite)
+        if method == EXPLICIT and len(done):
+            assert stiffness is not None
+            self._look_for_stiffness(done, stiffness[fine])
+        return Stride(done, t[fine], c[fine], h[fine], method)
+
+    def _pass_time(self, rows: Ints, h: Floats) -> None:
+        before = self.t[rows]
+        step = h + self._late[rows]
+        self.t[rows] = before + step
+        self._late[rows] = step - (self.t[rows] - before)
+
+    def _look_for_stiffness(self, rows: Ints, stiffness: Floats) -> None:
+        limited = stiffness > STIFF_LIMIT
+        self._stiff_steps[rows] = np.where(limited, self._stiff_steps[rows] + 1, 0)
+        stiff = self._stiff_steps[rows] >= STIFF_STEPS
+        laws = self.flow.laws
+        if len(laws.edged):
+            stiff |= (self.c[np.ix_(rows, laws.edged)] < laws.floor[rows]).any(axis=1)
+        self.mode[rows[stiff]] = STIFF
+
+    def _look_for_trouble(self, rows: Ints, fine: NDArray[np.bool_], finite: NDArray[np.bool_]) -> None:
+        """Gives up vessels whose step vanishes, whose state explodes or whose allowance is spent."""
+        stuck = ~fine & (self.h[rows] <= SMALLEST * self.t[rows])
+        stuck |= ~fine & (self.h[rows] < 1e-290)
+        size = np.abs(self.c[rows]).max(axis=1)
+        explodes = (size > LARGEST) | (stuck & (size > RUNAWAY * self._largest[rows]))
+        for bad, status in (
+            (self.steps[rows] >= self.most_steps, Status.WORK_CAP),
+            (stuck, Status.STEP_TOO_SMALL),
+            (stuck & ~finite, Status.NOT_FINITE),
+            (explodes, Status.BLOW_UP),
+        ):
+            if bad.any():
+                self.status[rows[bad]] = status
+                self.active[rows[bad]] = False

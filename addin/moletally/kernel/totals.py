@@ -1,0 +1,79 @@
+"""Totals that no reaction changes: atoms, charges, or moles of whatever the equations keep together."""
+
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.rates import Floats
+
+__all__ = ["Totals", "conserved"]
+
+DRIFT = 1e-10  # of a total's terms: rounding of many steps; more than that is an error and must show
+
+
+def conserved(nu: Floats) -> Floats:
+    """Rows w with nu w = 0, shape (n, S), from nu, shape (terms, S): exact, so that zeros are zeros.
+
+    An orthogonal basis would do for a check, but its rounding in the place of an abundant species
+    would drown a total of trace species.
+    """
+    species = nu.shape[1]
+    rows = [[Fraction(x) for x in row] for row in np.unique(nu, axis=0).tolist()]
+    pivots: list[int] = []
+    for i in range(species):
+        k = next((k for k in range(len(pivots), len(rows)) if rows[k][i]), None)
+        if k is None:
+            continue
+        top = len(pivots)
+        rows[top], rows[k] = rows[k], rows[top]
+        rows[top] = [x / rows[top][i] for x in rows[top]]
+        for other in range(len(rows)):
+            factor = rows[other][i]
+            if other != top and factor:
+                rows[other] = [x - factor * y for x, y in zip(rows[other], rows[top], strict=True)]
+        pivots.append(i)
+    free = [i for i in range(species) if i not in pivots]
+    basis = np.zeros((len(free), species))
+    for k, i in enumerate(free):
+        basis[k, i] = 1.0
+        for row, pivot in zip(rows, pivots, strict=False):
+            basis[k, pivot] = float(-row[i])
+    return basis
+
+
+@dataclass(frozen=True, slots=True)
+class Totals:
+    """Totals of n tubes: weights, shape (totals, S), and their values in the feed, shape (n, totals)."""
+
+    weights: Floats
+    values: Floats
+
+    def restore(self, c: Floats, rows: NDArray[np.intp]) -> Floats:
+        """c moved back onto its totals, shape (n, S): the rounding of a step must not add up.
+
+        The move is least relative to the concentrations, so that trace species are left in peace.
+        """
+        w = self.weights
+        off = self.values[rows] - c @ w.T
+        terms = np.abs(c) @ np.abs(w).T
+        near = (np.abs(off) <= DRIFT * terms).all(axis=1)
+        if not near.any() or not off.any():
+            return c
+        with np.errstate(all="ignore"):
+            weighted = w * (c / np.abs(c).max(axis=1, keepdims=True))[:, None, :]
+            push = np.einsum("nts,nt->ns", weighted, _least(weighted, off))
+            moved = c + push * (c / np.abs(c).max(axis=1, keepdims=True))
+        fine = near & np.isfinite(moved).all(axis=1)
+        return np.where(fine[:, None], moved, c)
+
+
+def _least(weighted: Floats, off: Floats) -> Floats:
+    """Multipliers of the totals whose weighted move closes `off`, shape (n, totals)."""
+    gram = np.matmul(weighted, weighted.transpose(0, 2, 1))
+    size = np.sqrt(np.einsum("ntt->nt", gram))
+    size = np.where(size > 0, size, 1.0)
+    scaled = gram / (size[:, :, None] * size[:, None, :])
+    solved = np.matmul(np.linalg.pinv(scaled, rcond=1e-12, hermitian=True), (off / size)[:, :, None])
+    return np.asarray(solved[:, :, 0] / size)
