@@ -96,7 +96,7 @@ def build(path: str) -> None:
     look = open_book(path, NAME, DESCRIPTION)
     design = look.book.add_worksheet("Design")
     profile = look.book.add_worksheet("Profile")
-    page(design, (2, 29, 13, 15, 12, 12, 58, 2, 29, 37, 10, 12), "A1:L41")
+    page(design, (2, 30, 14, 15, 12, 13, 62, 2, 29, 37, 10, 12), "A1:L41")
     title(
         design, look, NAME, "Carbinol to olefin over an acid resin: water and carbinol compete for the sites"
     )
@@ -111,7 +111,7 @@ def build(path: str) -> None:
         (Axis("residence time in the bed [min]"), Axis("concentration [mol/L]")),
         "Along the tube",
     )
-    chart.set_size({"width": 1000, "height": 380})
+    chart.set_size({"width": 1030, "height": 400})
     design.insert_chart(23, 1, chart, {"object_position": 2})
     design.freeze_panes(3, 0)
     write_temperatures(look.book.add_worksheet("Temperatures"), look, inputs)

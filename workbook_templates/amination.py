@@ -81,7 +81,7 @@ def build(path: str) -> None:
     design = look.book.add_worksheet("Design")
     profile = look.book.add_worksheet("Profile")
     sweep = look.book.add_worksheet("Sweep")
-    page(design, (2, 25, 18, 10, 20, 11, 10, 3, 25, 25, 10, 11, 11, 10), "A1:N38")
+    page(design, (2, 27, 18, 10, 22, 12, 13, 2, 25, 26, 11, 12, 12, 13), "A1:N40")
     title(
         design,
         look,
@@ -98,7 +98,7 @@ def build(path: str) -> None:
         (Axis("residence time along the tube [min]"), Axis("concentration [mol/L]")),
         "Along the tube",
     )
-    chart.set_size({"width": 700, "height": 348})
+    chart.set_size({"width": 730, "height": 380})
     design.insert_chart(20, 1, chart, {"object_position": 2})
     design.freeze_panes(3, 0)
     write_sweep(sweep, look, inputs)
@@ -198,7 +198,7 @@ def write_profile(sheet: Worksheet, look: Look, inputs: Inputs) -> Area:
 
 def write_sweep(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
     """Both vessels over a column of residence times, at the temperature of the design sheet."""
-    page(sheet, (2, 16, 10, 8, *(13,) * 8), f"A1:L{30 + len(SWEEP)}", landscape=False)
+    page(sheet, (2, 16, 10, 8, *(14.5,) * 8), f"A1:L{30 + len(SWEEP)}", landscape=False)
     title(sheet, look, "Sweep over residence time", "Feed, flow and temperature as on the design sheet")
     grid(
         sheet,
@@ -237,5 +237,5 @@ def write_sweep(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
         (Axis("residence time [min]"), Axis("made per amine fed [%]")),
         "Tank and tube",
     )
-    chart.set_size({"width": 990, "height": 420})
+    chart.set_size({"width": 1085, "height": 440})
     sheet.insert_chart(last + 2, 1, chart, {"object_position": 2})

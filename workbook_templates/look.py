@@ -21,7 +21,8 @@ MIST, MIST_INK, MIST_RULE = "#E9EFEA", "#23443A", "#B4C7BB"  # what is calculate
 GRID = "#D9D5DB"
 CURVES = ("#5B3A5E", "#C0762B", "#2F7D6B", "#8C8A2E", "#A8475A", "#4A6FA5")
 
-_BOX = {"border": 1, "valign": "vcenter", "text_wrap": True}
+_BOX = {"border": 1, "valign": "vcenter", "text_wrap": True, "indent": 1}
+_NUMBER = {"align": "right", "text_wrap": False}
 _INPUT = {**_BOX, "bg_color": SAND, "font_color": SAND_INK, "border_color": SAND_RULE, "locked": False}
 _RESULT = {**_BOX, "bg_color": MIST, "font_color": MIST_INK, "border_color": MIST_RULE}
 _HEAD = {**_BOX, "bold": True, "font_color": "#FFFFFF", "bg_color": HEAD, "border_color": HEAD}
@@ -33,17 +34,24 @@ STYLES: Mapping[str, Mapping[str, object]] = {
     "head": _HEAD,
     "head number": {**_HEAD, "align": "right"},
     "label": {**_BOX, "border_color": GRID},
-    "unit": {**_BOX, "border_color": GRID, "font_color": "#6B6872", "indent": 1},
-    "text": {"text_wrap": True, "valign": "top", "font_color": INK},
-    "input": {**_INPUT, "num_format": "General"},
-    "input text": {**_INPUT, "num_format": "@", "indent": 1},
+    "unit": {**_BOX, "border_color": GRID, "font_color": "#6B6872"},
+    "text": {"text_wrap": True, "valign": "top", "font_color": INK, "indent": 1},
+    "input": {**_INPUT, **_NUMBER},
+    "input text": {**_INPUT, "num_format": "@"},
     "law": {**_INPUT, "num_format": "@", "font_name": "Consolas", "font_size": 10},
-    "link": {**_BOX, "border_color": SAND_RULE, "font_color": INK, "bg_color": "#FFFFFF"},
-    "result": {**_RESULT, "num_format": "0.0000"},
-    "result 2": {**_RESULT, "num_format": "0.00"},
-    "level": {**_RESULT, "bold": True, "align": "center"},
-    "result text": {**_RESULT, "indent": 1},
-    "check": {**_BOX, "border_color": GRID, "font_color": "#6B6872", "num_format": "0.0E+00"},
+    "link number": {**_BOX, **_NUMBER, "border_color": SAND_RULE, "font_color": INK},
+    "link": {**_BOX, "border_color": SAND_RULE, "font_color": INK},
+    "result": {**_RESULT, **_NUMBER, "num_format": "0.0000"},
+    "result 2": {**_RESULT, **_NUMBER, "num_format": "0.00"},
+    "level": {**_RESULT, "bold": True, "align": "center", "indent": 0},
+    "result text": {**_RESULT},
+    "check": {
+        **_BOX,
+        "align": "right",
+        "border_color": GRID,
+        "font_color": "#6B6872",
+        "num_format": "0.0E+00",
+    },
 }
 
 
@@ -130,7 +138,6 @@ def title(sheet: Worksheet, look: Look, text: str, below: str) -> None:
 def heading(sheet: Worksheet, look: Look, at: tuple[int, int], columns: int, text: str) -> None:
     """A section's name, ruled below over `columns` columns."""
     row, left = at
-    sheet.set_row(row, 20)
     for column in range(left, left + columns):
         sheet.write_blank(row, column, None, look["heading"])
     sheet.write_string(row, left, text, look["heading"])

@@ -74,7 +74,7 @@ def build(path: str) -> None:
     look = open_book(path, NAME, DESCRIPTION)
     design = look.book.add_worksheet("Design")
     profile = look.book.add_worksheet("Profile")
-    page(design, (2, 13, 14, *(17,) * 4, 3, 25, 28, 10, 13, 13), "A1:M43")
+    page(design, (2, 13, 14, *(17,) * 4, 3, 25, 28, 10, 13, 13), "A1:M42")
     title(
         design,
         look,
@@ -92,8 +92,8 @@ def build(path: str) -> None:
         (Axis("residence time along the tube [h]"), Axis("concentration [mol/L]")),
         "Along the tube",
     )
-    chart.set_size({"width": 640, "height": 340})
-    design.insert_chart(22, 8, chart, {"object_position": 2})
+    chart.set_size({"width": 660, "height": 330})
+    design.insert_chart(24, 8, chart, {"object_position": 2})
     design.freeze_panes(3, 0)
     audit_sheet(
         look,
@@ -140,7 +140,7 @@ def write_inputs(sheet: Worksheet, look: Look) -> tuple[Area, str]:
 
 def write_series(sheet: Worksheet, look: Look, matrix: Area, time: str) -> Area:
     """Tanks in series: the outlet of each stands under the header of a feed table, the feed of the next."""
-    top = 22
+    top = 23
     heading(
         sheet, look, (top, 1), 6, "Three equal tanks in series: the outlet of one is the feed of the next"
     )
@@ -203,7 +203,8 @@ def write_results(sheet: Worksheet, look: Look, matrix: Area, time: str, last: A
                 for out in (last, tube)
             ],
         )
-    verdict(sheet, look, (20, 8), "Tube", f'MOLE_AUDIT("PFR", {matrix.qualified}, , {time})', 3)
+    heading(sheet, look, (21, 8), 5, "Verdict")
+    verdict(sheet, look, (22, 8), "Tube", f'MOLE_AUDIT("PFR", {matrix.qualified}, , {time})', 3)
 
 
 def write_profile(sheet: Worksheet, look: Look, matrix: Area, time: str) -> Area:

@@ -26,7 +26,8 @@ CAUTIONS = (
 )
 
 NUMBERS = ("input", "result", "result 2")  # styles of columns of numbers
-NOTE_LINE = 98  # characters in a line of the notes; not every reader fits the heights itself
+LINKS = {"input": "link number", "input text": "link"}  # a formula in a table of inputs is no input
+NOTE_LINE = 104  # characters in a line of the notes; not every reader fits the heights itself
 LEGEND = (
     ("input", "4.2", "an input: type over it"),
     ("law", "k*A*B", "an input in words: a rate law, or what to return"),
@@ -94,7 +95,7 @@ def _put(sheet: Worksheet, look: Look, at: tuple[int, int], value: Value, style:
     if value is None:
         sheet.write_blank(*at, None, look[style])
     elif isinstance(value, str) and value.startswith("="):
-        sheet.write_formula(*at, value, look["link" if style.startswith("input") else style])
+        sheet.write_formula(*at, value, look[LINKS.get(style, style)])
     elif isinstance(value, str):
         sheet.write_string(*at, value, look[style])
     else:
