@@ -34,8 +34,11 @@ class Columns:
         texts = ["" if j < first else text for j, text in enumerate(grid.headers())]
         parts = [split_header(text) for text in texts]
         names = [known.get(fold(name), name) for name, _ in parts]
+        present = set(names) - {""}
         units = {
-            self._unit_of(name, known): j for j, name in enumerate(names) if self._is_unit(name, names, known)
+            self._unit_of(name, known): j
+            for j, name in enumerate(names)
+            if self._is_unit(name, present, known)
         }
         self.by_name: dict[str, Column] = {}
         for j, (name, (_, unit)) in enumerate(zip(names, parts, strict=True)):
@@ -52,8 +55,8 @@ class Columns:
         base = name.rstrip()[: -len("unit")].rstrip(" _")
         return known.get(fold(base), base)
 
-    def _is_unit(self, name: str, names: list[str], known: dict[str, str]) -> bool:
-        return fold(name).endswith("unit") and self._unit_of(name, known) in names
+    def _is_unit(self, name: str, present: set[str], known: dict[str, str]) -> bool:
+        return fold(name).endswith("unit") and self._unit_of(name, known) in present
 
     def unit(self, column: Column, row: int) -> str | None:
         """The unit of a quantity in one row: from its unit column, else from its header."""

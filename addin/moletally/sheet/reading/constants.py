@@ -4,7 +4,7 @@ from moletally.chemistry.errors import InputError, near_miss
 from moletally.chemistry.tables import ConstantRow, Number
 from moletally.sheet.reading.columns import Columns
 from moletally.sheet.reading.grid import Grid, text_of
-from moletally.sheet.reading.numbers import is_blank, read_name
+from moletally.sheet.reading.numbers import symbol
 from moletally.sheet.reading.reactions import Numbers
 
 __all__ = ["read_constants"]
@@ -37,11 +37,9 @@ def _row(columns: Columns, row: int, numbers: Numbers) -> ConstantRow:
     cells = columns.grid.cells[row]
     name_column = columns.by_name["Name"]
     place = columns.place(row, name_column)
-    name = read_name(cells[name_column.index], place)
+    name = symbol(cells[name_column.index], place)
     given = [
-        n
-        for n in ("Value", "Value0")
-        if n in columns.by_name and not is_blank(cells[columns.by_name[n].index])
+        n for n in ("Value", "Value0") if n in columns.by_name and cells[columns.by_name[n].index] is not None
     ]
     if not given:
         raise InputError(f"{name} has no value", place)
@@ -55,7 +53,7 @@ def _row(columns: Columns, row: int, numbers: Numbers) -> ConstantRow:
         if text and value.unit and text != value.unit:
             raise InputError(f"two units of {name}, {value.unit!r} and {text!r}", place)
         value = Number(value.slot, text or value.unit, value.place)
-    energies = [n for n in ENERGIES if n in columns.by_name and not is_blank(cells[columns.by_name[n].index])]
+    energies = [n for n in ENERGIES if n in columns.by_name and cells[columns.by_name[n].index] is not None]
     if len(energies) > 1:
         raise InputError(f"{name} has both E and dH: keep one", place)
     return ConstantRow(
@@ -71,6 +69,6 @@ def _row(columns: Columns, row: int, numbers: Numbers) -> ConstantRow:
 
 def _number(columns: Columns, name: str, row: int, numbers: Numbers) -> Number | None:
     column = columns.by_name.get(name)
-    if column is None or is_blank(columns.grid.cells[row][column.index]):
+    if column is None or columns.grid.cells[row][column.index] is None:
         return None
     return numbers.put(columns, column, row)

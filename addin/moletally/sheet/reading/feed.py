@@ -1,23 +1,25 @@
 """The feed table: a row per species, a column per stream, and the streams' own rows below."""
 
+import re
 from dataclasses import dataclass
 
 from moletally.chemistry.errors import InputError, near_miss
 from moletally.chemistry.tables import FeedTable, Quantity, SpeciesRow, Stream
 from moletally.sheet.reading.columns import Column, Columns
 from moletally.sheet.reading.grid import Grid, fold, split_header, text_of
-from moletally.sheet.reading.numbers import is_blank, read_name, read_number
+from moletally.sheet.reading.numbers import is_blank, read_name, read_number, symbol
 
 __all__ = ["ATTRIBUTES", "is_feed", "read_feed"]
 
 ATTRIBUTES = ("Start", "Formula", "MW", "Cp", "Cp slope")
+FEED = re.compile(r"feed(?:[\s_.]+(?P<stream>.*))?", re.IGNORECASE)
 STREAM_ROWS = {"flow": "flow", "temperature": "temperature", "pressure": "pressure"}
 
 
 def is_feed(header: str) -> bool:
     """True for `Feed`, `Feed [mol/L]`, `Feed acid`, but not for `Feed unit`."""
-    words = split_header(header)[0].split()
-    return bool(words) and words[0].casefold() == "feed" and fold("".join(words)) != "feedunit"
+    name = split_header(header)[0]
+    return FEED.fullmatch(name) is not None and fold(name) != "feedunit"
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,14 +32,14 @@ class _Reader:
         """A number with its unit."""
         place = self.columns.place(row, column)
         cell = self.grid.cells[row][column.index]
-        if is_blank(cell) and self.blank_is_zero:
+        if cell is None and self.blank_is_zero:
             return Quantity(0.0, self.columns.unit(column, row), place)
         return Quantity(read_number(cell, place), self.columns.unit(column, row), place)
 
     def optional(self, row: int, name: str) -> Quantity | None:
         """A number that may be blank."""
         column = self.columns.by_name.get(name)
-        if column is None or is_blank(self.grid.cells[row][column.index]):
+        if column is None or self.grid.cells[row][column.index] is None:
             return None
         return self.quantity(row, column)
 
@@ -72,8 +74,8 @@ def read_feed(grid: Grid, blank_is_zero: bool = False) -> FeedTable:
 
 
 def _stream_name(column: Column) -> str:
-    words = split_header(column.header)[0].split()
-    return " ".join(words[1:]) or "feed"
+    match = FEED.fullmatch(split_header(column.header)[0])
+    return (match and match["stream"]) or "feed"
 
 
 def _check_headers(grid: Grid, columns: Columns, streams: list[Column]) -> None:
@@ -85,6 +87,12 @@ def _check_headers(grid: Grid, columns: Columns, streams: list[Column]) -> None:
     for name, there in (("Species", "Species" in columns.by_name), ("Feed", bool(streams))):
         if not there:
             raise InputError(f"the header row has no column {name!r}", grid.place(0, 0, ""))
+    seen: set[str] = set()
+    for stream in streams:
+        name = fold(_stream_name(stream))
+        if name in seen:
+            raise InputError(f"the stream {_stream_name(stream)!r} stands twice", columns.place(0, stream))
+        seen.add(name)
 
 
 def _species_end(grid: Grid, columns: Columns) -> int:
@@ -101,7 +109,7 @@ def _species_row(reader: _Reader, row: int, streams: list[Column]) -> SpeciesRow
     column = reader.columns.by_name["Species"]
     place = reader.columns.place(row, column)
     return SpeciesRow(
-        name=read_name(reader.grid.cells[row][column.index], place),
+        name=symbol(reader.grid.cells[row][column.index], place),
         feed=tuple(_amount(reader, row, stream) for stream in streams),
         place=place,
         start=reader.optional(row, "Start"),
@@ -135,21 +143,40 @@ def _check_names(rows: tuple[SpeciesRow, ...]) -> None:
 
 def _stream_rows(reader: _Reader, first: int, streams: list[Column]) -> dict[str, dict[str, Quantity]]:
     """Flow, temperature and pressure of each stream, by column name."""
-    found: dict[str, dict[str, Quantity]] = {}
+    found: dict[str, dict[str, Quantity]] = {stream.name: {} for stream in streams}
     grid, index = reader.grid, reader.columns.by_name["Species"].index
+    units = {stream.unit_column for stream in streams} | {
+        reader.columns.by_name[name].index for name in ("Unit", "Feed unit") if name in reader.columns.by_name
+    }
+    theirs = {index, *(stream.index for stream in streams), *units}
     for i in range(first, len(grid.cells)):
         place = grid.place(i, index, "Species")
         label, unit = split_header(read_name(grid.cells[i][index], place))
         key = STREAM_ROWS.get(fold(label))
         if key is None:
             raise InputError(f"{label!r} stands below the rows of the streams: species come first", place)
-        unit = unit or reader.shared_unit(i)
+        for j, cell in enumerate(grid.cells[i]):
+            if j not in theirs and not is_blank(cell):
+                raise InputError(
+                    f"nothing belongs here: {label} is a row of the streams", grid.place(i, j, "")
+                )
         for stream in streams:
             cell, where = grid.cells[i][stream.index], grid.place(i, stream.index, label)
-            if is_blank(cell):
+            if cell is None:
                 continue
-            if key in found.setdefault(stream.name, {}):
+            if key in found[stream.name]:
                 raise InputError(f"{label} stands twice", where)
-            own = reader.columns.unit(stream, i) if stream.unit_column is not None else None
-            found[stream.name][key] = Quantity(read_number(cell, where), unit or own, where)
+            found[stream.name][key] = Quantity(
+                read_number(cell, where), _stream_unit(reader, i, stream, unit), where
+            )
     return found
+
+
+def _stream_unit(reader: _Reader, row: int, stream: Column, behind: str | None) -> str | None:
+    """The unit of a stream's quantity: behind its label or in a column of units, not the feed's header."""
+    own = reader.shared_unit(row)
+    if own is None and stream.unit_column is not None:
+        own = text_of(reader.grid.cells[row][stream.unit_column], reader.columns.place(row, stream))
+    if own and behind and own != behind:
+        raise InputError(f"two units, {behind!r} and {own!r}", reader.columns.place(row, stream))
+    return own or behind

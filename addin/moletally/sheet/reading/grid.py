@@ -6,9 +6,11 @@ from functools import lru_cache
 
 from moletally.chemistry.errors import InputError, Place
 from moletally.sheet.cells import Argument, Block, Cell, ExcelError, Omitted
-from moletally.sheet.reading.numbers import CellFault, is_blank, refuse_odd
+from moletally.sheet.reading.numbers import is_blank, number_text, refuse_odd
 
-__all__ = ["Grid", "as_block", "fold", "is_empty", "split_header", "trimmed"]
+__all__ = ["Grid", "as_block", "fold", "is_empty", "split_header", "text_of", "trimmed"]
+
+LONGEST_HEADER = 200  # characters; a longer text is no header with a unit, and is not searched for one
 
 BEHIND = re.compile(
     r"(?P<name>.*?)\s*(?:\[(?P<square>[^\[\]]*)\]|\((?P<round>[^()]*(?:\([^()]*\)[^()]*)*)\))"
@@ -26,7 +28,7 @@ def fold(text: str) -> str:
 def split_header(text: str) -> tuple[str, str | None]:
     """`Feed [mol/L]` -> (`Feed`, `mol/L`); `in(A)`, `k(2)` and `b(A)` keep their parentheses."""
     stripped = " ".join(text.split())
-    match = BEHIND.fullmatch(stripped)
+    match = BEHIND.fullmatch(stripped) if len(stripped) <= LONGEST_HEADER else None
     if match is None or not match["name"]:
         return stripped, None
     if match["square"] is not None:
@@ -44,7 +46,7 @@ def is_empty(argument: Argument) -> bool:
     if isinstance(argument, Omitted):
         return True
     if isinstance(argument, tuple):
-        return all(is_blank(cell) for row in argument for cell in row)
+        return all(map(_is_blank_row, argument))
     return is_blank(argument)
 
 
@@ -58,10 +60,15 @@ def as_block(argument: Argument, place: Place) -> Block:
 def trimmed(block: Block) -> Block:
     """Without blank rows at the end and blank columns at the right."""
     last = len(block)
-    while last and all(is_blank(cell) for cell in block[last - 1]):
+    while last and _is_blank_row(block[last - 1]):
         last -= 1
     width = max((_width(row) for row in block[:last]), default=0)
     return tuple(row[:width] for row in block[:last])
+
+
+def _is_blank_row(row: tuple[Cell, ...]) -> bool:
+    # Counted first: a whole column is a million such rows.
+    return row.count(None) == len(row) or all(map(is_blank, row))
 
 
 def _width(row: tuple[Cell, ...]) -> int:
@@ -84,21 +91,30 @@ class Grid:
         """The grid of an argument; a table has a header row and no blank row inside."""
         place = Place(table)
         block = as_block(argument, place)
-        if len(block) == 1 and len(block[0]) == 1 and isinstance(block[0][0], ExcelError):
-            refuse_odd(block[0][0], place, "a table")
         cells = trimmed(block)
         if not cells:
             raise InputError("the range is empty", place)
-        return cls(table, cells)
+        grid = cls(table, cells)
+        grid.check_errors()
+        return grid
 
     def turn(self) -> "Grid":
         """Rows and columns exchanged."""
         return Grid(self.table, tuple(zip(*self.cells, strict=True)), not self.turned)
 
+    def check_errors(self) -> None:
+        """Raise at the first error value: it takes all cells, whatever else is wrong with the table."""
+        for i, row in enumerate(self.cells):
+            for j, cell in enumerate(row):
+                if isinstance(cell, ExcelError):
+                    head = self.cells[0][j] if i else None
+                    name = split_header(head)[0] if isinstance(head, str) else ""
+                    refuse_odd(cell, self.place(i, j, name), "a table")
+
     def check_rows(self) -> None:
         """Raise at the first blank row inside."""
         for i, row in enumerate(self.cells):
-            if all(is_blank(cell) for cell in row):
+            if _is_blank_row(row):
                 line = "column" if self.turned else "row"
                 raise InputError(f"a blank {line} inside the table: delete it, or end the range above it",
                                  self.place(i, 0, ""))  # fmt: skip
@@ -119,20 +135,21 @@ class Grid:
         place = self.place(row, column, "")
         if is_blank(cell):
             if any(not is_blank(line[column]) for line in self.cells[row + 1 :]):
-                raise InputError("the column has no header", place)
+                raise InputError(f"the {'row' if self.turned else 'column'} has no header", place)
             return ""
         refuse_odd(cell, place, "a header")
-        return cell if isinstance(cell, str) else f"{cell:g}"
+        if isinstance(cell, float | int):
+            return number_text(cell)
+        assert isinstance(cell, str)
+        return cell
 
 
 def text_of(cell: Cell, place: Place) -> str | None:
     """A free text such as a unit or a formula; None if blank."""
     if is_blank(cell):
         return None
-    if isinstance(cell, ExcelError):
-        raise CellFault(f"the cell holds {cell.code}: mend it there", place, cell.code)
     if isinstance(cell, float | int) and not isinstance(cell, bool):
-        return f"{cell:g}"
+        return number_text(cell)
     refuse_odd(cell, place, "a text")
     assert isinstance(cell, str)
     return cell.strip()

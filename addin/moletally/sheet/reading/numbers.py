@@ -6,7 +6,7 @@ import re
 from moletally.chemistry.errors import InputError, Place, SheetError
 from moletally.sheet.cells import Cell, ExcelError
 
-__all__ = ["CellFault", "is_blank", "read_name", "read_number"]
+__all__ = ["CellFault", "is_blank", "number_text", "read_name", "read_number", "refuse_odd", "symbol"]
 
 PLAIN = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?", re.ASCII)
 DECIMAL_COMMA = re.compile(r"[+-]?[\d.\s]*\d,\d+([eE][+-]?\d+)?|[+-]?\d{1,3}(,\d{3})+(\.\d*)?", re.ASCII)
@@ -29,6 +29,11 @@ class CellFault(SheetError):
 def is_blank(cell: Cell) -> bool:
     """True for an empty cell and for one that shows nothing: `=""`, blanks."""
     return cell is None or (isinstance(cell, str) and not cell.strip())
+
+
+def number_text(number: float) -> str:
+    """A number that stands where a text belongs, with all its digits: a Rate of 0.123456789, a unit 1."""
+    return str(int(number)) if abs(number) < 1e15 and number == int(number) else repr(number)
 
 
 def refuse_odd(cell: Cell, place: Place, what: str) -> None:
@@ -65,7 +70,10 @@ def read_number(cell: Cell, place: Place) -> float:
     assert isinstance(cell, str)
     text = cell.strip()
     if not text:
-        raise InputError('the cell holds an empty text (""), where a number belongs', place)
+        raise InputError(
+            'the cell holds an empty text (""), where a number belongs: clear it, or let its formula give one',
+            place,
+        )
     if PLAIN.fullmatch(text):
         return read_number(float(text), place)
     raise InputError(_why_not(cell, text), place)
@@ -90,8 +98,15 @@ def read_name(cell: Cell, place: Place) -> str:
     refuse_odd(cell, place, "a name")
     if isinstance(cell, float | int):
         raise InputError(
-            f"the cell holds the number {cell:g}, where a name belongs: type it as a text", place
+            f"the cell holds the number {number_text(cell)}, where a name belongs: type it as a text", place
         )
     if cell is None or not (isinstance(cell, str) and cell.strip()):
         raise InputError("the cell is blank, where a name belongs", place)
     return " ".join(cell.split())
+
+
+def symbol(cell: Cell, place: Place) -> str:
+    """The name of a species or constant; the brackets it wears in expressions may stand here too."""
+    name = read_name(cell, place)
+    inside = name[1:-1].strip()
+    return inside if inside and name[0] == "[" and name[-1] == "]" and not set(inside) & set("[]") else name

@@ -5,7 +5,7 @@ from moletally.chemistry.errors import InputError, SheetError, near_miss
 from moletally.chemistry.tables import Number, ReactionRow, ReactionTable
 from moletally.sheet.reading.columns import Column, Columns
 from moletally.sheet.reading.grid import Grid, text_of
-from moletally.sheet.reading.numbers import is_blank, read_name, read_number
+from moletally.sheet.reading.numbers import read_name, read_number
 
 __all__ = ["QUANTITIES", "Numbers", "read_constants_of_row", "read_list", "read_rate"]
 
@@ -48,7 +48,7 @@ def read_list(grid: Grid, numbers: Numbers) -> ReactionTable:
                 label=str(i),
                 equation=equation,
                 rate=read_rate(columns, i),
-                constants=read_constants_of_row(columns, i, numbers),
+                constants=read_constants_of_row(columns, i, numbers, ("Reaction", "Rate")),
                 place=place,
                 rate_place=columns.place(i, columns.by_name.get("Rate", equations)),
             )
@@ -63,14 +63,25 @@ def read_rate(columns: Columns, row: int) -> str:
     column = columns.by_name.get("Rate")
     if column is None:
         return ""
+    if column.unit or column.unit_column is not None:
+        raise InputError(
+            "a Rate has no unit of its own, it follows from those of its constants: leave the unit out",
+            columns.grid.place(0, column.index, column.header),
+        )
     return text_of(columns.grid.cells[row][column.index], columns.place(row, column)) or ""
 
 
-def read_constants_of_row(columns: Columns, row: int, numbers: Numbers) -> tuple[tuple[str, Number], ...]:
-    """The numbers of a row by name; a blank cell is a constant that this row does not have."""
+def read_constants_of_row(
+    columns: Columns, row: int, numbers: Numbers, texts: tuple[str, ...]
+) -> tuple[tuple[str, Number], ...]:
+    """The numbers of a row by name; a blank cell is a constant that this row does not have.
+
+    texts : the columns that hold no numbers
+    An empty text is not blank: a formula was to give a number there, and it gave none.
+    """
     cells = columns.grid.cells[row]
     return tuple(
         (column.name, numbers.put(columns, column, row))
         for column in columns.by_name.values()
-        if column.name not in ("Reaction", "Rate") and not is_blank(cells[column.index])
+        if column.name not in texts and cells[column.index] is not None
     )

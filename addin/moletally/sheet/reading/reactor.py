@@ -6,7 +6,7 @@ from math import nan
 
 from moletally.chemistry.errors import InputError, Place, SheetError, near_miss
 from moletally.chemistry.tables import Quantity
-from moletally.sheet.cells import Argument, Block, Cell
+from moletally.sheet.cells import OMITTED, Argument, Block, Cell
 from moletally.sheet.reading.grid import Grid, as_block, fold, is_empty, split_header, text_of, trimmed
 from moletally.sheet.reading.labels import LABELS, Kind, canonical
 from moletally.sheet.reading.numbers import is_blank, read_number, refuse_odd
@@ -56,10 +56,9 @@ def read_reactor(argument: Argument, known: Known, names: Iterable[str]) -> Reac
     names : those labels, for hints
     """
     if is_empty(argument):
-        what = "is missing" if not isinstance(argument, tuple) else "is blank"
         raise InputError(
-            f"the reactor {what}: give a residence time, a range of them, a block of label | value | unit,"
-            " or a table of cases",
+            f"the reactor {_emptiness(argument)}: give a residence time, a range of them, a block of"
+            " label | value | unit, or a table of cases",
             Place(TABLE),
         )
     block = as_block(argument, Place(TABLE))
@@ -67,13 +66,38 @@ def read_reactor(argument: Argument, known: Known, names: Iterable[str]) -> Reac
         place = Place(TABLE, 1, 1) if isinstance(argument, tuple) else Place(TABLE)
         return _bare(((read_number(block[0][0], place),),), None)
     cells = trimmed(block)
-    if not any(_is_text(cell) for row in cells for cell in row):
-        return _range(block)
+    if _is_range(cells):
+        return _range(cells)
     return _labelled(Grid(TABLE, cells), known, tuple(names))
+
+
+def _emptiness(argument: Argument) -> str:
+    if argument is OMITTED:
+        return "is missing"
+    blank = argument is None or (
+        isinstance(argument, tuple) and all(c is None for row in argument for c in row)
+    )
+    return "is blank" if blank else 'is an empty text ("")'
 
 
 def _is_text(cell: Cell) -> bool:
     return isinstance(cell, str) and bool(cell.strip())
+
+
+def _is_word(cell: Cell) -> bool:
+    """True for a text that can be a label; one that begins like a number is a bad number."""
+    return _is_text(cell) and not _numeric(cell)
+
+
+def _is_range(cells: Block) -> bool:
+    """True for residence times without labels: labels begin at the first cell."""
+    first = cells[0][0]
+    number = _numeric(first) or (isinstance(first, float | int) and not isinstance(first, bool))
+    if number and len(cells[0]) == 2 and all(_is_word(row[1]) for row in cells):
+        raise InputError(
+            "a residence time with a unit needs its label: Residence time | 5 | min", Place(TABLE, 1, 2)
+        )
+    return number or not any(_is_word(cell) for row in cells for cell in row)
 
 
 def _bare(rows: tuple[tuple[float, ...] | SheetError, ...], shape: tuple[int, int] | None) -> ReactorInput:
@@ -105,20 +129,30 @@ def _labelled(grid: Grid, known: Known, names: tuple[str, ...]) -> ReactorInput:
         raise InputError("more than one blank row in the reactor table", grid.place(blank[1], 0, ""))
     if blank:
         cut = blank[0]
+        if _starts_cases(Grid(TABLE, grid.cells[:cut]), known):
+            raise InputError("a blank row inside the table of cases: delete it", grid.place(cut, 0, ""))
         fixed = _block(grid, 0, cut, known, names)
         return _cases(grid, cut + 1, fixed, known, names)
-    if _starts_cases(grid):
+    if _starts_cases(grid, known):
         return _cases(grid, 0, {}, known, names)
     return ReactorInput(fixed=_block(grid, 0, len(grid.cells), known, names))
 
 
-def _starts_cases(grid: Grid) -> bool:
-    """A header row of texts over rows that do not begin with one."""
-    if len(grid.cells) < 2:
+def _starts_cases(grid: Grid, known: Known) -> bool:
+    """A header row of texts, and a first column that holds values: no label below the first row."""
+    if len(grid.cells) < 2 or not all(is_blank(cell) or _is_text(cell) for cell in grid.cells[0]):
         return False
-    head = all(is_blank(cell) or _is_text(cell) for cell in grid.cells[0])
-    body = any(not is_blank(cell) for cell in grid.cells[1])
-    return head and body and not any(_is_text(row[0]) and not _numeric(row[0]) for row in grid.cells[1:])
+    column = [row[0] for row in grid.cells[1:]]
+    labels = [cell for cell in column if _is_word(cell)]
+    if any(_is_label(str(cell), known) for cell in labels):
+        return False
+    return len(labels) < len(column)
+
+
+def _is_label(text: str, known: Known) -> bool:
+    whole = " ".join(text.split())
+    name = split_header(whole)[0]
+    return known(whole) or known(name) or fold(name) in LABELS
 
 
 def _numeric(cell: Cell) -> bool:
@@ -189,7 +223,13 @@ def _cases(grid: Grid, head: int, fixed: dict[str, Quantity | str], known: Known
                 raise InputError("the column of cases has no header", place)
             continue
         refuse_odd(cell, place, "a label")
-        label, unit = _label(str(cell), known, names, place)
+        if not isinstance(cell, str):
+            raise InputError(
+                "a number where a label belongs: after a blank row comes a table of cases, with its labels in"
+                " one row (a blank row inside a block of labels has to go)",
+                place,
+            )
+        label, unit = _label(cell, known, names, place)
         if fold(label) in LABELS and LABELS[fold(label)].kind is Kind.TEXT:
             raise InputError(f"{label} can't change from case to case: give it in the block above", place)
         if label in fixed or any(label == other.label for _, other in columns):
