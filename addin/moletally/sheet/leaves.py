@@ -11,7 +11,7 @@ from moletally.chemistry.expression import MATHS, Call, Function, Name
 from moletally.chemistry.units import DIMENSIONLESS, Dims, Unit, parse_unit
 from moletally.sheet.state import State
 
-__all__ = ["WANT", "Leaf", "call_leaf", "name_leaf"]
+__all__ = ["WANT", "Leaf", "call_leaf", "name_leaf", "species_leaf"]
 
 Floats = NDArray[np.float64]
 
@@ -185,10 +185,15 @@ def call_leaf(state: State, node: Call) -> Leaf:
     return CALLS[node.function][1](state, node)
 
 
+def species_leaf(state: State, index: int) -> Leaf:
+    """The outlet concentration of a species."""
+    return _concentration(state, index, state.concentration)
+
+
 def name_leaf(state: State, node: Name) -> Leaf:
     """The value of a bare name: a species first, else one of the words."""
     if node.text in state.names:
-        return _concentration(state, state.names.index(node.text), state.concentration)
+        return species_leaf(state, state.names.index(node.text))
     if node.text in WORDS:
         return WORDS[node.text](state)
     raise InputError(f"unknown name {node.text!r}. {near_miss(node.text, [*state.names, *WORDS])}")

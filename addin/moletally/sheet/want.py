@@ -28,10 +28,10 @@ from moletally.chemistry.expression import (
     split_unit,
 )
 from moletally.chemistry.units import Dims, Unit, parse_unit
-from moletally.sheet.leaves import ONE, WANT, Leaf, call_leaf, name_leaf
+from moletally.sheet.leaves import ONE, WANT, Leaf, call_leaf, name_leaf, species_leaf
 from moletally.sheet.state import State
 
-__all__ = ["Answer", "answer"]
+__all__ = ["Answer", "answer", "species_answer"]
 
 Floats = NDArray[np.float64]
 MATHS_NAMES = frozenset(f.name for f in MATHS)
@@ -73,6 +73,12 @@ def answer(text: str, state: State, place: Place) -> Answer:
             return _plain(tree, state) if unit is None else _converted(tree, unit, state)
     except SheetError as error:
         raise error.at(place) from None
+
+
+def species_answer(state: State, index: int) -> Answer:
+    """The concentration of a species, as it is shown without a want."""
+    leaf = species_leaf(state, index)
+    return Answer(leaf.shown, leaf.unit.text)
 
 
 def _plain(tree: Node, state: State) -> Answer:
