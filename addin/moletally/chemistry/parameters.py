@@ -1,7 +1,7 @@
 """The parameter vector of a network: rate constants, energies and reference temperatures, in SI."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -52,6 +52,32 @@ class Parameter:
         if self.kind == ParameterKind.ENERGY and self.unit is not None and self.unit.dims == ENERGY:
             return si / GAS_CONSTANT
         return si
+
+    def with_unit(self, text: str | None, with_units: bool, place: Place) -> "Parameter":
+        """The same parameter as it is given elsewhere, in a unit of its own."""
+        if self.kind == ParameterKind.VALUE and not with_units:
+            if text not in (None, "", "-", "1"):
+                raise InputError(
+                    f"{self.label} has the unit {text!r}, but other quantities of this call have none:"
+                    " give units everywhere or nowhere",
+                    place,
+                )
+            return replace(self, place=place)
+        if text is None and self.kind == ParameterKind.VALUE and self.unit is not None and not self.unit.text:
+            return replace(self, place=place)
+        if text is None:
+            raise InputError(f"{self.label} has no unit: write it behind the label", place)
+        unit = parse_unit(text)
+        energies = self.kind == ParameterKind.ENERGY and unit.dims in (ENERGY, KELVIN)
+        if (
+            self.unit is not None
+            and not energies
+            and any(abs(a - b) > 1e-9 for a, b in zip(unit.dims, self.unit.dims, strict=True))
+        ):
+            raise InputError(
+                f"{self.label} is in {self.unit.text or '-'} in its table and can't be in {text} here", place
+            )
+        return replace(self, unit=unit, place=place)
 
     def check(self, value: float) -> None:
         """Raise for a number that can't be."""

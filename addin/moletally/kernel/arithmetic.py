@@ -26,7 +26,8 @@ Table: TypeAlias = tuple[Callable[[Value, Value], Value], ...]
 Slope: TypeAlias = Callable[[Value, Value, Value], Value] | None
 Slopes: TypeAlias = tuple[tuple[Slope, ...], tuple[Slope, ...]]
 
-DIGITS = Context(prec=50, Emin=-(10**8), Emax=10**8)  # long enough for a condition of 1e30
+# For DECIMALS to run in (decimal.localcontext): long enough for a condition of 1e30.
+DIGITS = Context(prec=50, Emin=-(10**8), Emax=10**8)
 
 
 def _table(**functions: Callable[[Value, Value], Value]) -> Table:
@@ -115,24 +116,22 @@ STRICT: Table = _table(**(_ARRAY_FUNCTIONS | {"POW": _strict_powers, "SQRT": lam
 
 
 def _decimal_power(x: Decimal, y: Decimal) -> Decimal:
-    if x >= 0 or y == y.to_integral_value():
-        return DIGITS.power(x, y)
-    return -DIGITS.power(-x, y)
+    return x**y if x >= 0 or y == y.to_integral_value() else -((-x) ** y)
 
 
 DECIMALS: Table = _table(
-    ADD=DIGITS.add,
-    SUB=DIGITS.subtract,
-    MUL=DIGITS.multiply,
-    DIV=DIGITS.divide,
+    ADD=lambda x, y: x + y,
+    SUB=lambda x, y: x - y,
+    MUL=lambda x, y: x * y,
+    DIV=lambda x, y: x / y,
     POW=_decimal_power,
     MIN=min,
     MAX=max,
     NEG=lambda x, _: -x,
-    SQRT=lambda x, _: DIGITS.sqrt(x) if x >= 0 else -DIGITS.sqrt(-x),
-    EXP=lambda x, _: DIGITS.exp(x),
-    LN=lambda x, _: DIGITS.ln(x),
-    LOG10=lambda x, _: DIGITS.log10(x),
+    SQRT=lambda x, _: x.sqrt() if x >= 0 else -(-x).sqrt(),
+    EXP=lambda x, _: x.exp(),
+    LN=lambda x, _: x.ln(),
+    LOG10=lambda x, _: x.log10(),
     ABS=lambda x, _: abs(x),
 )
 

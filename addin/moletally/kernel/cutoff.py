@@ -1,6 +1,6 @@
 """Laws near zero concentrations, made fit for integrators.
 
-Below a floor delta of about rounding, a law r of order q in species i is continued as
+Below a floor delta a law r of order q in species i is continued as
 
     r(max(c_i, delta)) g_q(c_i/delta),   g_q(u) = u ((2 - q) + (q - 1) u)
 
@@ -17,9 +17,14 @@ from numpy.typing import NDArray
 from moletally.kernel.rates import Bound, Floats
 from moletally.kernel.structure import ZERO_ORDER, Structure
 
-__all__ = ["FLOOR", "Laws"]
+__all__ = ["Laws"]
 
-FLOOR = 1e-15  # of the species' scale: just above the rounding of what is subtracted from it
+# Of the species' scale. It must be deep: beside a law of order zero that takes all that is supplied, a
+# fast one of order one half would take its share at 1e-15; and a chain carrier of half order in its own
+# end may run a reaction from a share of 1e-16.
+FLOOR = 1e-30
+# Where a law has no bound at zero there is no answer beyond; what counts is to get there in few steps.
+ENDLESS_FLOOR = 1e-15
 
 Ints = NDArray[np.intp]
 
@@ -47,7 +52,8 @@ class Laws:
         order = structure.order[:, edged]
         reading = (order < ZERO_ORDER) & (structure.nu[:, edged] >= 0)
         bound = Bound.of(structure.tape, T, p)
-        return cls(bound, edged, FLOOR * scale[:, edged], ~reading, order)
+        share = np.where(structure.endless[edged], ENDLESS_FLOOR, FLOOR)
+        return cls(bound, edged, share * scale[:, edged], ~reading, order)
 
     def at(self, rows: Ints) -> "Laws":
         """The cases in `rows`."""
@@ -87,11 +93,13 @@ class Laws:
         """g and dg/dc, shape (n, terms, edged); 1 and 0 above the floor and where g does not apply."""
         u = np.minimum(c[:, self.edged] / self.floor, 1.0)[:, None, :]
         q = self.order
-        inside = u < 1
-        positive = np.maximum(u, 0.0)
+        # Below zero a law stops. Were it to run backwards there, two such species would drive each other.
+        some = np.maximum(u, 0.0)
         with np.errstate(all="ignore"):
-            steep = np.where(u > 0, positive ** np.maximum(q, 2.0), 0.0)
-            g = np.where(q > 2, steep, u * ((2 - q) + (q - 1) * positive))
-            dg = np.where(q > 2, q * steep / np.where(u > 0, u, 1.0), (2 - q) + 2 * (q - 1) * positive)
+            steep = np.where(some > 0, some ** np.maximum(q, 2.0), 0.0)
+            g = np.where(q > 2, steep, some * ((2 - q) + (q - 1) * some))
+            dg = np.where(q > 2, q * steep / np.where(some > 0, some, 1.0), (2 - q) + 2 * (q - 1) * some)
+        dg = np.where(u < 0, 0.0, dg)
+        inside = u < 1
         applies = self.factor & inside
         return np.where(applies, g, 1.0), np.where(applies, dg, 0.0) / self.floor[:, None, :]

@@ -1,6 +1,6 @@
 """The steady balance of one tank in 50 digits, for the few where doubles lose too many."""
 
-from decimal import Decimal, DivisionByZero, InvalidOperation, Overflow
+from decimal import Decimal, DivisionByZero, InvalidOperation, Overflow, localcontext
 
 import numpy as np
 
@@ -10,6 +10,7 @@ from moletally.kernel.rates import Floats, Tape
 __all__ = ["refine"]
 
 MOST_ITERATIONS = 40
+MOST_SHRINK = Decimal("-0.9")
 ENOUGH = Decimal("1e-25")  # relative change of a last iteration
 MOST_SPECIES = 30  # elimination in decimals takes about a microsecond per product
 
@@ -25,22 +26,25 @@ def refine(tape: Tape, nu: Floats, c: Floats, feed: Floats, tau: float, T: float
     """
     if len(c) > MOST_SPECIES:
         return None
-    registers = _bound(tape, T, p)
+    with localcontext(DIGITS):
+        try:
+            return _newton(tape, nu, c, feed, tau, _bound(tape, T, p))
+        except (InvalidOperation, DivisionByZero, Overflow, ZeroDivisionError):
+            return None
+
+
+def _newton(
+    tape: Tape, nu: Floats, c: Floats, feed: Floats, tau: float, registers: list[Value]
+) -> Floats | None:
     fed, time = [Decimal(x) for x in feed.tolist()], Decimal(tau)
     weights = [[Decimal(x) for x in row] for row in nu.tolist()]
     state = [Decimal(x) for x in c.tolist()]
-    try:
-        for _ in range(MOST_ITERATIONS):
-            rates, slopes = _laws(tape, registers, state)
-            matrix, right = _balance(weights, rates, slopes, fed, state, time)
-            change = _eliminate(matrix, right)
-            state = [
-                x * (1 + d) if d > Decimal("-0.9") else x / 10 for x, d in zip(state, change, strict=True)
-            ]
-            if max(map(abs, change)) < ENOUGH:
-                return np.array([float(x) for x in state])
-    except (InvalidOperation, DivisionByZero, Overflow, ZeroDivisionError):
-        return None
+    for _ in range(MOST_ITERATIONS):
+        rates, slopes = _laws(tape, registers, state)
+        change = _eliminate(*_balance(weights, rates, slopes, fed, state, time))
+        state = [x * (1 + d) if d > MOST_SHRINK else x / 10 for x, d in zip(state, change, strict=True)]
+        if max(map(abs, change)) < ENOUGH:
+            return np.array([float(x) for x in state])
     return None
 
 
@@ -72,39 +76,35 @@ def _balance(
     nu: list[Row], rates: Row, slopes: list[dict[int, Decimal]], feed: Row, c: Row, tau: Decimal
 ) -> tuple[list[Row], Row]:
     """(I - tau nu^T V) diag(c) and feed - c + tau nu^T r."""
-    add, multiply = DIGITS.add, DIGITS.multiply
     size = len(c)
-    right = [add(feed[i], -c[i]) for i in range(size)]
+    right = [feed[i] - c[i] for i in range(size)]
     matrix = [[c[i] if i == k else Decimal(0) for k in range(size)] for i in range(size)]
     for row, rate, slope in zip(nu, rates, slopes, strict=True):
         for i, weight in enumerate(row):
             if weight:
-                factor = multiply(weight, tau)
-                right[i] = add(right[i], multiply(factor, rate))
+                factor = weight * tau
+                right[i] += factor * rate
                 for k, value in slope.items():
-                    matrix[i][k] = add(matrix[i][k], -multiply(multiply(factor, value), c[k]))
+                    matrix[i][k] -= factor * value * c[k]
     return matrix, right
 
 
 def _eliminate(matrix: list[Row], right: Row) -> Row:
-    """Gauss with row scaling and pivoting; ZeroDivisionError or InvalidOperation where singular."""
-    subtract, multiply, divide = DIGITS.subtract, DIGITS.multiply, DIGITS.divide
+    """Gauss with row scaling and pivoting; a decimal error where singular."""
     size = len(right)
     rows = []
     for row, b in zip(matrix, right, strict=True):
         scale = max(map(abs, row))
-        rows.append([divide(x, scale) for x in (*row, b)])
+        rows.append([x / scale for x in (*row, b)])
     for k in range(size):
         best = max(range(k, size), key=lambda i: abs(rows[i][k]))
         rows[k], rows[best] = rows[best], rows[k]
         for i in range(k + 1, size):
             if rows[i][k]:
-                factor = divide(rows[i][k], rows[k][k])
-                rows[i] = [subtract(x, multiply(factor, y)) for x, y in zip(rows[i], rows[k], strict=True)]
+                factor = rows[i][k] / rows[k][k]
+                rows[i] = [x - factor * y for x, y in zip(rows[i], rows[k], strict=True)]
     out = [Decimal(0)] * size
     for k in reversed(range(size)):
-        rest = rows[k][size]
-        for i in range(k + 1, size):
-            rest = subtract(rest, multiply(rows[k][i], out[i]))
-        out[k] = divide(rest, rows[k][k])
+        rest = rows[k][size] - sum(rows[k][i] * out[i] for i in range(k + 1, size))
+        out[k] = rest / rows[k][k]
     return out

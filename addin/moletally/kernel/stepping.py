@@ -26,10 +26,12 @@ EXPLICIT, STIFF = 0, 1
 SAFETY = 0.9
 MOST_SHRINK = 0.1
 NOT_FINITE_SHRINK = 0.1  # where a law has no value the step went far too far
+AHEAD = 0.98  # of the way to zero
 FIRST_CHANGE = 0.01  # a first step may change what is there by a hundredth
 STIFF_LIMIT = 3.0  # |h lambda|: accuracy asks for less than 1, stability for less than 6
-STIFF_STEPS = 12  # that many such steps in a row are no accident
-SMALLEST = 1e-22  # of the time gone; time is kept to twice the digits, as laws that end need small steps
+STIFF_STEPS = 12.0  # that many such steps, accepted or not, are no accident
+PARDON = 0.25  # what a step that is not so limited takes off the count
+SMALLEST = 1e-33  # of the time gone; time is kept to twice the digits, as laws that end need small steps
 RUNAWAY = 1e6  # growth beyond which a vanishing step means that concentrations run away
 LARGEST = 1e250
 
@@ -81,7 +83,7 @@ class Stepper:
         self.status = np.zeros(n, dtype=np.int_)
         self.steps = np.zeros(n, dtype=np.int_)
         self.work = np.zeros(n, dtype=np.int_)
-        self._stiff_steps = np.zeros(n, dtype=np.int_)
+        self._stiff_steps = np.zeros(n)
         self._rejected = np.zeros(n, dtype=np.bool_)
         self._largest = np.maximum(np.abs(c).max(axis=1), 1e-300)
         self._whole: tuple[Ints, Flow, Floats] | None = None
@@ -124,22 +126,24 @@ class Stepper:
             size = (np.abs(error) / allowed).max(axis=1)
             finite = np.isfinite(size) & np.isfinite(new).all(axis=1)
             size = np.where(finite, np.maximum(size, 1e-10), np.inf)
-            size = np.where((new < -absolute).any(axis=1), np.maximum(size, 4.0), size)
             factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
-        fine = size <= 1.0
+            negative = new < -absolute
+            # Of a species that would end below zero, this step leaves a little if it falls evenly.
+            factor = np.minimum(factor, np.where(negative, AHEAD * c / (c - new), np.inf).min(axis=1))
+        fine = (size <= 1.0) & ~negative.any(axis=1)
         growth = np.where(self._rejected[rows] & fine, 1.0, METHODS[method].most_growth)
         factor = np.clip(factor, np.where(finite, MOST_SHRINK, NOT_FINITE_SHRINK), growth)
         self.steps[rows] += 1
         self.work[rows] += METHODS[method].evaluations
-        self.h[rows] = h * factor
+        self.h[rows] = np.minimum(h, LARGEST) * factor
         self._rejected[rows] = ~fine
         done = rows[fine]
         self._pass_time(done, h[fine])
         self.c[done] = new[fine] if self.totals is None else self.totals.restore(new[fine], done)
         self._look_for_trouble(rows, fine, finite)
-        if method == EXPLICIT and len(done):
+        if method == EXPLICIT:
             assert stiffness is not None
-            self._look_for_stiffness(done, stiffness[fine])
+            self._look_for_stiffness(rows, stiffness > STIFF_LIMIT)
         return Stride(done, t[fine], c[fine], h[fine], method)
 
     def _pass_time(self, rows: Ints, h: Floats) -> None:
@@ -148,9 +152,9 @@ class Stepper:
         self.t[rows] = before + step
         self._late[rows] = step - (self.t[rows] - before)
 
-    def _look_for_stiffness(self, rows: Ints, stiffness: Floats) -> None:
-        limited = stiffness > STIFF_LIMIT
-        self._stiff_steps[rows] = np.where(limited, self._stiff_steps[rows] + 1, 0)
+    def _look_for_stiffness(self, rows: Ints, limited: NDArray[np.bool_]) -> None:
+        count = self._stiff_steps[rows]
+        self._stiff_steps[rows] = np.where(limited, count + 1.0, np.maximum(count - PARDON, 0.0))
         stiff = self._stiff_steps[rows] >= STIFF_STEPS
         laws = self.flow.laws
         if len(laws.edged):

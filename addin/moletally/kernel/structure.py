@@ -19,7 +19,7 @@ from moletally.kernel.rates import Bound, Floats, Tape, tape_of
 from moletally.kernel.terms import Terms, split
 from moletally.kernel.totals import conserved
 
-__all__ = ["Structure", "structures"]
+__all__ = ["Structure", "everything", "structures"]
 
 ABSENT_ORDER = 1e4  # an absent species vanishes faster than any power of a vanishing one
 ZERO_ORDER = 1e-9  # orders are exact but for rounding
@@ -76,9 +76,25 @@ class Structure:
         return self.order < -ZERO_ORDER
 
     @cached_property
+    def endless(self) -> NDArray[np.bool_]:
+        """Species, shape (present,), that a term of negative order consumes."""
+        return np.asarray((self.runaway & (self.nu < 0)).any(axis=0))
+
+    @cached_property
     def finite_end(self) -> NDArray[np.bool_]:
         """Species, shape (present,), that a term of an order below one can use up entirely."""
         return np.asarray(((self.order < 1 - ZERO_ORDER) & (self.nu < 0)).any(axis=0))
+
+    def reached(self, fed: tuple[bool, ...]) -> NDArray[np.bool_]:
+        """Present species that are there if only those marked in `fed` (by present species) are fed."""
+        if all(fed):
+            return np.ones(len(fed), dtype=np.bool_)
+        model = self.terms.model
+        there = np.zeros(model.program.n_species, dtype=np.bool_)
+        there[self.present[list(fed)]] = True
+        return _what_runs(everything(model.program), self.registers, model.stoichiometry, there)[0][
+            self.present
+        ]
 
     @cached_property
     def unique(self) -> bool:
@@ -147,10 +163,15 @@ def _inputs(program: Program) -> tuple[tuple[int, ...], tuple[int, ...]]:
     return tuple(sorted(changes)), tuple(sorted(valued & changes))
 
 
+def everything(program: Program) -> Tape:
+    """All rates of a program, with derivatives by all species."""
+    return tape_of(program, tuple(range(program.n_reactions)), tuple(range(program.n_species)))
+
+
 def _traits(program: Program, T: Floats, p: Floats) -> Floats:
     """What the structure depends on besides the feed, shape (N, traits)."""
     signs, values = _inputs(program)
-    tape = tape_of(program, tuple(range(program.n_reactions)), tuple(range(program.n_species)))
+    tape = everything(program)
     registers = Bound.of(tape, T, p).registers
     traits = np.empty((len(T), len(signs) + len(values)))
     for k, register in enumerate(signs):
@@ -163,13 +184,13 @@ def _traits(program: Program, T: Floats, p: Floats) -> Floats:
 def _analyse(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats) -> Structure:
     terms = _split(model, T, p)
     program, nu = terms.model.program, terms.model.stoichiometry
-    everything = tape_of(program, tuple(range(program.n_reactions)), tuple(range(program.n_species)))
-    registers = Bound.of(everything, T, p).registers
-    present, firing, unbounded, wanted = _what_runs(everything, registers, nu, there)
+    tape = everything(program)
+    registers = Bound.of(tape, T, p).registers
+    present, firing, unbounded, wanted = _what_runs(tape, registers, nu, there)
     absent = np.flatnonzero(~present)
     order = np.zeros((len(firing), int(present.sum())))
     for k, i in enumerate(np.flatnonzero(present)):
-        limits = leading(everything, registers, _species(present, vanishing=int(i)))
+        limits = leading(tape, registers, _species(present, vanishing=int(i)))
         order[:, k] = [limits[j].order for j in firing]
     order -= ABSENT_ORDER * np.rint(order / ABSENT_ORDER, where=np.isfinite(order), out=np.zeros_like(order))
     here = np.flatnonzero(present)
@@ -190,7 +211,7 @@ def _analyse(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats) -> St
 def _split(model: Model, T: Floats, p: Floats) -> Terms:
     """All laws as terms, but those whole whose terms cancel at zero of a species: 1 - exp(-A) is one law."""
     program = model.program
-    tape = tape_of(program, tuple(range(program.n_reactions)), tuple(range(program.n_species)))
+    tape = everything(program)
     registers = Bound.of(tape, T, p).registers
     everywhere = np.ones(program.n_species, dtype=np.bool_)
     whole: set[int] = set()

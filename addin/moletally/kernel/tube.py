@@ -205,8 +205,7 @@ class _Run:
 
     def _stopped(self) -> NDArray[np.int_]:
         """Why vessels stopped early: beside a vanishing species it is that species' doing."""
-        structure = self.structure
-        ends = (structure.runaway & (structure.nu < 0)).any(axis=0)
+        ends = self.structure.endless
         scale = np.maximum(self.feed.max(axis=1, keepdims=True), NOWHERE)
         gone = (self.stepper.c[:, ends] < VANISHING * scale).any(axis=1)
         return np.where(

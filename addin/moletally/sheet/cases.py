@@ -7,8 +7,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.chemistry.errors import InputError, Place, SheetError
+from moletally.chemistry.quantity import Dims, Unit, to_si
 from moletally.chemistry.tables import Quantity
-from moletally.chemistry.units import Dims, Unit, to_si
 from moletally.sheet.reading.reactor import CaseColumn, ReactorInput
 
 __all__ = ["Cases"]

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from moletally.chemistry.errors import InputError, near_miss
 from moletally.chemistry.expression import MATHS, Call, Function, Name
-from moletally.chemistry.units import DIMENSIONLESS, Dims, Unit, parse_unit
+from moletally.chemistry.quantity import DIMENSIONLESS, Dims, Unit, parse_unit
 from moletally.sheet.state import State
 
 __all__ = ["WANT", "Leaf", "call_leaf", "name_leaf", "species_leaf"]

@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.chemistry.units import DIMENSIONLESS, Unit
+from moletally.chemistry.quantity import DIMENSIONLESS, Unit
 
 __all__ = ["ResultUnits", "State"]
 

@@ -27,7 +27,7 @@ from moletally.chemistry.expression import (
     parse,
     split_unit,
 )
-from moletally.chemistry.units import Dims, Unit, parse_unit
+from moletally.chemistry.quantity import Dims, Unit, parse_unit
 from moletally.sheet.leaves import ONE, WANT, Leaf, call_leaf, name_leaf, species_leaf
 from moletally.sheet.state import State
 

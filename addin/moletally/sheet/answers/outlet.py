@@ -69,7 +69,10 @@ def _row(kind: str, request: Request, outlets: Outlets, columns: Sequence[Answer
         return [row] * len(columns)
     if outlets.status[row] != Status.OK:
         fault: SheetError = NoAnswer(failure(kind, request, outlets, case))
-        return [column if isinstance(column, SheetError) else "" if column is None else fault for column in columns]
+        return [
+            column if isinstance(column, SheetError) else "" if column is None else fault
+            for column in columns
+        ]
     return [column.cell(row) if isinstance(column, Answer) else "" if column is None else column
             for column in columns]  # fmt: skip
 

@@ -1,0 +1,139 @@
+"""Atom balance of the reactions, where formulas are given, and mass balance, where molar masses are."""
+
+import re
+from collections import Counter
+from functools import lru_cache
+
+from moletally.chemistry.errors import Finding, InputError, Level, Place
+from moletally.chemistry.network import Network, Reaction
+from moletally.chemistry.tables import FeedTable
+
+__all__ = ["atoms", "check_formulas"]
+
+PIECE = re.compile(
+    r"(?P<element>[A-Z][a-z]?)|(?P<open>[(\[])|(?P<close>[)\]])|(?P<count>\d+(?:\.\d+)?)|(?P<dot>[.·*])"
+)
+CHARGE = re.compile(r"\^?(?P<size>\d*)(?P<sign>[+-]+)$")
+MAX_LENGTH = 200
+OFF_BY = 5e-3  # of the mass of a side: molar masses are often given to three digits
+SLACK = 1e-6
+
+
+@lru_cache(maxsize=2048)
+def atoms(formula: str) -> tuple[tuple[str, float], ...]:
+    """Atoms of a formula such as `C2H6O`, `Ca(OH)2`, `CuSO4.5H2O`, `SO4^2-`; a charge counts as `charge`.
+
+    Raises
+    ------
+    InputError
+        Where the text is no formula.
+    """
+    text = formula.replace(" ", "")
+    if len(text) > MAX_LENGTH:
+        raise InputError(f"the formula is longer than {MAX_LENGTH} characters")
+    total: Counter[str] = Counter()
+    charge = CHARGE.search(text)
+    if charge is not None and charge.start() > 0:
+        size = int(charge["size"]) if charge["size"] and charge[0].startswith("^") else len(charge["sign"])
+        total["charge"] = size if charge["sign"][0] == "+" else -size  # type: ignore[assignment]
+        text = (
+            text[: charge.start()]
+            if charge[0].startswith("^") or not charge["size"]
+            else text[: charge.start("sign")]
+        )
+    for part in re.split(r"[.·*]", text):
+        lead = re.match(r"\d+(?:\.\d+)?", part)
+        factor = float(lead[0]) if lead else 1.0
+        for element, count in _group(part[lead.end() if lead else 0 :], formula).items():
+            total[element] += factor * count  # type: ignore[assignment]
+    return tuple(sorted((element, float(count)) for element, count in total.items() if count))
+
+
+def _group(text: str, formula: str) -> dict[str, float]:
+    stack: list[dict[str, float]] = [{}]
+    at = 0
+    last: dict[str, float] = {}
+    while at < len(text):
+        match = PIECE.match(text, at)
+        if match is None or match.lastgroup == "dot" or (match.lastgroup == "count" and not last):
+            raise InputError(f"the formula {formula!r} can't be read at {text[at:][:8]!r}")
+        at = match.end()
+        if match.lastgroup == "open":
+            stack.append({})
+            last = {}
+            continue
+        if match.lastgroup == "close":
+            if len(stack) == 1:
+                raise InputError(f"the formula {formula!r} has a bracket too many")
+            last = stack.pop()
+            _add(stack[-1], last, 1.0)
+            continue
+        if match.lastgroup == "count":
+            _add(stack[-1], last, float(match[0]) - 1.0)
+            last = {}
+            continue
+        last = {match[0]: 1.0}
+        _add(stack[-1], last, 1.0)
+    if len(stack) > 1 or not stack[0]:
+        raise InputError(f"the formula {formula!r} is not complete")
+    return stack[0]
+
+
+def _add(total: dict[str, float], more: dict[str, float], factor: float) -> None:
+    for element, count in more.items():
+        total[element] = total.get(element, 0.0) + factor * count
+
+
+def check_formulas(network: Network, feed: FeedTable) -> list[Finding]:
+    """Doubts about masses that do not balance.
+
+    Raises
+    ------
+    InputError
+        For a reaction whose atoms do not balance, naming them: "H: 4 -> 2".
+    """
+    formulas = {row.name: (row.formula, row.place) for row in feed.species if row.formula}
+    masses = {row.name: row.molar_mass.value for row in feed.species if row.molar_mass is not None}
+    findings = []
+    for reaction in network.reactions:
+        species = {
+            name for side in (reaction.row.equation.left, reaction.row.equation.right) for name, _ in side
+        }
+        if species <= formulas.keys():
+            _check_atoms(reaction, formulas)
+        elif species <= masses.keys() and not network.mass_basis:
+            findings += _check_mass(reaction, masses)
+    return findings
+
+
+def _check_atoms(reaction: Reaction, formulas: dict[str, tuple[str | None, Place]]) -> None:
+    sides: list[dict[str, float]] = []
+    for side in (reaction.row.equation.left, reaction.row.equation.right):
+        total: dict[str, float] = {}
+        for name, coefficient in side:
+            formula, place = formulas[name]
+            try:
+                _add(total, dict(atoms(formula or "")), coefficient)
+            except InputError as error:
+                raise error.at(place) from None
+        sides.append(total)
+    left, right = sides
+    off = [
+        f"{element}: {left.get(element, 0):g} -> {right.get(element, 0):g}"
+        for element in sorted(left.keys() | right.keys())
+        if abs(left.get(element, 0) - right.get(element, 0)) > SLACK
+    ]
+    if off:
+        raise InputError(f"{reaction.row.equation.text} does not balance by the formulas: {', '.join(off)}."
+                         " Mend the coefficients, or leave the Formula column out", reaction.row.place)  # fmt: skip
+
+
+def _check_mass(reaction: Reaction, masses: dict[str, float]) -> list[Finding]:
+    left, right = (
+        sum(coefficient * masses[name] for name, coefficient in side)
+        for side in (reaction.row.equation.left, reaction.row.equation.right)
+    )
+    if not left or not right or abs(left - right) <= OFF_BY * max(left, right):
+        return []
+    return [Finding(Level.DOUBT, str(reaction.row.place),
+                    f"{reaction.row.equation.text}: the masses do not balance, {left:.6g} -> {right:.6g} by MW")]  # fmt: skip

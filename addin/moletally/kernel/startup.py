@@ -1,0 +1,171 @@
+"""The start-up of a tank: dc/dt = (feed - c)/tau + nu^T r(c) from its first contents until it rests.
+
+Which of several steady states a tank has is decided here. A root of Newton's method is only taken
+where the start-up comes to coincide with it.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.cutoff import Laws
+from moletally.kernel.flow import Flow
+from moletally.kernel.rates import Floats
+from moletally.kernel.stability import growth
+from moletally.kernel.status import Status
+from moletally.kernel.steady import Tanks, newton
+from moletally.kernel.stepping import STIFF, Stepper, Tolerance
+from moletally.kernel.structure import Structure
+
+__all__ = ["Rest", "start_up"]
+
+RELATIVE = 1e-6  # error of a step: enough to stay on the right side of a divide
+ABSOLUTE = 1e-25  # of the largest concentration; a seed of a trace may decide
+MOST_STEPS = 1500
+NOTHING = 1e-10  # of the least concentration: where Newton's method begins for a species at zero
+LOOK_EVERY = 4  # attempts between two looks for the state ahead
+SLOW = 0.3  # relative change per residence time below which a look is worth its cost
+COINCIDES = 1e-4  # relative distance at which a start-up has arrived
+DEPARTURE = 45.0  # doublings of e after which rounding would have left an unstable state
+SWINGS = 8  # turning points without rest that tell oscillation from slowness
+VANISHING = 1e-5  # of the largest concentration: where a law of negative order is about to end
+
+Ints = NDArray[np.intp]
+
+
+@dataclass(frozen=True, slots=True)
+class Rest:
+    """Where start-ups ended: c (n, S), status (n,), iterations (n,) of Newton's method, work (n,).
+
+    faded : bool ndarray, shape (n,) - what was there at the start only has been washed out
+    """
+
+    c: Floats
+    status: NDArray[np.int_]
+    faded: NDArray[np.bool_]
+    iterations: NDArray[np.int_]
+    work: NDArray[np.int_]
+
+
+def start_up(structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]) -> Rest:
+    """Follow n start-ups from `start`, shape (n, S).
+
+    tanks : Tanks - for the steady balance; laws : Laws - the same laws, made fit for integration
+    fed : bool ndarray, shape (n, S) - species that the feed alone brings about
+    """
+    return _StartUp(structure, tanks, laws, start, fed).run()
+
+
+class _StartUp:
+    def __init__(
+        self, structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]
+    ) -> None:
+        self.structure, self.tanks, self.fed = structure, tanks, fed
+        n = len(start)
+        largest = np.maximum(tanks.feed, start).max(axis=1, keepdims=True, initial=1e-25)
+        self.least = np.broadcast_to(ABSOLUTE * largest, start.shape).copy()
+        absolute = self.least.copy()
+        ends = structure.finite_end[laws.edged]
+        absolute[:, laws.edged[ends]] = 0.1 * laws.floor[:, ends]
+        self.near = np.zeros(start.shape)
+        self.near[:, laws.edged] = 2.0 * laws.floor
+        self.flow = Flow(laws, tanks.nu, tanks.feed, 1.0 / tanks.tau[:, None])
+        self.stepper = Stepper(self.flow, start, Tolerance((RELATIVE, RELATIVE), absolute), MOST_STEPS, STIFF)
+        self.rest = Rest(
+            start.copy(),
+            np.full(n, Status.WORK_CAP),
+            np.zeros(n, dtype=np.bool_),
+            np.zeros(n, dtype=np.int_),
+            np.zeros(n, dtype=np.int_),
+        )
+        self.unstable_until = np.full(n, np.inf)
+        self.swings = np.zeros(n, dtype=np.int_)
+        self.direction = np.zeros(start.shape)
+
+    def run(self) -> Rest:
+        """Step until every tank rests or is given up."""
+        stepper, tries = self.stepper, 0
+        while stepper.active.any():
+            before = stepper.c.copy()
+            for stride in stepper.attempt():
+                self._count_swings(stride.rows, before)
+            tries += 1
+            if tries % LOOK_EVERY == 0:
+                self._look()
+        self._explain()
+        self.rest.work[:] += stepper.work
+        return self.rest
+
+    def _count_swings(self, rows: Ints, before: Floats) -> None:
+        move = np.sign(self.stepper.c[rows] - before[rows])
+        turned = (move * self.direction[rows] < 0).any(axis=1)
+        self.swings[rows] += turned
+        self.direction[rows] = move
+
+    def _look(self) -> None:
+        """Where a start-up has become slow, ask Newton's method for the state ahead."""
+        stepper = self.stepper
+        rows = np.flatnonzero(stepper.active)
+        self._stop_endless(rows)
+        self._stop_faded(rows)
+        rows = np.flatnonzero(stepper.active)
+        if not len(rows):
+            return
+        c = stepper.c[rows]
+        tau = self.tanks.tau[rows]
+        with np.errstate(all="ignore"):
+            speed = np.abs(self.flow.at(rows).slope(c)) * tau[:, None]
+            slow = (speed <= SLOW * np.abs(c) + self.near[rows] + self.least[rows]).all(axis=1)
+        slow |= stepper.t[rows] > 20.0 * tau
+        rows = rows[slow]
+        if not len(rows):
+            return
+        now = stepper.c[rows]
+        guess = np.where(now > 0, now, NOTHING * self.least[rows])
+        roots = newton(self.tanks.at(rows), guess, most=20)
+        self.rest.iterations[rows] += roots.iterations
+        self.rest.work[rows] += roots.iterations
+        gap = np.abs(roots.c - stepper.c[rows])
+        close = roots.settled & (gap <= COINCIDES * roots.c + self.near[rows]).all(axis=1)
+        if close.any():
+            self._arrive(rows[close], roots.c[close])
+
+    def _arrive(self, rows: Ints, c: Floats) -> None:
+        """Take stable states; wait at unstable ones until rounding must have carried the tank away."""
+        stepper = self.stepper
+        rate, _, unstable = growth(self.tanks.at(rows), c)
+        with np.errstate(all="ignore"):
+            until = stepper.t[rows] + DEPARTURE / rate
+        self.unstable_until[rows] = np.where(unstable, np.minimum(self.unstable_until[rows], until), np.inf)
+        stuck = unstable & (stepper.t[rows] >= self.unstable_until[rows])
+        for which, status in ((~unstable, Status.OK), (stuck, Status.UNSTABLE)):
+            self.rest.c[rows[which]] = c[which]
+            self.rest.status[rows[which]] = status
+            stepper.active[rows[which]] = False
+
+    def _stop_endless(self, rows: Ints) -> None:
+        laws, structure = self.flow.laws, self.structure
+        if not len(laws.edged) or not len(rows):
+            return
+        ends = structure.endless[laws.edged]
+        gone = ((self.stepper.c[np.ix_(rows, laws.edged)] < laws.floor[rows]) & ends).any(axis=1)
+        self.rest.status[rows[gone]] = Status.UNBOUNDED_AT_ZERO
+        self.stepper.active[rows[gone]] = False
+
+    def _stop_faded(self, rows: Ints) -> None:
+        faded = ((self.stepper.c[rows] < self.least[rows]) & ~self.fed[rows]).any(axis=1)
+        faded &= self.stepper.t[rows] > 20.0 * self.tanks.tau[rows]
+        self.rest.faded[rows[faded]] = True
+        self.stepper.active[rows[faded]] = False
+
+    def _explain(self) -> None:
+        """Why the others did not come to rest."""
+        stepper, status = self.stepper, self.rest.status
+        failed = stepper.status != Status.OK
+        status[failed] = stepper.status[failed]
+        status[failed & (status == Status.WORK_CAP) & (self.swings >= SWINGS)] = Status.OSCILLATES
+        ends = self.structure.endless
+        scale = self.tanks.feed.max(axis=1, keepdims=True, initial=1e-25)
+        gone = (stepper.c[:, ends] < VANISHING * scale).any(axis=1)
+        status[failed & gone] = Status.UNBOUNDED_AT_ZERO

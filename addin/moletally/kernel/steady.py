@@ -1,0 +1,146 @@
+"""Newton's method for steady tanks: 0 = F(c) = feed - c + tau nu^T r(c), many at once.
+
+Unknowns are relative changes y = dc/c, so that a trace species counts as much as an abundant one:
+(I - tau nu^T V) diag(c) y = F. Concentrations stay positive: a step may take at most nine tenths,
+and more only of a species that has been losing that much step after step.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.cutoff import Laws
+from moletally.kernel.exact import balance
+from moletally.kernel.linear import inverse, solve
+from moletally.kernel.rates import Floats
+
+__all__ = ["Roots", "Tanks", "newton", "polish"]
+
+MOST_ITERATIONS = 60
+MOST_FALL, DEEPEST_FALL = 0.1, 1e-8
+SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
+STALLED = 1e-5  # rounding may keep an ill-conditioned tank from settling closer
+CLOSED = 1e-12  # residual relative to the terms of its balance
+GOOD = 1e-12  # estimated relative error that needs no second look
+EPSILON = 2.2e-16
+
+Ints = NDArray[np.intp]
+
+
+@dataclass(frozen=True, slots=True)
+class Tanks:
+    """n tanks of one structure: laws of its S present species, nu (terms, S), feed (n, S), tau (n,)."""
+
+    laws: Laws
+    nu: Floats
+    feed: Floats
+    tau: Floats
+
+    def at(self, rows: Ints) -> "Tanks":
+        """The cases in `rows`."""
+        return Tanks(self.laws.at(rows), self.nu, self.feed[rows], self.tau[rows])
+
+    def linear(self, c: Floats) -> tuple[Floats, Floats, Floats]:
+        """F (n, S), its terms' sum of sizes (n, S), and (I - tau nu^T V) diag(c) (n, S, S)."""
+        r, v = self.laws.slopes(c)
+        tau = self.tau[:, None]
+        f = self.feed - c + tau * (r @ self.nu)
+        terms = self.feed + c + tau * (np.abs(r) @ np.abs(self.nu))
+        matrix = np.matmul(self.nu.T, v) * (-tau[:, :, None] * c[:, None, :])
+        diagonal = np.arange(c.shape[1])
+        matrix[:, diagonal, diagonal] += c
+        return f, terms, matrix
+
+
+@dataclass(frozen=True, slots=True)
+class Roots:
+    """Where Newton's method ended: c (n, S), settled (n,), iterations (n,)."""
+
+    c: Floats
+    settled: NDArray[np.bool_]
+    iterations: NDArray[np.int_]
+
+
+def newton(tanks: Tanks, start: Floats, most: int = MOST_ITERATIONS) -> Roots:
+    """Iterate from start, shape (n, S), > 0."""
+    c = start.copy()
+    n = len(c)
+    settled = np.zeros(n, dtype=np.bool_)
+    iterations = np.full(n, most)
+    active, part = np.arange(n), tanks
+    fall = np.full(c.shape, MOST_FALL)
+    with np.errstate(all="ignore"):
+        for k in range(most):
+            now = c[active]
+            f, terms, matrix = part.linear(now)
+            y = solve(matrix, f)
+            change = np.abs(y).max(axis=1)
+            falls = ~(y > MOST_FALL - 1.0)
+            c[active] = now * np.where(falls, fall, 1.0 + y)
+            fall = np.where(falls, np.maximum(fall * fall, DEEPEST_FALL), MOST_FALL)
+            closed = (np.abs(f) <= CLOSED * terms).all(axis=1)
+            done = (change <= SETTLED) | ((change <= STALLED) & closed & (k >= 8))
+            lost = ~np.isfinite(change)
+            if done.any() or lost.any():
+                settled[active[done]] = True
+                iterations[active[done | lost]] = k + 1
+                keep = ~(done | lost)
+                active, fall = active[keep], fall[keep]
+                if not len(active):
+                    break
+                part = tanks.at(active)
+    return Roots(c, settled, iterations)
+
+
+@dataclass(frozen=True, slots=True)
+class Polished:
+    """Roots with their last digits: c (n, S), residual and condition (n,), error (n,) relative estimate.
+
+    residual : largest |F| relative to the sum of its terms
+    condition : largest relative change of an outlet per relative change of feed and rates
+    """
+
+    c: Floats
+    residual: Floats
+    condition: Floats
+    error: Floats
+
+
+def polish(tanks: Tanks, c: Floats) -> Polished:
+    """Improve roots until rounding no longer shows, with sums in twice the digits where it does."""
+    c = c.copy()
+    with np.errstate(all="ignore"):
+        f, terms, matrix = tanks.linear(c)
+        solver = inverse(matrix)
+        error = EPSILON * np.matmul(np.abs(solver), terms[:, :, None]).max(axis=(1, 2))
+        residual = (np.abs(f) / terms).max(axis=1, initial=0.0, where=terms > 0)
+        r = tanks.laws.rates(c)
+        sway = np.matmul(solver, tanks.nu.T) * (tanks.tau[:, None] * np.abs(r))[:, None, :]
+        fed = np.matmul(np.abs(solver), (tanks.feed)[:, :, None])[:, :, 0]
+        condition = (np.abs(sway).sum(axis=2) + fed).max(axis=1)
+        rough = np.flatnonzero(~(error <= GOOD))
+        if len(rough):
+            part = tanks.at(rough)
+            c[rough], residual[rough], last = _twice_the_digits(part, c[rough])
+            error[rough] = np.maximum(last, EPSILON * condition[rough])
+    return Polished(c, residual, condition, error)
+
+
+def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
+    """c, residual, and the last relative change."""
+    last = np.full(len(c), np.inf)
+    residual = np.full(len(c), np.inf)
+    for _ in range(6):
+        r = tanks.laws.rates(c)
+        f = balance(tanks.nu, tanks.tau[:, None] * r, tanks.feed, c)
+        _, terms, matrix = tanks.linear(c)
+        y = solve(matrix, f)
+        change = np.abs(y).max(axis=1)
+        better = change < last
+        residual = np.where(better, (np.abs(f) / terms).max(axis=1), residual)
+        last = np.where(better, change, last)
+        c = np.where(better[:, None] & (y > -0.5), c * (1.0 + y), c)
+        if not better.any() or (change <= EPSILON).all():
+            break
+    return c, residual, np.where(np.isfinite(last), last, np.inf)
