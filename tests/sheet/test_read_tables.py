@@ -377,3 +377,15 @@ def test_any_blocks_are_read_or_refused_in_words(first, second, third):
             assert error.reason
         else:
             assert all(value - value == 0 for value in tables.numbers)
+
+
+@pytest.mark.parametrize("piece", ["A", "(a)", "[", "((", "1", " k", "+", "A -> B ", "."])
+def test_a_cell_full_to_the_brim_is_refused_in_a_short_sentence(piece):
+    brim = piece * (32767 // len(piece))
+    for row, column in ((0, 1), (1, 0), (1, 1), (1, 2)):
+        for arguments in ((replaced(LIST, row, column, brim), FEED), (LIST, replaced(FEED, row, min(column, 1), brim)),
+                          (replaced(MATRIX, row, column, brim), None)):  # fmt: skip
+            try:
+                read_tables(*arguments, None)
+            except SheetError as error:
+                assert len(error.reason) < 1000

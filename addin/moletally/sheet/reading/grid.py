@@ -6,12 +6,9 @@ from functools import lru_cache
 
 from moletally.chemistry.errors import InputError, Place
 from moletally.sheet.cells import Argument, Block, Cell, ExcelError, Omitted
-from moletally.sheet.reading.numbers import is_blank, number_text, refuse_odd
+from moletally.sheet.reading.numbers import LONGEST, check_length, is_blank, number_text, refuse_odd
 
 __all__ = ["Grid", "as_block", "fold", "is_empty", "split_header", "text_of", "trimmed"]
-
-LONGEST_HEADER = 200  # characters; a longer text is no header with a unit, and is not searched for one
-
 BEHIND = re.compile(
     r"(?P<name>.*?)\s*(?:\[(?P<square>[^\[\]]*)\]|\((?P<round>[^()]*(?:\([^()]*\)[^()]*)*)\))"
 )
@@ -28,7 +25,7 @@ def fold(text: str) -> str:
 def split_header(text: str) -> tuple[str, str | None]:
     """`Feed [mol/L]` -> (`Feed`, `mol/L`); `in(A)`, `k(2)` and `b(A)` keep their parentheses."""
     stripped = " ".join(text.split())
-    match = BEHIND.fullmatch(stripped) if len(stripped) <= LONGEST_HEADER else None
+    match = BEHIND.fullmatch(stripped) if len(stripped) <= LONGEST else None
     if match is None or not match["name"]:
         return stripped, None
     if match["square"] is not None:
@@ -141,7 +138,7 @@ class Grid:
         if isinstance(cell, float | int):
             return number_text(cell)
         assert isinstance(cell, str)
-        return cell
+        return check_length(cell, place, "a header")
 
 
 def text_of(cell: Cell, place: Place) -> str | None:

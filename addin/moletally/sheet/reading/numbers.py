@@ -6,11 +6,23 @@ import re
 from moletally.chemistry.errors import InputError, Place, SheetError
 from moletally.sheet.cells import Cell, ExcelError
 
-__all__ = ["CellFault", "is_blank", "number_text", "read_name", "read_number", "refuse_odd", "symbol"]
+__all__ = [
+    "LONGEST",
+    "CellFault",
+    "check_length",
+    "is_blank",
+    "number_text",
+    "quoted",
+    "read_name",
+    "read_number",
+    "refuse_odd",
+    "symbol",
+]
 
 PLAIN = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?", re.ASCII)
 DECIMAL_COMMA = re.compile(r"[+-]?[\d.\s]*\d,\d+([eE][+-]?\d+)?|[+-]?\d{1,3}(,\d{3})+(\.\d*)?", re.ASCII)
 OTHER_MINUS = "−–—‐‑"
+LONGEST = 200  # characters of a header, label or name
 
 
 class CellFault(SheetError):
@@ -34,6 +46,18 @@ def is_blank(cell: Cell) -> bool:
 def number_text(number: float) -> str:
     """A number that stands where a text belongs, with all its digits: a Rate of 0.123456789, a unit 1."""
     return str(int(number)) if abs(number) < 1e15 and number == int(number) else repr(number)
+
+
+def quoted(text: str) -> str:
+    """A text of the user's as a reason shows it: a cell may hold 32,767 characters."""
+    return repr(text if len(text) <= LONGEST else text[: LONGEST - 1] + "…")
+
+
+def check_length(text: str, place: Place, what: str) -> str:
+    """The text, unless it is too long for a header or name."""
+    if len(text) > LONGEST:
+        raise InputError(f"a text of {len(text)} characters, where {what} belongs ({LONGEST} at most)", place)
+    return text
 
 
 def refuse_odd(cell: Cell, place: Place, what: str) -> None:
@@ -81,10 +105,10 @@ def read_number(cell: Cell, place: Place) -> float:
 
 def _why_not(cell: str, text: str) -> str:
     if DECIMAL_COMMA.fullmatch(text):
-        return f"{cell!r} is a text, not a number: which is its decimal mark? Type it as a number"
+        return f"{quoted(cell)} is a text, not a number: which is its decimal mark? Type it as a number"
     if text[0] in OTHER_MINUS and PLAIN.fullmatch(text[1:]):
-        return f"{cell!r} is a text: its minus is another character. Type it again with a plain -"
-    return f"{cell!r} is a text, where a number belongs"
+        return f"{quoted(cell)} is a text: its minus is another character. Type it again with a plain -"
+    return f"{quoted(cell)} is a text, where a number belongs"
 
 
 def read_name(cell: Cell, place: Place) -> str:
@@ -107,6 +131,6 @@ def read_name(cell: Cell, place: Place) -> str:
 
 def symbol(cell: Cell, place: Place) -> str:
     """The name of a species or constant; the brackets it wears in expressions may stand here too."""
-    name = read_name(cell, place)
+    name = check_length(read_name(cell, place), place, "a name")
     inside = name[1:-1].strip()
     return inside if inside and name[0] == "[" and name[-1] == "]" and not set(inside) & set("[]") else name

@@ -9,7 +9,7 @@ from moletally.chemistry.tables import Quantity
 from moletally.sheet.cells import OMITTED, Argument, Block, Cell
 from moletally.sheet.reading.grid import Grid, as_block, fold, is_empty, split_header, text_of, trimmed
 from moletally.sheet.reading.labels import LABELS, Kind, canonical
-from moletally.sheet.reading.numbers import is_blank, read_number, refuse_odd
+from moletally.sheet.reading.numbers import check_length, is_blank, read_number, refuse_odd
 
 __all__ = ["CaseColumn", "ReactorInput", "read_reactor"]
 
@@ -162,7 +162,7 @@ def _numeric(cell: Cell) -> bool:
 
 def _label(text: str, known: Known, names: tuple[str, ...], place: Place) -> tuple[str, str | None]:
     """Canonical label and unit of a text."""
-    whole = " ".join(text.split())
+    whole = check_length(" ".join(text.split()), place, "a label")
     if known(whole):
         return whole, None
     name, unit = split_header(whole)
