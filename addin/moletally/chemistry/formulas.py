@@ -2,10 +2,12 @@
 
 import re
 from collections import Counter
+from collections.abc import Mapping
 from functools import lru_cache
 
 from moletally.chemistry.errors import Finding, InputError, Level, Place
 from moletally.chemistry.network import Network, Reaction
+from moletally.chemistry.quantity import to_si
 from moletally.chemistry.tables import FeedTable
 
 __all__ = ["atoms", "check_formulas"]
@@ -13,10 +15,11 @@ __all__ = ["atoms", "check_formulas"]
 PIECE = re.compile(
     r"(?P<element>[A-Z][a-z]?)|(?P<open>[(\[])|(?P<close>[)\]])|(?P<count>\d+(?:\.\d+)?)|(?P<dot>[.·*])"
 )
-CHARGE = re.compile(r"\^?(?P<size>\d*)(?P<sign>[+-]+)$")
+CHARGE = re.compile(r"(?:\^(?P<size>\d*))?(?P<sign>[+-]+)$")
 MAX_LENGTH = 200
 OFF_BY = 5e-3  # of the mass of a side: molar masses are often given to three digits
 SLACK = 1e-6
+MOLAR_MASS = (-1, 0, 0, 1, 0)
 
 
 @lru_cache(maxsize=2048)
@@ -34,13 +37,9 @@ def atoms(formula: str) -> tuple[tuple[str, float], ...]:
     total: Counter[str] = Counter()
     charge = CHARGE.search(text)
     if charge is not None and charge.start() > 0:
-        size = int(charge["size"]) if charge["size"] and charge[0].startswith("^") else len(charge["sign"])
-        total["charge"] = size if charge["sign"][0] == "+" else -size  # type: ignore[assignment]
-        text = (
-            text[: charge.start()]
-            if charge[0].startswith("^") or not charge["size"]
-            else text[: charge.start("sign")]
-        )
+        size = int(charge["size"] or 1) if charge["size"] is not None else len(charge["sign"])
+        total["charge"] = size if charge["sign"][0] == "+" else -size
+        text = text[: charge.start()]
     for part in re.split(r"[.·*]", text):
         lead = re.match(r"\d+(?:\.\d+)?", part)
         factor = float(lead[0]) if lead else 1.0
@@ -93,7 +92,11 @@ def check_formulas(network: Network, feed: FeedTable) -> list[Finding]:
         For a reaction whose atoms do not balance, naming them: "H: 4 -> 2".
     """
     formulas = {row.name: (row.formula, row.place) for row in feed.species if row.formula}
-    masses = {row.name: row.molar_mass.value for row in feed.species if row.molar_mass is not None}
+    masses = {
+        row.name: to_si(row.molar_mass, MOLAR_MASS, True, f"MW of {row.name}")
+        for row in feed.species
+        if row.molar_mass is not None
+    }
     findings = []
     for reaction in network.reactions:
         species = {
@@ -106,14 +109,14 @@ def check_formulas(network: Network, feed: FeedTable) -> list[Finding]:
     return findings
 
 
-def _check_atoms(reaction: Reaction, formulas: dict[str, tuple[str | None, Place]]) -> None:
+def _check_atoms(reaction: Reaction, formulas: Mapping[str, tuple[str, Place]]) -> None:
     sides: list[dict[str, float]] = []
     for side in (reaction.row.equation.left, reaction.row.equation.right):
         total: dict[str, float] = {}
         for name, coefficient in side:
             formula, place = formulas[name]
             try:
-                _add(total, dict(atoms(formula or "")), coefficient)
+                _add(total, dict(atoms(formula)), coefficient)
             except InputError as error:
                 raise error.at(place) from None
         sides.append(total)
@@ -135,5 +138,7 @@ def _check_mass(reaction: Reaction, masses: dict[str, float]) -> list[Finding]:
     )
     if not left or not right or abs(left - right) <= OFF_BY * max(left, right):
         return []
-    return [Finding(Level.DOUBT, str(reaction.row.place),
-                    f"{reaction.row.equation.text}: the masses do not balance, {left:.6g} -> {right:.6g} by MW")]  # fmt: skip
+    text = (
+        f"{reaction.row.equation.text}: masses do not balance by MW, {1e3 * left:.6g} -> {1e3 * right:.6g} g"
+    )
+    return [Finding(Level.DOUBT, str(reaction.row.place), text)]

@@ -74,9 +74,7 @@ class Parameter:
             and not energies
             and any(abs(a - b) > 1e-9 for a, b in zip(unit.dims, self.unit.dims, strict=True))
         ):
-            raise InputError(
-                f"{self.label} is in {self.unit.text or '-'} in its table and can't be in {text} here", place
-            )
+            raise InputError(f"{self.label} can't be in {text}: its table has {self.unit.text or '-'}", place)
         return replace(self, unit=unit, place=place)
 
     def check(self, value: float) -> None:

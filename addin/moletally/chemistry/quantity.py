@@ -231,7 +231,7 @@ def _from_pint(name: str) -> tuple[float, Dims] | None:
         if base not in PINT_BASE:
             return None
         dims[PINT_BASE[base]] = float(power)
-    return float(quantity.magnitude), _dims(dims)
+    return float(str(quantity.magnitude)), _dims(dims)
 
 
 @lru_cache(maxsize=1)

@@ -29,8 +29,13 @@ MASS_CONCENTRATION: Dims = (0, -3, 0, 1, 0)
 class HasLaw(Protocol):
     """A reaction with its law."""
 
-    row: ReactionRow
-    law: Law
+    @property
+    def row(self) -> ReactionRow:
+        """Its row of the table."""
+
+    @property
+    def law(self) -> Law:
+        """Its rate law."""
 
 
 def targets(mass_basis: bool) -> tuple[Dims, Dims]:

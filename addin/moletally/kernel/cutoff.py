@@ -63,22 +63,18 @@ class Laws:
         """r, shape (n, terms), at c, shape (n, present)."""
         if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
             return self.bound.rates(c)
-        g, _ = self._factors(c)
-        return np.asarray(self.bound.rates(self._lifted(c)) * g.prod(axis=2))
+        return np.asarray(self.bound.rates(self._lifted(c)) * self._factors(c)[0])
 
     def slopes(self, c: Floats) -> tuple[Floats, Floats]:
         """r and its exact derivatives dr/dc, shape (n, terms, present)."""
         if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
             return self.bound.slopes(c)
-        g, dg = self._factors(c)
+        factor, slope = self._factors(c)
         r, v = self.bound.slopes(self._lifted(c))
-        whole = g.prod(axis=2)
-        v = v * whole[:, :, None]
-        below = c[:, self.edged] < self.floor
-        for k, i in enumerate(self.edged.tolist()):
-            others = np.delete(g, k, axis=2).prod(axis=2)
-            v[:, :, i] = np.where(below[:, None, k], r * others * dg[:, :, k], v[:, :, i])
-        return r * whole, v
+        v = v * factor[:, :, None]
+        below = (c[:, self.edged] < self.floor)[:, None, :]
+        v[:, :, self.edged] = np.where(below, r[:, :, None] * slope, v[:, :, self.edged])
+        return r * factor, v
 
     def strict(self, c: Floats) -> Floats:
         """r with nan where a root of a negative number is taken: for checking answers."""
@@ -90,16 +86,22 @@ class Laws:
         return lifted
 
     def _factors(self, c: Floats) -> tuple[Floats, Floats]:
-        """g and dg/dc, shape (n, terms, edged); 1 and 0 above the floor and where g does not apply."""
+        """What the laws at the floor are multiplied by, shape (n, terms), and its derivatives by c.
+
+        Where a concentration is a little below zero its share is added rather than multiplied: or two
+        such species would make a law run forwards and drive each other away from zero.
+        """
         u = np.minimum(c[:, self.edged] / self.floor, 1.0)[:, None, :]
-        q = self.order
-        # Below zero a law stops. Were it to run backwards there, two such species would drive each other.
-        some = np.maximum(u, 0.0)
+        q, some = self.order, np.maximum(u, 0.0)
         with np.errstate(all="ignore"):
             steep = np.where(some > 0, some ** np.maximum(q, 2.0), 0.0)
             g = np.where(q > 2, steep, some * ((2 - q) + (q - 1) * some))
             dg = np.where(q > 2, q * steep / np.where(some > 0, some, 1.0), (2 - q) + 2 * (q - 1) * some)
-        dg = np.where(u < 0, 0.0, dg)
-        inside = u < 1
-        applies = self.factor & inside
-        return np.where(applies, g, 1.0), np.where(applies, dg, 0.0) / self.floor[:, None, :]
+        applies = self.factor & (u < 1)
+        g, dg = np.where(applies, g, 1.0), np.where(applies, dg, 0.0)
+        back = np.where(applies & (u < 0), np.maximum(2 - q, 0.0), 0.0)
+        slope = np.empty_like(g)
+        for k in range(len(self.edged)):
+            slope[:, :, k] = np.delete(g, k, axis=2).prod(axis=2) * dg[:, :, k]
+        slope = np.where(u < 0, back, slope)
+        return g.prod(axis=2) + (back * u).sum(axis=2), slope / self.floor[:, None, :]

@@ -89,4 +89,4 @@ class Outlets:
     @property
     def fine(self) -> NDArray[np.bool_]:
         """Cases whose answer passed every check."""
-        return self.status == Status.OK
+        return np.equal(self.status, Status.OK)

@@ -289,7 +289,8 @@ class _Builder:
                 raise InputError(
                     f"{label} is in mass: give the MW of {self.network.species[i]}", self.cases.place(label)
                 )
-            return self.cases.values(label, MASS_CONCENTRATION) / self.inlet.molar_mass[i]
+            per_volume = self.cases.values(label, MASS_CONCENTRATION)
+            return per_volume / float(self.inlet.molar_mass[i])
         if unit is not None and unit.dims == (1, 0, -1, 0, 0):
             return self.cases.values(label, unit.dims) / flow
         return self.cases.values(label, MASS_CONCENTRATION if self.network.mass_basis else CONCENTRATION)

@@ -97,11 +97,12 @@ def _converted(tree: Node, unit: Unit, state: State) -> Answer:
     leaves = _Leaves(state.in_common_units())
     dims = _dimension(tree, leaves)
     if not np.allclose(dims, unit.dims, rtol=0, atol=1e-9):
+        hint = " (units of mass need the MW column)" if unit.dims[3] and not dims[3] else ""
         raise InputError(
-            f"the result is not a quantity that {unit.text} measures: leave the unit out or mend it"
+            f"the result is not a quantity that {unit.text} measures: mend the unit or leave it out{hint}"
         )
     values = evaluate(tree, lambda n: leaves.name(n).si, lambda n: leaves.call(n).si)
-    return _finish(unit.from_si(values), unit.text, leaves.met, state)
+    return _finish(unit.from_si(np.asarray(values)), unit.text, leaves.met, state)
 
 
 def _finish(values: object, unit: str, leaves: list[Leaf], state: State) -> Answer:
@@ -112,7 +113,9 @@ def _finish(values: object, unit: str, leaves: list[Leaf], state: State) -> Answ
         return Answer(array, unit)
     why = next((leaf.undefined for leaf in leaves if not np.isfinite(leaf.si[solved]).all()), "")
     return Answer(
-        array, unit, Undefined(why or "a division by zero, or a root or logarithm that does not exist")
+        array,
+        unit,
+        Undefined(why or "undefined: a division by zero, or a root or logarithm that does not exist"),
     )
 
 

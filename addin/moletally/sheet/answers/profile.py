@@ -43,9 +43,8 @@ def tube_profile(reactions: Argument, feed: Argument, reactor: Argument, points:
         fault = (
             None if status[i] == Status.OK else NoAnswer(f"PFR, point {i + 1}: {status_text(int(status[i]))}")
         )
-        rows.append(
-            [float(values[i]) for _, values in lead] + [_cell(column, i, fault) for column in columns]
-        )
+        where: list[Cell | SheetError] = [float(values[i]) for _, values in lead]
+        rows.append(where + [_cell(column, i, fault) for column in columns])
     return outcome(rows)
 
 
