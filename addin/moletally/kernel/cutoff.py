@@ -88,20 +88,19 @@ class Laws:
     def _factors(self, c: Floats) -> tuple[Floats, Floats]:
         """What the laws at the floor are multiplied by, shape (n, terms), and its derivatives by c.
 
-        Where a concentration is a little below zero its share is added rather than multiplied: or two
-        such species would make a law run forwards and drive each other away from zero.
+        A little below zero g goes on as a straight line, so that a law draws its species back. A law
+        stops where two of its species are negative: their product would drive both further away.
         """
         u = np.minimum(c[:, self.edged] / self.floor, 1.0)[:, None, :]
         q, some = self.order, np.maximum(u, 0.0)
         with np.errstate(all="ignore"):
             steep = np.where(some > 0, some ** np.maximum(q, 2.0), 0.0)
-            g = np.where(q > 2, steep, some * ((2 - q) + (q - 1) * some))
+            g = np.where(q > 2, steep, u * ((2 - q) + (q - 1) * some))
             dg = np.where(q > 2, q * steep / np.where(some > 0, some, 1.0), (2 - q) + 2 * (q - 1) * some)
         applies = self.factor & (u < 1)
+        runs = (applies & (u < 0)).sum(axis=2) < 2
         g, dg = np.where(applies, g, 1.0), np.where(applies, dg, 0.0)
-        back = np.where(applies & (u < 0), np.maximum(2 - q, 0.0), 0.0)
         slope = np.empty_like(g)
         for k in range(len(self.edged)):
             slope[:, :, k] = np.delete(g, k, axis=2).prod(axis=2) * dg[:, :, k]
-        slope = np.where(u < 0, back, slope)
-        return g.prod(axis=2) + (back * u).sum(axis=2), slope / self.floor[:, None, :]
+        return g.prod(axis=2) * runs, slope * runs[:, :, None] / self.floor[:, None, :]

@@ -48,10 +48,12 @@ class Rest:
     work: NDArray[np.int_]
 
 
-def start_up(structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]) -> Rest:
+def start_up(
+    structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]
+) -> Rest:
     """Follow n start-ups from `start`, shape (n, S).
 
-    tanks : Tanks - for the steady balance; laws : Laws - the same laws, made fit for integration
+    tanks : Tanks - the steady balances; laws : Laws - their laws, made fit for integrators
     fed : bool ndarray, shape (n, S) - species that the feed alone brings about
     """
     return _StartUp(structure, tanks, laws, start, fed).run()

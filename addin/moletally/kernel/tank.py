@@ -137,8 +137,7 @@ class _Group:
         c = feed[:, here].copy()
         largest = np.maximum(feed, start).max(axis=1, keepdims=True)
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
-        own = np.where(c > 0, c, scale)
-        tanks = Tanks(Laws.of(structure, structure.starved, own, T, p), structure.nu, c.copy(), tau)
+        tanks = Tanks(Laws.of(structure, structure.starved, scale, T, p), structure.nu, c.copy(), tau)
         if len(structure.firing):
             faded = self._states(tanks, c, scale, T, p, start[:, here])
         elif not structure.unique:
@@ -167,8 +166,8 @@ class _Group:
             left = left[~roots.settled]
             if not len(left):
                 return left
-        laws = Laws.of(structure, structure.edged, scale[left], T[left], p[left])
         fed = self._fed(tanks.feed[left])
+        laws = Laws.of(structure, structure.edged, scale[left], T[left], p[left])
         rest = start_up(structure, tanks.at(left), laws, start[left], fed)
         rows = self.rows[left]
         out.from_transient[rows] = True
@@ -221,9 +220,9 @@ class _Group:
 
     def _take_out_exhausted(self, laws: Laws, c: Floats, rows: Ints) -> Floats:
         """Species below the floor of a law of order zero that consumes them are used up: exactly zero."""
-        if not len(laws.edged):
+        if not len(self.structure.starved):
             return c
-        gone = c[:, laws.edged] < laws.floor
+        gone = (c[:, laws.edged] < laws.floor) & np.isin(laws.edged, self.structure.starved)
         self.out.exhausted[np.ix_(rows, self.structure.present[laws.edged])] |= gone
         c = c.copy()
         c[:, laws.edged] = np.where(gone, 0.0, c[:, laws.edged])

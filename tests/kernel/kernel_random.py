@@ -1,0 +1,173 @@
+"""Random networks, and judges that share nothing with the engines but the text of the laws.
+
+Reactions conserve a random mass, so that nothing grows without bound. Orders are 0 to 2.5 in halves,
+constants span 12 decades, two fifths of the species are not fed, a third of the laws has an
+adsorption term, a fifth can run backwards.
+"""
+
+from dataclasses import dataclass
+
+import mpmath
+import numpy as np
+from kernel_cases import network
+
+from moletally.kernel.program import Model
+
+DIGITS = 60
+
+
+@dataclass(frozen=True)
+class Term:
+    """sign * k * prod c_i^order / (1 + K c_m)^2 of one reaction."""
+
+    nu: np.ndarray
+    k: float
+    orders: dict[int, float]
+    inhibitor: tuple[int, float] | None
+
+    def rate(self, c: list) -> mpmath.mpf:
+        value = mpmath.mpf(self.k)
+        for i, order in self.orders.items():
+            if order:
+                value *= c[i] ** mpmath.mpf(order) if c[i] else mpmath.mpf(0)
+        if self.inhibitor:
+            m, K = self.inhibitor
+            value /= (1 + mpmath.mpf(K) * c[m]) ** 2
+        return value
+
+
+@dataclass(frozen=True)
+class Case:
+    model: Model
+    terms: list[Term]
+    feed: np.ndarray
+    tau: float
+    text: list[str]
+
+
+def draw(rng: np.random.Generator, lowest_order: float = 0.0) -> Case:
+    species = int(rng.integers(2, 9))
+    mass = rng.integers(1, 4, species)
+    orders = [o for o in (0.0, 0.5, 1.0, 1.5, 2.0, 2.5) if o >= lowest_order]
+    texts, terms = [], []
+    for _ in range(int(rng.integers(1, 9))):
+        _reaction(rng, mass, orders, texts, terms)
+    feed = np.where(rng.random(species) < 0.4, 0.0, 10 ** rng.uniform(-3, 2, species))
+    if not feed.any():
+        feed[0] = 1.0
+    names = " ".join(f"s{i}" for i in range(species))
+    return Case(network(names, texts), terms, feed, float(10 ** rng.uniform(-3, 6)), texts)
+
+
+def _reaction(rng, mass, orders, texts, terms):
+    species = len(mass)
+    left = rng.choice(species, int(rng.integers(1, min(3, species))), replace=False)
+    product = int(rng.choice([i for i in range(species) if i not in left]))
+    coefficients = rng.integers(1, 3, len(left))
+    made = float((mass[left] * coefficients).sum() / mass[product])
+    nu = np.zeros(species)
+    nu[left], nu[product] = -coefficients, made
+    k = float(10 ** rng.uniform(-6, 6))
+    forward = {int(i): float(rng.choice(orders)) for i in left}
+    inhibitor = (int(rng.integers(species)), float(10 ** rng.uniform(-2, 3))) if rng.random() < 0.33 else None
+    law = _power(k, forward)
+    terms.append(Term(nu, k, forward, inhibitor))
+    if rng.random() < 0.2:
+        back, order = k * float(10 ** rng.uniform(-3, 3)), float(rng.choice([o for o in orders if o]))
+        law = f"({law} - {_power(back, {product: order})})"
+        terms.append(Term(-nu, back, {product: order}, inhibitor))
+    if inhibitor:
+        law = f"{law}/(1 + {inhibitor[1]!r}*s{inhibitor[0]})^2"
+    equation = " + ".join(f"{c} s{i}" for c, i in zip(coefficients, left, strict=True))
+    texts.append(f"{equation} -> {made!r} s{product} : {law}")
+
+
+def _power(k: float, orders: dict[int, float]) -> str:
+    return repr(k) + "".join(f"*s{i}^{o!r}" for i, o in orders.items() if o)
+
+
+def tank_error(case: Case, c: np.ndarray, exhausted: np.ndarray) -> tuple[float, float]:
+    """Scaled residual of an outlet, and its largest relative distance from a root in 60 digits.
+
+    Exhausted species are zero; laws of order zero that consume them carry an unknown factor between 0
+    and 1 per such species in their place. Distance is inf where Newton's method in 60 digits does not
+    end near the outlet.
+    """
+    with mpmath.workdps(DIGITS):
+        gone = [i for i in range(len(c)) if exhausted[i]]
+        cut = _supplied(case, c, gone)
+        idle = set(gone) - set(cut)
+        unknown = [i for i in range(len(c)) if c[i] > 0 or i in cut]
+        x = [mpmath.mpf(1) / 2 if i in cut else mpmath.mpf(float(c[i])) for i in unknown]
+        residual = mpmath.mpf(0)
+        start = list(x)
+        for step in range(60):
+            f, scale, jacobian = _balance(case, unknown, cut, idle, x)
+            if step == 0 and not cut:
+                residual = max(abs(a) / s for a, s in zip(f, scale, strict=True)) if f else mpmath.mpf(0)
+            try:
+                y = mpmath.lu_solve(jacobian, mpmath.matrix([-a for a in f])) if f else []
+            except ZeroDivisionError:
+                return float(residual), float("inf")
+            x = [a * max(1 + d, mpmath.mpf("0.1")) for a, d in zip(x, y, strict=True)]
+            if not f or max(abs(d) for d in y) < mpmath.mpf(10) ** -30:
+                break
+        else:
+            return float(residual), float("inf")
+        fair = all(0 <= x[n] <= 1 + mpmath.mpf(10) ** -9 for n, i in enumerate(unknown) if i in cut)
+        moved = [abs(a / b - 1) for a, b, i in zip(x, start, unknown, strict=True) if i not in cut]
+        return float(residual), float(max(moved, default=0)) if fair else float("inf")
+
+
+def _balance(case, unknown, cut, idle, x):
+    """F, the sum of its terms' sizes, and dF/d ln x."""
+    size = len(case.feed)
+    c, factor = [mpmath.mpf(0)] * size, {}
+    for i, value in zip(unknown, x, strict=True):
+        if i in cut:
+            factor[i] = value
+        else:
+            c[i] = value
+    tau = mpmath.mpf(case.tau)
+    f = [mpmath.mpf(float(case.feed[i])) - c[i] for i in range(size)]
+    scale = [mpmath.mpf(float(case.feed[i])) + c[i] for i in range(size)]
+    slope = {(i, i): -c[i] for i in range(size)}
+    for term in case.terms:
+        if any(term.nu[i] < 0 and i in term.orders for i in idle):
+            continue
+        rate = term.rate(c)
+        elastic = {i: o for i, o in term.orders.items() if o}
+        if term.inhibitor:
+            m, K = term.inhibitor
+            elastic[m] = elastic.get(m, 0) - 2 * mpmath.mpf(K) * c[m] / (1 + mpmath.mpf(K) * c[m])
+        for i, o in term.orders.items():
+            if i in factor and not o and term.nu[i] < 0:
+                rate *= factor[i]
+                elastic[i] = 1
+        for i in range(size):
+            if term.nu[i]:
+                flow = mpmath.mpf(float(term.nu[i])) * rate * tau
+                f[i] += flow
+                scale[i] += abs(flow)
+                for k, e in elastic.items():
+                    slope[i, k] = slope.get((i, k), mpmath.mpf(0)) + flow * e
+    jacobian = mpmath.matrix(len(unknown), len(unknown))
+    for a, i in enumerate(unknown):
+        for b, k in enumerate(unknown):
+            jacobian[a, b] = slope.get((i, k), mpmath.mpf(0))
+    return [f[i] for i in unknown], [scale[i] for i in unknown], jacobian
+
+
+def _supplied(case, c, cut):
+    """Exhausted species that are fed or made: where nothing arrives, nothing is cut."""
+    there = set(np.flatnonzero(case.feed > 0)) | {i for i in range(len(c)) if c[i] > 0}
+    while True:
+        more = {
+            int(i)
+            for t in case.terms
+            if all(j in there for j, o in t.orders.items() if o or t.nu[j] < 0)
+            for i in np.flatnonzero(t.nu > 0)
+        } - there
+        if not more:
+            return [i for i in cut if i in there]
+        there |= more
