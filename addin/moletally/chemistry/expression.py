@@ -205,7 +205,7 @@ class _Parser:
         if self.token.kind is Kind.END:
             raise ExpressionError("the text is empty: an expression was expected")
         tree = self.sum()
-        if self.token.kind is not Kind.END:
+        if self.at < len(self.tokens) - 1:
             raise self.error(self.token, self.leftover())
         return tree
 

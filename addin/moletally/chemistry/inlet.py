@@ -25,7 +25,6 @@ PRESSURE: Dims = (0, -1, -2, 1, 0)
 KINDS = {CONCENTRATION: "conc", MASS_CONCENTRATION: "mass conc", MOLAR_FLOW: "flow", MASS_FLOW: "mass flow"}
 
 NOISE = 1e-9  # of the total: a feed this little below zero is the round-off of a subtraction
-AGREEMENT = 1e-6  # between a flow given twice
 
 
 def feed_quantities(feed: FeedTable) -> list[Quantity]:
@@ -129,11 +128,6 @@ class Inlet:
         place : of that flow, for complaints
         """
         own = self.flow
-        with np.errstate(invalid="ignore"):
-            differs = np.abs(flow - own) > AGREEMENT * own
-        if differs.any():
-            raise InputError(f"Flow is given twice, {_shown(flow[differs][0])} with the reactor and {_shown(own)} with"
-                             f" the feed (SI): keep one", place)  # fmt: skip
         total = np.where(np.isnan(flow), own, flow)
         if self.needs_flow and np.isnan(total).any():
             raise InputError(self._missing_flow(), place)
@@ -267,7 +261,3 @@ class Inlet:
     def flow_units(self) -> list[str]:
         """Units of the streams' volumetric flows, as written."""
         return [s.flow.unit for s in self.feed.streams if isinstance(s, Stream) and s.flow and s.flow.unit]
-
-
-def _shown(value: float) -> str:
-    return f"{value:.6g} m3/s"

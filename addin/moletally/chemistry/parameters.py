@@ -77,15 +77,18 @@ class Parameter:
             raise InputError(f"{self.label} can't be in {text}: its table has {self.unit.text or '-'}", place)
         return replace(self, unit=unit, place=place)
 
-    def check(self, value: float) -> None:
-        """Raise for a number that can't be."""
+    def wrong(self, value: float) -> str:
+        """Why a number can't be, "" if it can."""
         if self.name in ("k", "k0") and self.kind == ParameterKind.VALUE and value < 0:
-            raise InputError(f"{self.label} is {value:g}: a rate constant is not negative."
-                             " For the reverse reaction write it the other way round", self.place)  # fmt: skip
+            return (
+                f"{self.label} is {value:g}: a rate constant is not negative."
+                " For the reverse reaction write it the other way round"
+            )
         if self.name == "Keq" and self.kind == ParameterKind.VALUE and value <= 0:
-            raise InputError(f"{self.label} is {value:g}: an equilibrium constant is more than 0", self.place)
+            return f"{self.label} is {value:g}: an equilibrium constant is more than 0"
         if self.kind == ParameterKind.REFERENCE and self.to_si(value) <= 0:
-            raise InputError(f"{self.label} is below absolute zero", self.place)
+            return f"{self.label} is below absolute zero"
+        return ""
 
     def remark(self, value: float) -> Finding | None:
         """A doubt or note about a number."""
@@ -132,7 +135,9 @@ class Parameters:
         vector = np.empty(len(self.items))
         findings = []
         for i, item in enumerate(self.items):
-            item.check(numbers[item.slot])
+            wrong = item.wrong(numbers[item.slot])
+            if wrong:
+                raise InputError(wrong, item.place)
             vector[i] = item.to_si(numbers[item.slot])
             remark = item.remark(numbers[item.slot])
             if remark is not None:

@@ -230,7 +230,7 @@ def _from_pint(name: str) -> tuple[float, Dims] | None:
     for base, power in quantity.dimensionality.items():
         if base not in PINT_BASE:
             return None
-        dims[PINT_BASE[base]] = float(power)
+        dims[PINT_BASE[base]] = float(power)  # type: ignore[arg-type]  # a real number
     return float(str(quantity.magnitude)), _dims(dims)
 
 

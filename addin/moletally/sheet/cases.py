@@ -1,6 +1,7 @@
-"""The values of a reactor's labels, case by case and in SI."""
+"""The values of a reactor's labels, case by case and in SI, and the cases that can't be used."""
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
@@ -14,17 +15,25 @@ from moletally.sheet.reading.reactor import CaseColumn, ReactorInput
 __all__ = ["Cases"]
 
 Floats = NDArray[np.float64]
+Mask = NDArray[np.bool_]
 
 
 @dataclass(frozen=True)
 class Cases:
-    """The good cases of a reactor input: N rows of numbers, and what is the same for all.
+    """The readable cases of a reactor input: N rows of numbers, and what is the same for all.
 
     with_units : whether the call carries units
+    faults : row -> why that case has no answer; filled while the cases are worked out
     """
 
     reactor: ReactorInput
     with_units: bool
+    faults: dict[int, SheetError] = field(default_factory=dict)
+
+    @cached_property
+    def on_sheet(self) -> tuple[int, ...]:
+        """For each row, which case of the sheet it is, counted from 0."""
+        return tuple(i for i, row in enumerate(self.reactor.rows) if not isinstance(row, SheetError))
 
     @cached_property
     def numbers(self) -> Floats:
@@ -42,17 +51,20 @@ class Cases:
                 return column, self.numbers[:, j]
         return None
 
-    def given(self, label: str) -> bool:
-        """True where the label has a value in some case."""
-        return label in self.reactor.fixed or self.column(label) is not None
-
-    def place(self, label: str) -> Place:
-        """Where the label stands."""
+    def place(self, label: str, row: int | None = None) -> Place:
+        """Where a label stands, or its value in one row."""
         column = self.column(label)
-        if column is not None:
-            return column[0].place
-        fixed = self.reactor.fixed.get(label)
-        return fixed.place if isinstance(fixed, Quantity) else Place("Reactor", header=label)
+        if column is None:
+            fixed = self.reactor.fixed.get(label)
+            return fixed.place if isinstance(fixed, Quantity) else Place("Reactor", header=label)
+        head = column[0].place
+        if row is None or self.reactor.single:
+            return head
+        case = self.on_sheet[row]
+        if self.reactor.shape is not None:
+            i, j = divmod(case, self.reactor.shape[1])
+            return Place(head.table, i + 1, j + 1)
+        return Place(head.table, head.row + 1 + case, head.column, head.header)
 
     def unit_text(self, label: str) -> str | None:
         """The unit a label was given in, as written."""
@@ -67,6 +79,14 @@ class Cases:
         fixed = self.reactor.fixed.get(label, default)
         return fixed.strip().casefold() if isinstance(fixed, str) else default
 
+    def raw(self, label: str) -> Floats:
+        """Values of a label as they are typed, shape (N,); nan in cases that do not have it."""
+        column = self.column(label)
+        if column is not None:
+            return column[1]
+        fixed = self.reactor.fixed.get(label)
+        return np.full(len(self), fixed.value if isinstance(fixed, Quantity) else np.nan)
+
     def values(self, label: str, dims: Dims, bare: Unit | None = None, always: bool = False) -> Floats:
         """Values of a label in SI, shape (N,); nan in cases that do not have it.
 
@@ -74,27 +94,30 @@ class Cases:
         bare : unit of values that carry none
         always : True for what needs a unit even where nothing else has one (temperatures, pressures)
         """
-        column = self.column(label)
-        if column is None:
-            fixed = self.reactor.fixed.get(label)
-            if not isinstance(fixed, Quantity):
-                return np.full(len(self), np.nan)
-            quantity = self._with(fixed, bare)
-            return np.full(len(self), to_si(quantity, dims, self.with_units or always, label))
-        head, raw = column
-        scale = [to_si(self._with(Quantity(x, head.unit, head.place), bare), dims, self.with_units or always, label)
-                 for x in (0.0, 1.0)]  # fmt: skip
-        return scale[0] + (scale[1] - scale[0]) * raw
+        raw = self.raw(label)
+        if np.isnan(raw).all():
+            return raw
+        text = self.unit_text(label) or (bare.text if bare is not None else None)
+        place = self.place(label)
+        zero, one = (
+            to_si(Quantity(x, text, place), dims, self.with_units or always, label) for x in (0.0, 1.0)
+        )
+        return zero + (one - zero) * raw
 
-    @staticmethod
-    def _with(quantity: Quantity, bare: Unit | None) -> Quantity:
-        if quantity.unit is None and bare is not None:
-            return Quantity(quantity.value, bare.text, quantity.place)
-        return quantity
+    def refuse(self, bad: Mask, label: str, say: Callable[[int], str]) -> None:
+        """Take cases out: `say` words the fault of a row. One case alone, or a fault of all, is the call's."""
+        rows = [int(i) for i in np.flatnonzero(bad)]
+        if not rows:
+            return
+        if self.reactor.single or (self.column(label) is None and len(rows) == len(self)):
+            raise InputError(say(rows[0]), self.place(label))
+        for row in rows:
+            self.faults.setdefault(row, InputError(say(row), self.place(label, row)))
 
-    def check_sign(self, label: str, values: Floats, zero_too: bool) -> None:
-        """Raise at a negative value (or zero, where that makes no sense)."""
-        bad = values < 0 if zero_too else values <= 0
-        if bad.any():
-            least = "0 or more" if zero_too else "more than 0"
-            raise InputError(f"{label} is {values[bad][0]:g}: it must be {least}", self.place(label))
+    def refuse_sign(self, label: str, values: Floats, zero_too: bool) -> None:
+        """Take out cases with a negative value (or zero, where that makes no sense)."""
+        raw = self.raw(label)
+        least = "0 or more" if zero_too else "more than 0"
+        with np.errstate(invalid="ignore"):
+            bad = values < 0 if zero_too else values <= 0
+        self.refuse(bad, label, lambda i: f"{label} is {raw[i]:g}: it must be {least}")
