@@ -81,7 +81,8 @@ def grid(
     row = top
     if head is not None:
         for column, text in enumerate(head):
-            sheet.write_string(row, left + column, text, look["head"])
+            style = "head number" if styles[column] in NUMBERS else "head"
+            sheet.write_string(row, left + column, text, look[style])
         row += 1
     for values in rows:
         for column, value in enumerate(values):
