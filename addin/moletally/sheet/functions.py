@@ -3,7 +3,9 @@
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from moletally.chemistry.errors import InputError, Place, SheetError, near_miss
+import numpy as np
+
+from moletally.chemistry.errors import InputError, NoAnswer, Place, SheetError, near_miss
 from moletally.sheet import cells
 from moletally.sheet.answers.audit import audit
 from moletally.sheet.answers.outlet import pfr_outlet, tank_outlet
@@ -11,9 +13,10 @@ from moletally.sheet.answers.profile import tube_profile
 from moletally.sheet.answers.rates import reaction_rates
 from moletally.sheet.outcome import Outcome, failed
 
-__all__ = ["CATEGORY", "FUNCTIONS", "Argument", "Function", "call"]
+__all__ = ["CATEGORY", "DEFECT", "FUNCTIONS", "Argument", "Function", "call"]
 
 CATEGORY = "Reactor balances"
+DEFECT = "this is a defect of moletally and not of your sheet, please report it with the workbook"
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,11 +96,13 @@ def call(name: str, args: Sequence[cells.Argument]) -> Outcome:
     if function is None:
         return failed(InputError(f"there is no function {name!r}. {near_miss(name.upper(), FUNCTIONS)}"))
     try:
-        return function.run(*_fitted(function, args))
+        # Overflow and the like are looked for in the answers, not announced on the way.
+        with np.errstate(all="ignore"):
+            return function.run(*_fitted(function, args))
     except SheetError as error:
         return failed(error)
-    except RecursionError:
-        return failed(InputError("an expression of this call is nested too deeply: write it in steps"))
+    except Exception as error:  # a spreadsheet must live on, and the user must know whose fault it is
+        return failed(NoAnswer(f"{DEFECT}: {type(error).__name__}: {error}"))
 
 
 def _fitted(function: Function, args: Sequence[cells.Argument]) -> list[cells.Argument]:
