@@ -15,7 +15,7 @@ MAY_IMPORT = {
     "sheet": {"sheet", "reactors", "chemistry", "kernel.status"},
     "hosts": {"sheet", "chemistry.errors"},  # and the host itself, never another
     "cli": {"hosts", "sheet", "chemistry.errors"},
-    "__init__": {"hosts.notebook"},
+    "__init__": {"hosts"},
     "__main__": {"cli"},
 }
 
