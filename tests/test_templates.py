@@ -2,15 +2,18 @@
 
 import json
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
+from zipfile import ZipFile
 
 import pytest
 from openpyxl import load_workbook
 
 ROOT = Path(__file__).parents[1]
 BOOKS = sorted((ROOT / "workbook_templates").glob("*.xlsx"))
+NUMBER = re.compile(r"-?\d+(?:\.\d+)?(?:[eE][-+]?\d+)?")
 NAMES = [book.name for book in BOOKS]
 
 
@@ -49,8 +52,16 @@ def rebuilt(tmp_path_factory) -> Path:
 
 
 @pytest.mark.parametrize("book", BOOKS, ids=NAMES)
-def test_rebuilding_gives_the_committed_bytes(book, rebuilt):
-    assert (rebuilt / book.name).read_bytes() == book.read_bytes()
+def test_rebuilding_gives_the_committed_book(book, rebuilt):
+    """Part by part; numbers may differ by the rounding of another processor."""
+    with ZipFile(book) as committed, ZipFile(rebuilt / book.name) as built:
+        assert built.namelist() == committed.namelist()
+        for part in committed.namelist():
+            was, now = committed.read(part).decode(), built.read(part).decode()
+            if was != now:
+                assert NUMBER.sub("#", now) == NUMBER.sub("#", was), part
+                values = [float(n) for n in NUMBER.findall(was)]
+                assert [float(n) for n in NUMBER.findall(now)] == pytest.approx(values, rel=1e-9, abs=1e-12)
 
 
 @pytest.mark.parametrize("book", BOOKS, ids=NAMES)

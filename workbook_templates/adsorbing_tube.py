@@ -209,7 +209,15 @@ def write_results(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
 def write_rates(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
     """How fast the reactions are where the feed enters."""
     heading(sheet, look, (26, 8), 4, "Rates at the inlet")
-    spill(sheet, look, (27, 8), (3 + len(SPECIES), 2), f"=MOLE_RATES({inputs.call()})", "result")
+    spill(
+        sheet,
+        look,
+        (27, 8),
+        (3 + len(SPECIES), 2),
+        f"=MOLE_RATES({inputs.call()})",
+        head="result head",
+        names="result text",
+    )
 
 
 def write_profile(sheet: Worksheet, look: Look, inputs: Inputs) -> Area:
@@ -221,14 +229,21 @@ def write_profile(sheet: Worksheet, look: Look, inputs: Inputs) -> Area:
         "Profile",
         "From inlet to outlet of the tube; the chart on the design sheet follows these cells",
     )
-    area = spill(sheet, look, (3, 1), (52, 2 + len(SPECIES)), f"=MOLE_PROFILE({inputs.call('51', '')})")
+    area = spill(
+        sheet,
+        look,
+        (3, 1),
+        (52, 2 + len(SPECIES)),
+        f"=MOLE_PROFILE({inputs.call('51', '')})",
+        head="result head",
+    )
     sheet.freeze_panes(4, 2)
     return area
 
 
 def write_temperatures(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
     """The same tube over a column of temperatures: constants and adsorption both shift."""
-    page(sheet, (2, 18, 11, 9, *(26,) * 3), f"A1:G{34 + len(TEMPERATURES)}", landscape=False)
+    page(sheet, (2, 18, 11, 9, *(30,) * 3), f"A1:G{34 + len(TEMPERATURES)}", landscape=False)
     title(sheet, look, "Sweep over temperature", "Feed, volume and flow as on the design sheet")
     rows = [
         (label, f"={inputs.tube.cell(i, 1)}", unit)
@@ -258,8 +273,8 @@ def write_temperatures(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
         look,
         cases.part(1, 0, count, 1),
         lines,
-        (Axis("temperature [°C]", least=None), Axis("share of the carbinol fed [%]")),
+        (Axis("temperature [°C]", least=None), Axis("share of the carbinol fed [%]", most=100)),
         "Effect of temperature",
     )
-    chart.set_size({"width": 780, "height": 380})
+    chart.set_size({"width": 900, "height": 400})
     sheet.insert_chart(cases.bottom + 2, 1, chart, {"object_position": 2})

@@ -41,7 +41,12 @@ WANTS = (
     ("Mono made", "flow(Mono) [kmol/h]", "kmol/h"),
 )
 SWEEP = (5, 10, 15, 20, 30, 40, 50, 60, 80, 100, 120, 150, 180, 240, 300)
-SWEPT = ("100*yield(Mono, Amine)", "100*yield(Di, Amine)", "100*yield(Tri, Amine)", "100*conversion(Oxide)")
+SWEPT = (
+    "100 * yield(Mono, Amine)",
+    "100 * yield(Di, Amine)",
+    "100 * yield(Tri, Amine)",
+    "100 * conversion(Oxide)",
+)
 SHOWN = ("Mono, % of amine", "Di, % of amine", "Tri, % of amine", "Oxide converted, %")
 ABOUT = (
     "An amine takes up one, two and three molecules of an oxide. The first product is wanted, the "
@@ -191,7 +196,9 @@ def write_profile(sheet: Worksheet, look: Look, inputs: Inputs) -> Area:
         "Profile",
         "From inlet to outlet of the tube; the chart on the design sheet follows these cells",
     )
-    area = spill(sheet, look, (3, 1), (52, 2 + len(SPECIES)), f"=MOLE_PROFILE({inputs.call}, 51)")
+    area = spill(
+        sheet, look, (3, 1), (52, 2 + len(SPECIES)), f"=MOLE_PROFILE({inputs.call}, 51)", head="result head"
+    )
     sheet.freeze_panes(4, 2)
     return area
 

@@ -35,7 +35,7 @@ STYLES: Mapping[str, Mapping[str, object]] = {
     "head number": {**_HEAD, "align": "right"},
     "label": {**_BOX, "border_color": GRID},
     "unit": {**_BOX, "border_color": GRID, "font_color": "#6B6872"},
-    "text": {"text_wrap": True, "valign": "top", "font_color": INK, "indent": 1},
+    "text": {"align": "left", "valign": "top", "text_wrap": True, "indent": 1, "font_color": INK},
     "input": {**_INPUT, **_NUMBER},
     "input text": {**_INPUT, "num_format": "@"},
     "law": {**_INPUT, "num_format": "@", "font_name": "Consolas", "font_size": 10},
@@ -44,6 +44,7 @@ STYLES: Mapping[str, Mapping[str, object]] = {
     "result": {**_RESULT, **_NUMBER, "num_format": "0.0000"},
     "result 2": {**_RESULT, **_NUMBER, "num_format": "0.00"},
     "level": {**_RESULT, "bold": True, "align": "center", "indent": 0},
+    "result head": {**_RESULT, "bold": True, "align": "right"},
     "result text": {**_RESULT},
     "check": {
         **_BOX,

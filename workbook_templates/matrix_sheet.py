@@ -92,7 +92,7 @@ def build(path: str) -> None:
         (Axis("residence time along the tube [h]"), Axis("concentration [mol/L]")),
         "Along the tube",
     )
-    chart.set_size({"width": 660, "height": 330})
+    chart.set_size({"width": 640, "height": 330})
     design.insert_chart(24, 8, chart, {"object_position": 2})
     design.freeze_panes(3, 0)
     audit_sheet(
@@ -216,6 +216,13 @@ def write_profile(sheet: Worksheet, look: Look, matrix: Area, time: str) -> Area
         "Profile",
         "From inlet to outlet of the tube; the chart on the design sheet follows these cells",
     )
-    area = spill(sheet, look, (3, 1), (52, 1 + len(FEED)), f"=MOLE_PROFILE({matrix.qualified}, , {time}, 51)")
+    area = spill(
+        sheet,
+        look,
+        (3, 1),
+        (52, 1 + len(FEED)),
+        f"=MOLE_PROFILE({matrix.qualified}, , {time}, 51)",
+        head="result head",
+    )
     sheet.freeze_panes(4, 2)
     return area

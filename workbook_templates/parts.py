@@ -26,6 +26,7 @@ CAUTIONS = (
 )
 
 NUMBERS = ("input", "result", "result 2")  # styles of columns of numbers
+LEVELS = (("stop", "#F3C9C6", "#7A1F1A"), ("doubt", "#F7E2B5", "#6B4A00"), ("fine", "#CFE6D6", "#1E4D35"))
 LINKS = {"input": "link number", "input text": "link"}  # a formula in a table of inputs is no input
 NOTE_LINE = 104  # characters in a line of the notes; not every reader fits the heights itself
 LEGEND = (
@@ -105,12 +106,22 @@ def _put(sheet: Worksheet, look: Look, at: tuple[int, int], value: Value, style:
 
 def spill(
     sheet: Worksheet, look: Look, at: tuple[int, int], shape: tuple[int, int], formula: str,
-    style: str = "result",
+    style: str = "result", *, head: str = "", names: str = "",
 ) -> Area:  # fmt: skip
-    """A formula whose result fills `shape` cells from `at`; the values come from the recalculation."""
+    """A formula whose result fills `shape` cells from `at`; the values come from the recalculation.
+
+    head, names : styles of the result's first row and first column where they differ from `style`
+    """
     (top, left), (rows, columns) = at, shape
     area = Area(sheet.get_name(), top, left, top + rows - 1, left + columns - 1)
-    sheet.write_dynamic_array_formula(top, left, area.bottom, area.right, formula, look[style])
+    sheet.write_dynamic_array_formula(
+        top, left, area.bottom, area.right, formula, look[names or head or style]
+    )
+    for row in range(rows):
+        for column in range(columns):
+            if row or column:  # a number for now, so that the cell is one of the result's
+                kind = (names if column == 0 else "") or (head if row == 0 else "") or style
+                sheet.write_number(top + row, left + column, 0, look[kind])
     return area
 
 
@@ -125,22 +136,19 @@ def check(
 
 
 def verdict(sheet: Worksheet, look: Look, at: tuple[int, int], text: str, call: str, columns: int) -> None:
-    """The first row of an audit: the vessel, the level, and what was found over `columns` cells."""
+    """The first row of an audit: the vessel, what was found over `columns` cells, and the level."""
     row, left = at
+    last = left + columns + 1
     sheet.set_row(row, 33)
     sheet.write_string(row, left, text, look["label"])
-    sheet.write_formula(row, left + 1, f"=INDEX({call},1,1)", look["level"])
-    sheet.merge_range(row, left + 2, row, left + 1 + columns, "", look["result text"])
-    sheet.write_formula(row, left + 2, f"=INDEX({call},1,3)", look["result text"])
-    cell = xl_rowcol_to_cell(row, left + 1)
-    for level, fill, ink in (
-        ("stop", "#F3C9C6", "#7A1F1A"),
-        ("doubt", "#F7E2B5", "#6B4A00"),
-        ("fine", "#CFE6D6", "#1E4D35"),
-    ):
+    sheet.merge_range(row, left + 1, row, last - 1, "", look["result text"])
+    sheet.write_formula(row, left + 1, f"=INDEX({call},1,3)", look["result text"])
+    sheet.write_formula(row, last, f"=INDEX({call},1,1)", look["level"])
+    cell = xl_rowcol_to_cell(row, last)
+    for level, fill, ink in LEVELS:
         style = look.book.add_format({"bg_color": fill, "font_color": ink})
         rule = {"type": "formula", "criteria": f'={cell}="{level}"', "format": style}
-        sheet.conditional_format(row, left + 1, row, left + 1, rule)
+        sheet.conditional_format(row, last, row, last, rule)
 
 
 def not_below(sheet: Worksheet, area: Area, least: float, what: str, *, equal: bool = True) -> None:
@@ -181,25 +189,21 @@ def named_curves(points: Area, columns: Sequence[int]) -> list[Curve]:
     ]
 
 
-def audit_sheet(look: Look, calls: Sequence[tuple[str, str]], rows: int = 18) -> None:
+def audit_sheet(look: Look, calls: Sequence[tuple[str, str]], rows: int = 16) -> None:
     """Everything that was read, assumed and checked in a call of each vessel; `calls` = (what, formula)."""
     sheet = look.book.add_worksheet("Audit")
-    page(
-        sheet,
-        (2, *(8, 20, 58, 2) * len(calls)),
-        f"A1:{xl_rowcol_to_cell(rows + 4, 4 * len(calls))}",
-        fixed=False,
-    )
+    height = rows + 3
+    page(sheet, (2, 9, 30, 110), f"A1:D{3 + height * len(calls)}", fixed=False)
     title(sheet, look, "Audit", "What was read, assumed and checked. The first row of a list is its verdict.")
     for number, (what, formula) in enumerate(calls):
-        left = 1 + 4 * number
-        heading(sheet, look, (3, left), 3, what)
-        for column, text in enumerate(("level", "where", "what, and what to do")):
-            sheet.write_string(4, left + column, text, look["head"])
-            for row in range(5, rows + 5):  # room for the list to grow in its style
-                sheet.write_blank(row, left + column, None, look["text"])
-        spill(sheet, look, (5, left), (1, 3), formula, "text")
-    sheet.freeze_panes(5, 0)
+        top = 3 + height * number
+        heading(sheet, look, (top, 1), 3, what)
+        for column, text in enumerate(("level", "where", "what, and what to do"), 1):
+            sheet.write_string(top + 1, column, text, look["head"])
+            for row in range(top + 2, top + 2 + rows):  # room for the list to grow in its style
+                sheet.write_blank(row, column, None, look["text"])
+        spill(sheet, look, (top + 2, 1), (1, 3), formula, "text")
+    sheet.freeze_panes(3, 0)
 
 
 def notes_sheet(look: Look, about: Sequence[str], assumptions: Sequence[str]) -> None:
