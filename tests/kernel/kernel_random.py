@@ -158,16 +158,16 @@ def _balance(case, unknown, cut, idle, x):
     return [f[i] for i in unknown], [scale[i] for i in unknown], jacobian
 
 
-def _supplied(case, c, cut):
-    """Exhausted species that are fed or made: where nothing arrives, nothing is cut."""
-    there = set(np.flatnonzero(case.feed > 0)) | {i for i in range(len(c)) if c[i] > 0}
+def _supplied(case, c, gone):
+    """Species used up that are fed or still made; where nothing arrives there is nothing to cut."""
+    state = [mpmath.mpf(float(x)) for x in c]
+    supplied = {i for i in gone if case.feed[i] > 0}
     while True:
-        more = {
-            int(i)
-            for t in case.terms
-            if all(j in there for j, o in t.orders.items() if o or t.nu[j] < 0)
-            for i in np.flatnonzero(t.nu > 0)
-        } - there
-        if not more:
-            return [i for i in cut if i in there]
-        there |= more
+        more = set(supplied)
+        for term in case.terms:
+            needs = [i for i in term.orders if term.nu[i] < 0 and not term.orders[i]]
+            if term.rate(state) > 0 and all(i in supplied for i in needs if i in gone):
+                more |= {int(i) for i in np.flatnonzero(term.nu > 0) if i in gone}
+        if more == supplied:
+            return sorted(supplied)
+        supplied = more

@@ -56,6 +56,9 @@ C = (
 )
 
 
+NOTHING = 1e-10  # of the least concentration: a species at zero is measured by what a step makes
+
+
 class Rodas5P:
     """The method as the stepper knows it."""
 
@@ -74,7 +77,9 @@ class Rodas5P:
         f, jacobian = flow.linear(c)
         per_h = (1.0 / h)[:, None]
         # Unknowns relative to their own size: or rounding of the large would swamp the trace species.
-        size = np.maximum(np.maximum(np.abs(c), h[:, None] * np.abs(f)), least)
+        nothing = NOTHING * least
+        there = np.abs(c)
+        size = np.where(there > nothing, there, np.maximum(h[:, None] * np.abs(f), nothing))
         matrix = jacobian * (-size[:, None, :] / size[:, :, None])
         diagonal = np.arange(c.shape[1])
         matrix[:, diagonal, diagonal] += per_h / GAMMA

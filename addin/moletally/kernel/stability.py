@@ -42,7 +42,7 @@ def invaded(structure: Structure, c: Floats, tau: Floats, T: Floats, p: Floats) 
 
 
 def _largest(matrix: Floats, dilution: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
-    finite = np.isfinite(matrix).all(axis=(1, 2))
+    finite = np.asarray(np.isfinite(matrix).all(axis=(1, 2)))
     values = np.linalg.eigvals(np.where(finite[:, None, None], matrix, 0.0))
     first = np.asarray(values.real.argmax(axis=1))[:, None]
     top = np.take_along_axis(values, first, axis=1)[:, 0]

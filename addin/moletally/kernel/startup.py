@@ -15,13 +15,13 @@ from moletally.kernel.rates import Floats
 from moletally.kernel.stability import growth
 from moletally.kernel.status import Status
 from moletally.kernel.steady import Tanks, newton
-from moletally.kernel.stepping import STIFF, Stepper, Tolerance
+from moletally.kernel.stepping import STIFF, Stepper
 from moletally.kernel.structure import Structure
+from moletally.kernel.tolerance import ABSOLUTE, Tolerance
 
 __all__ = ["Rest", "start_up"]
 
 RELATIVE = 1e-6  # error of a step: enough to stay on the right side of a divide
-ABSOLUTE = 1e-25  # of the largest concentration; a seed of a trace may decide
 MOST_STEPS = 1500
 NOTHING = 1e-10  # of the least concentration: where Newton's method begins for a species at zero
 LOOK_EVERY = 4  # attempts between two looks for the state ahead
@@ -48,9 +48,7 @@ class Rest:
     work: NDArray[np.int_]
 
 
-def start_up(
-    structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]
-) -> Rest:
+def start_up(structure: Structure, tanks: Tanks, laws: Laws, start: Floats, fed: NDArray[np.bool_]) -> Rest:
     """Follow n start-ups from `start`, shape (n, S).
 
     tanks : Tanks - the steady balances; laws : Laws - their laws, made fit for integrators
@@ -66,14 +64,14 @@ class _StartUp:
         self.structure, self.tanks, self.fed = structure, tanks, fed
         n = len(start)
         largest = np.maximum(tanks.feed, start).max(axis=1, keepdims=True, initial=1e-25)
-        self.least = np.broadcast_to(ABSOLUTE * largest, start.shape).copy()
-        absolute = self.least.copy()
-        ends = structure.finite_end[laws.edged]
-        absolute[:, laws.edged[ends]] = 0.1 * laws.floor[:, ends]
+        scale = np.broadcast_to(largest, start.shape)
+        self.least = ABSOLUTE * scale
         self.near = np.zeros(start.shape)
         self.near[:, laws.edged] = 2.0 * laws.floor
         self.flow = Flow(laws, tanks.nu, tanks.feed, 1.0 / tanks.tau[:, None])
-        self.stepper = Stepper(self.flow, start, Tolerance((RELATIVE, RELATIVE), absolute), MOST_STEPS, STIFF)
+        self.stepper = Stepper(
+            self.flow, start, Tolerance.of(structure, laws, scale, (RELATIVE, RELATIVE)), MOST_STEPS, STIFF
+        )
         self.rest = Rest(
             start.copy(),
             np.full(n, Status.WORK_CAP),

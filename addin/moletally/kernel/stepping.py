@@ -16,9 +16,10 @@ from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
 from moletally.kernel.rosenbrock import Rodas5P
 from moletally.kernel.status import Status
+from moletally.kernel.tolerance import Tolerance
 from moletally.kernel.totals import Totals
 
-__all__ = ["METHODS", "STIFF", "Stepper", "Stride", "Tolerance"]
+__all__ = ["METHODS", "STIFF", "Stepper", "Stride"]
 
 METHODS = (DOP853, Rodas5P)
 EXPLICIT, STIFF = 0, 1
@@ -36,14 +37,6 @@ RUNAWAY = 1e6  # growth beyond which a vanishing step means that concentrations 
 LARGEST = 1e250
 
 Ints = NDArray[np.intp]
-
-
-@dataclass(frozen=True, slots=True)
-class Tolerance:
-    """Accepted error of a step: relative (by method) times the concentration + absolute, shape (n, S)."""
-
-    relative: tuple[float, float]
-    absolute: Floats
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,7 +79,7 @@ class Stepper:
         self._stiff_steps = np.zeros(n)
         self._rejected = np.zeros(n, dtype=np.bool_)
         self._largest = np.maximum(np.abs(c).max(axis=1), 1e-300)
-        self._whole: tuple[Ints, Flow, Floats] | None = None
+        self._whole: tuple[Ints, Flow, Tolerance] | None = None
 
     def attempt(self) -> list[Stride]:
         """One step for every active vessel; returns those that were accepted."""
@@ -109,33 +102,32 @@ class Stepper:
             first = FIRST_CHANGE / fastest
         return np.where(np.isfinite(first) & (first > 0), first, 1.0)
 
-    def _cut(self, rows: Ints) -> tuple[Flow, Floats]:
-        """Flow and absolute tolerance of some vessels; the last cut is kept, as it rarely changes."""
+    def _cut(self, rows: Ints) -> tuple[Flow, Tolerance]:
+        """Flow and tolerance of some vessels; the last cut is kept, as it rarely changes."""
         if len(rows) == len(self.t):
-            return self.flow, self.tolerance.absolute
+            return self.flow, self.tolerance
         if self._whole is None or not np.array_equal(self._whole[0], rows):
-            self._whole = (rows, self.flow.at(rows), self.tolerance.absolute[rows])
+            self._whole = (rows, self.flow.at(rows), self.tolerance.at(rows))
         return self._whole[1], self._whole[2]
 
     def _try(self, rows: Ints, method: int) -> Stride:
-        flow, absolute = self._cut(rows)
+        flow, tolerance = self._cut(rows)
         t, c, h = self.t[rows], self.c[rows], self.h[rows]
         with np.errstate(all="ignore"):
-            new, error, stiffness = METHODS[method].step(flow, c, h, absolute)
-            allowed = absolute + self.tolerance.relative[method] * np.maximum(np.abs(c), np.abs(new))
-            size = (np.abs(error) / allowed).max(axis=1)
+            new, error, stiffness = METHODS[method].step(flow, c, h, tolerance.least)
+            size = tolerance.missed(error, c, new, method).max(axis=1)
             finite = np.isfinite(size) & np.isfinite(new).all(axis=1)
             size = np.where(finite, np.maximum(size, 1e-10), np.inf)
             factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
-            negative = new < -absolute
-            # Of a species that would end below zero, this step leaves a little if it falls evenly.
-            factor = np.minimum(factor, np.where(negative, AHEAD * c / (c - new), np.inf).min(axis=1))
-        fine = (size <= 1.0) & ~negative.any(axis=1)
+            negative = (new < -tolerance.least).any(axis=1)
+        fine = (size <= 1.0) & ~negative
         growth = np.where(self._rejected[rows] & fine, 1.0, METHODS[method].most_growth)
         factor = np.clip(factor, np.where(finite, MOST_SHRINK, NOT_FINITE_SHRINK), growth)
         self.steps[rows] += 1
         self.work[rows] += METHODS[method].evaluations
         self.h[rows] = np.minimum(h, LARGEST) * factor
+        if not fine.all() and len(self.flow.laws.edged):
+            self._approach_zero(rows[~fine], h[~fine])
         self._rejected[rows] = ~fine
         done = rows[fine]
         self._pass_time(done, h[fine])
@@ -145,6 +137,18 @@ class Stepper:
             assert stiffness is not None
             self._look_for_stiffness(rows, stiffness > STIFF_LIMIT)
         return Stride(done, t[fine], c[fine], h[fine], method)
+
+    def _approach_zero(self, rows: Ints, h: Floats) -> None:
+        """Where a rejected step would have used a species up, the next leaves a little of it.
+
+        Stages beyond zero say nothing about how far the step was too long, but the slope before it does.
+        """
+        laws = self.flow.laws
+        c = self.c[np.ix_(rows, laws.edged)]
+        f = self.flow.at(rows).slope(self.c[rows])[:, laws.edged]
+        with np.errstate(all="ignore"):
+            left = np.where((f < 0) & (c > laws.floor[rows]), -c / f, np.inf).min(axis=1)
+        self.h[rows] = np.where(left < h, AHEAD * left, self.h[rows])
 
     def _pass_time(self, rows: Ints, h: Floats) -> None:
         before = self.t[rows]

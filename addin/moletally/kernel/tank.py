@@ -8,11 +8,11 @@ from numpy.typing import NDArray
 from moletally.kernel.cutoff import Laws
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
-from moletally.kernel.refine import refine
-from moletally.kernel.stability import growth, invaded
+from moletally.kernel.settle import Settled, settle
+from moletally.kernel.stability import invaded
 from moletally.kernel.startup import start_up
 from moletally.kernel.status import Status
-from moletally.kernel.steady import CLOSED, Tanks, newton, polish
+from moletally.kernel.steady import Tanks, newton
 from moletally.kernel.structure import Structure, structures
 
 __all__ = ["TankResult", "solve_tanks"]
@@ -20,9 +20,6 @@ __all__ = ["TankResult", "solve_tanks"]
 FIRST_GUESSES = (1e-3, 1e-9)  # of the largest concentration, for species that are not fed
 BRIEFEST = 1e-50  # s: no residence time above it is brief
 BRIEF = 1e-100  # of the feed: a conversion that is exact to first order
-RELIABLE = 1e-10  # estimated relative error beyond which 50 digits are called for
-BELIEVED = 1e-8  # and beyond which, if they fail, the answer is withheld
-INVARIANT = 1e-9  # of the sum of a total's terms
 NOWHERE = 1e-25  # mol/m3: the scale of a vessel with nothing in it
 
 Ints = NDArray[np.intp]
@@ -145,8 +142,15 @@ class _Group:
             return faded
         good = np.setdiff1d(np.flatnonzero(out.status[rows] == Status.OK), faded)
         if len(structure.firing) and len(good):
-            self._finish(tanks.at(good), good, c[good], T[good], p[good])
+            self._keep(good, settle(structure, tanks.at(good), c[good], T[good], p[good]))
         return faded
+
+    def _keep(self, places: Ints, answer: Settled) -> None:
+        out, rows = self.out, self.rows[places]
+        out.c[rows], out.status[rows] = answer.c, answer.status
+        out.exhausted[rows] |= answer.exhausted
+        out.residual[rows], out.condition[rows] = answer.residual, answer.condition
+        out.growth[rows] = answer.growth
 
     def _fail(self, places: Ints, status: int | NDArray[np.int_]) -> None:
         rows = self.rows[places]
@@ -185,52 +189,3 @@ class _Group:
         for k, reached in enumerate(map(structure.reached, map(tuple, (feed > 0).tolist()))):
             alone[k] = reached
         return alone
-
-    def _finish(self, tanks: Tanks, places: Ints, c: Floats, T: Floats, p: Floats) -> None:
-        """Last digits, stability, and the checks that every answer has to pass."""
-        structure, out, rows = self.structure, self.out, self.rows[places]
-        polished = polish(tanks, c)
-        c, error, residual = polished.c, polished.error, polished.residual
-        for k in np.flatnonzero(~(error <= RELIABLE)).tolist():
-            better = self._in_decimals(tanks, k, c[k], T, p)
-            if better is not None:
-                c[k], error[k] = better, 0.0
-        rate, swing, unstable = growth(tanks, c)
-        out.residual[rows], out.condition[rows], out.growth[rows] = residual, polished.condition, rate
-        status = np.zeros(len(rows), dtype=np.int_)
-        status[~(error <= BELIEVED)] = Status.ILL_CONDITIONED
-        status[~(residual <= CLOSED)] = Status.RESIDUAL
-        status[unstable] = np.where(swing[unstable] > 0, Status.OSCILLATES, Status.UNSTABLE)
-        if not structure.unique:
-            status[invaded(structure, c, tanks.tau, T, p)] = Status.UNSTABLE
-        c = self._take_out_exhausted(tanks.laws, c, rows)
-        status[~np.isfinite(tanks.laws.strict(c)).all(axis=1)] = Status.NOT_FINITE
-        status[~(c >= 0).all(axis=1)] = Status.NEGATIVE
-        out.c[np.ix_(rows, structure.present)] = c
-        status[self._totals_lost(rows, tanks.feed)] = Status.INVARIANT
-        bad = np.flatnonzero(status != Status.OK)
-        self._fail(places[bad], status[bad])
-
-    def _in_decimals(self, tanks: Tanks, k: int, c: Floats, T: Floats, p: Floats) -> Floats | None:
-        laws = tanks.laws
-        if len(laws.edged) and (c[laws.edged] < laws.floor[k]).any():
-            return None
-        tape = self.structure.tape
-        return refine(tape, tanks.nu, c, tanks.feed[k], float(tanks.tau[k]), float(T[k]), p[k])
-
-    def _take_out_exhausted(self, laws: Laws, c: Floats, rows: Ints) -> Floats:
-        """Species below the floor of a law of order zero that consumes them are used up: exactly zero."""
-        if not len(self.structure.starved):
-            return c
-        gone = (c[:, laws.edged] < laws.floor) & np.isin(laws.edged, self.structure.starved)
-        self.out.exhausted[np.ix_(rows, self.structure.present[laws.edged])] |= gone
-        c = c.copy()
-        c[:, laws.edged] = np.where(gone, 0.0, c[:, laws.edged])
-        return c
-
-    def _totals_lost(self, rows: Ints, feed: Floats) -> NDArray[np.bool_]:
-        w = self.structure.conserved[:, self.structure.present].T
-        c = self.out.c[np.ix_(rows, self.structure.present)]
-        with np.errstate(all="ignore"):
-            lost = np.abs((c - feed) @ w) > INVARIANT * ((np.abs(c) + feed) @ np.abs(w))
-        return np.asarray(lost.any(axis=1))

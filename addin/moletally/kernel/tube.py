@@ -10,15 +10,14 @@ from moletally.kernel.flow import Flow
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
 from moletally.kernel.status import Status
-from moletally.kernel.stepping import METHODS, STIFF, Stepper, Stride, Tolerance
+from moletally.kernel.stepping import METHODS, STIFF, Stepper, Stride
 from moletally.kernel.structure import Structure, structures
+from moletally.kernel.tolerance import NOTHING, Tolerance
 from moletally.kernel.totals import Totals
 
 __all__ = ["TubeResult", "solve_tubes"]
 
 RELATIVE = (1e-10, 1e-9)  # error of a step, explicit and stiff; the sum of all stays below 1e-8
-ABSOLUTE = 1e-25  # of the largest concentration: trace species are followed relatively
-NOTHING = 1e-40  # of the largest concentration: shown as zero
 MOST_STEPS = 12000
 VANISHING = 1e-5  # of the feed: where a law of negative order is about to end
 INVARIANT = 1e-9  # of the sum of a total's terms
@@ -90,11 +89,8 @@ class _Run:
         largest = feed.max(axis=1, keepdims=True)
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
         laws = Laws.of(structure, structure.edged, scale, T, p)
-        absolute = ABSOLUTE * scale
-        ends = structure.finite_end[structure.edged]
-        absolute[:, structure.edged[ends]] = 0.1 * laws.floor[:, ends]
         self.flow = Flow(laws, structure.nu)
-        self.tolerance = Tolerance(RELATIVE, absolute)
+        self.tolerance = Tolerance.of(structure, laws, scale, RELATIVE)
         weights = structure.conserved[:, structure.present]
         weights = weights[weights.any(axis=1)]
         totals = Totals(weights, c @ weights.T) if len(weights) else None
@@ -163,14 +159,14 @@ class _Run:
             points = np.concatenate([point for _, _, point, _ in parts])
             c = np.concatenate([s.c[row] for s, row, _, _ in parts])
             h = np.concatenate([h for *_, h in parts])
-            flow, absolute = self.flow.at(rows), self.tolerance.absolute[rows]
+            flow, tolerance = self.flow.at(rows), self.tolerance.at(rows)
             with np.errstate(all="ignore"):
-                new, error, _ = METHODS[method].step(flow, c, h, absolute)
-            allowed = absolute + RELATIVE[method] * np.maximum(np.abs(c), np.abs(new))
+                new, error, _ = METHODS[method].step(flow, c, h, tolerance.least)
             # A shorter step is a better one, but for fast transients that the long one damps.
-            poor = ~((np.abs(error) <= 4.0 * allowed).all(axis=1) & (new >= -absolute).all(axis=1))
-            for k in np.flatnonzero(poor):
-                new[k] = _creep(flow.at(np.array([k])), c[k : k + 1], float(h[k]), absolute[k : k + 1])
+            fine = (tolerance.missed(error, c, new, method) <= 4.0) & (new >= -tolerance.least)
+            for k in np.flatnonzero(~fine.all(axis=1)):
+                one = np.array([k])
+                new[k] = _creep(flow.at(one), c[one], float(h[k]), tolerance.at(one))
             if self.stepper.totals is not None:
                 new = self.stepper.totals.restore(new, rows)
             self.points[rows[:, None], points[:, None], self.structure.present] = new
@@ -183,10 +179,10 @@ class _Run:
         if len(edged):
             gone = (c[:, :, edged] < floor) & structure.finite_end[edged] & (self.asked > 0)[:, :, None]
             c[:, :, edged] = np.where(gone, 0.0, c[:, :, edged])
-        absolute = self.tolerance.absolute[:, None, :]
-        negative = (c < -absolute).any(axis=2)
-        nothing = np.abs(c) < NOTHING / ABSOLUTE * absolute
-        self.points[:, :, structure.present] = np.where(((c < 0) & (c >= -absolute)) | nothing, 0.0, c)
+        least = self.tolerance.least[:, None, :]
+        negative = (c < -least).any(axis=2)
+        nothing = np.abs(c) < NOTHING * self.feed.max(axis=1)[:, None, None]
+        self.points[:, :, structure.present] = np.where(((c < 0) & (c >= -least)) | nothing, 0.0, c)
         w = structure.conserved
         with np.errstate(all="ignore"):
             off = np.abs((self.points - self.feed[:, None, :]) @ w.T)
@@ -222,9 +218,9 @@ class _Run:
         return ~np.isfinite(r).all(axis=1).reshape(n, points)
 
 
-def _creep(flow: Flow, c: Floats, h: float, absolute: Floats) -> Floats:
+def _creep(flow: Flow, c: Floats, h: float, tolerance: Tolerance) -> Floats:
     """The state of one vessel a time h after c, in as many steps as it takes; nan if they are too many."""
-    stepper = Stepper(flow, c, Tolerance(RELATIVE, absolute), MOST_STEPS, STIFF)
+    stepper = Stepper(flow, c, tolerance, MOST_STEPS, STIFF)
     while stepper.active[0] and stepper.t[0] < h:
         stepper.h = np.minimum(stepper.h, h - stepper.t)
         stepper.attempt()
