@@ -74,6 +74,7 @@ def check_rates(reactions: Sequence[HasLaw], parameters: Parameters, species: tu
     """
     per_mass: set[bool] = set()
     concentration = MASS_CONCENTRATION if mass_basis else CONCENTRATION
+    like = (*like, *(item.unit for item in parameters.items if item.unit is not None))
     for reaction, symbols in zip(reactions, parameters.symbols, strict=True):
         dims: dict[str, Dims] = {"T": TEMPERATURE, "R": GAS_CONSTANT}
         values: dict[str, float] = {}
