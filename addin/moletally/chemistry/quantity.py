@@ -188,7 +188,7 @@ class _Reader:
                 return factor**power, _dims(d * power for d in dims)
             return self.general(name)
         self.names.append(found.name)
-        self.offset = float(found.offset)
+        self.offset = self.offset or float(found.offset)
         return found.factor, found.dims
 
     def general(self, name: str) -> tuple[float, Dims]:
