@@ -18,7 +18,7 @@ PIECE = re.compile(
 CHARGE = re.compile(r"(?:\^(?P<size>\d*))?(?P<sign>[+-]+)$")
 MAX_LENGTH = 200
 OFF_BY = 5e-3  # of the mass of a side: molar masses are often given to three digits
-SLACK = 1e-6
+SLACK = 2e-3  # of the larger side: 0.333 is meant to be a third
 MOLAR_MASS = (-1, 0, 0, 1, 0)
 
 
@@ -124,7 +124,8 @@ def _check_atoms(reaction: Reaction, formulas: Mapping[str, tuple[str, Place]]) 
     off = [
         f"{element}: {left.get(element, 0):g} -> {right.get(element, 0):g}"
         for element in sorted(left.keys() | right.keys())
-        if abs(left.get(element, 0) - right.get(element, 0)) > SLACK
+        if abs(left.get(element, 0) - right.get(element, 0))
+        > SLACK * max(abs(left.get(element, 0)), abs(right.get(element, 0)))
     ]
     if off:
         raise InputError(f"{reaction.row.equation.text} does not balance by the formulas: {', '.join(off)}."

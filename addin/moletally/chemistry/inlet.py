@@ -154,6 +154,8 @@ class Inlet:
         for i, row in enumerate(rows):
             if row.start is not None:
                 first[:, i] = self._concentration(row.start, i)
+                if row.start.value < 0:
+                    raise InputError(f"Start of {row.name} is negative", row.start.place)
         return self._clean(first)
 
     def temperature(self) -> float:
@@ -187,8 +189,7 @@ class Inlet:
         unit = _unit(quantity, self.feed.species[i].name)
         if "flow" in KINDS[unit.dims]:
             raise InputError(f"{name} is a concentration, not a flow", quantity.place)
-        value = unit.to_si(quantity.value)
-        return value / self._per_mole(unit, i, quantity.place)
+        return unit.to_si(quantity.value) / self._per_mole(unit, i, quantity.place)
 
     def _per_mole(self, unit: Unit, i: int, place: Place) -> float:
         """What to divide a mass by: the molar mass, or 1 on a mass basis."""

@@ -9,10 +9,10 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 from moletally.chemistry.errors import InputError
-from moletally.chemistry.expression import Binary, Call, Name, Node, Num, Unary, fold
+from moletally.chemistry.expression import Binary, Call, Name, Node, Num, Unary, fold, names
 from moletally.chemistry.quantity import ONE, Dims
 
-__all__ = ["GAS_CONSTANT", "PRESSURE", "TEMPERATURE", "Mismatch", "Symbols", "dimension", "remedy"]
+__all__ = ["GAS_CONSTANT", "PRESSURE", "TEMPERATURE", "Mismatch", "Symbols", "dimension", "orders", "remedy"]
 
 TEMPERATURE: Dims = (0, 0, 0, 0, 1)
 PRESSURE: Dims = (0, -1, -2, 1, 0)
@@ -61,6 +61,7 @@ class _Inference:
         self.symbols = symbols
         self.unknown = unknown
         self.found: Dims | None = None
+        self.orders: set[str] = set()
 
     def of(self, tree: Node) -> _Form:
         return fold(tree, self._value, lambda node: isinstance(node, Call) and node.function in ("p", "x"))
@@ -96,7 +97,7 @@ class _Inference:
             case Binary(op, left, right, _):
                 return self._binary(op, left, right, parts)
             case Call(function, _, _):
-                return self._call(function, parts)
+                return self._call(function, node.args, parts)
 
     def _binary(self, op: str, left: Node, right: Node, parts: list[_Form]) -> _Form:
         if op == "*":
@@ -104,19 +105,21 @@ class _Inference:
         if op == "/":
             return parts[0].plus(parts[1], -1.0)
         if op in "+-":
-            if isinstance(left, Num) and left.value == 0:
-                return parts[1]
+            if _is_zero(left) or _is_zero(right):
+                return parts[_is_zero(left)]
             return self.equal(
                 parts[0], parts[1], lambda: "quantities of different units are added or subtracted"
             )
         self.equal(parts[1], PLAIN, lambda: "an exponent has a unit")
         power = constant(right, self.symbols.values)
         if power is not None:
+            if parts[0].share or not close(parts[0].base, ONE):
+                self.orders |= {name.text for name in names(right)}
             return parts[0].times(power)
         self.equal(parts[0], PLAIN, lambda: "the exponent of a quantity with a unit is no fixed number")
         return PLAIN
 
-    def _call(self, function: str, parts: list[_Form]) -> _Form:
+    def _call(self, function: str, args: tuple[Node, ...], parts: list[_Form]) -> _Form:
         if function == "p":
             return _Form(PRESSURE)
         if function == "x":
@@ -125,9 +128,15 @@ class _Inference:
             return parts[0].times(0.5)
         if function in ("exp", "ln", "log10"):
             return self.equal(PLAIN, parts[0], lambda: f"{function}() is taken of a quantity with a unit")
-        for other in parts[1:]:
-            self.equal(parts[0], other, lambda: f"{function}() compares quantities of different units")
-        return parts[0]
+        # 0 is 0 in any unit: max(A, 0) compares like with like
+        first, *rest = [p for p, arg in zip(parts, args, strict=True) if not _is_zero(arg)] or [PLAIN]
+        for other in rest:
+            self.equal(first, other, lambda: f"{function}() compares quantities of different units")
+        return first
+
+
+def _is_zero(node: Node) -> bool:
+    return isinstance(node, Num) and node.value == 0
 
 
 def close(one: Dims, other: Dims) -> bool:
@@ -163,6 +172,13 @@ def dimension(tree: Node, symbols: Symbols) -> Dims:
         Where the law is not consistent in itself.
     """
     return _Inference(symbols, None).of(tree).base
+
+
+def orders(tree: Node, symbols: Symbols) -> set[str]:
+    """The constants whose numbers decide the dimension: exponents of what has a unit."""
+    inference = _Inference(symbols, None)
+    inference.of(tree)
+    return inference.orders
 
 
 def remedy(tree: Node, symbols: Symbols, unknown: str, target: Dims | None) -> Dims | None:

@@ -1,9 +1,9 @@
 """The law of each reaction: as typed, or mass action where the Rate is left blank."""
 
-from collections.abc import Mapping
 from dataclasses import dataclass
 
-from moletally.chemistry.errors import InputError, SheetError, near_miss
+from moletally.chemistry.alike import hint
+from moletally.chemistry.errors import InputError, SheetError
 from moletally.chemistry.expression import Call, Name, Node, check_reserved, names, parse, walk
 from moletally.chemistry.tables import ReactionRow
 from moletally.chemistry.tokens import bracketed
@@ -11,6 +11,7 @@ from moletally.chemistry.tokens import bracketed
 __all__ = ["Law", "law_of"]
 
 RESERVED = ("T", "R")
+CARRIERS = {"k0": "k", "E": "k", "T ref": "k", "dH": "Keq", "dH T ref": "Keq", "Keq T ref": "Keq"}
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +37,8 @@ def law_of(row: ReactionRow, species: tuple[str, ...], shared: frozenset[str], i
     InputError
         With the place of the Rate, for what can't be read and for names that are unknown.
     """
+    if not row.rate and "k" in species:
+        raise InputError("a species is called k, so the Rate has to be typed", row.rate_place)
     text = row.rate or _mass_action(row, in_pressures)
     try:
         tree = parse(text)
@@ -64,9 +67,8 @@ def _mass_action(row: ReactionRow, in_pressures: bool) -> str:
 def _checked(
     text: str, tree: Node, row: ReactionRow, species: tuple[str, ...], shared: frozenset[str]
 ) -> Law:
-    own = {name for name, _ in row.constants}
-    if "k0" in own:
-        own = (own - {"k0"}) | {"k"}
+    given = {name for name, _ in row.constants}
+    own = (given - CARRIERS.keys()) | ({"k"} if "k0" in given else set())
     constants: list[str] = []
     temperature = False
     for name in names(tree):
@@ -76,6 +78,8 @@ def _checked(
             temperature |= name.text == "T"
             continue
         if name.text not in own and name.text not in shared:
+            if name.text in given:
+                raise _carrier(name.text)
             raise _unknown(name, row, species, own | shared, text)
         if name.text not in constants:
             constants.append(name.text)
@@ -90,7 +94,15 @@ def _check_species(node: Call, species: tuple[str, ...]) -> None:
     name = node.args[0]
     if not isinstance(name, Name) or name.text not in species:
         what = name.text if isinstance(name, Name) else ""
-        raise InputError(f"{node.function}() takes a species; {what!r} is none. {near_miss(what, species)}")
+        raise InputError(f"{node.function}() takes a species; {what!r} is none. {hint(what, species)}")
+
+
+def _carrier(name: str) -> InputError:
+    bearer = CARRIERS[name]
+    return InputError(
+        f"the column {name} acts through {bearer}: write {bearer} in the Rate, or give a constant of your own"
+        " another name"
+    )
 
 
 def _unknown(name: Name, row: ReactionRow, species: tuple[str, ...], constants: set[str] | frozenset[str],
@@ -101,17 +113,16 @@ def _unknown(name: Name, row: ReactionRow, species: tuple[str, ...], constants: 
         )
     if name.text == "Keq":
         return InputError(f"the reaction {row.equation.text} can run backwards: give Keq, or type its Rate")
-    hint = near_miss(name.text, [*species, *sorted(constants)])
-    alike = "" if name.text.isascii() else " It holds letters that only look like others: type it again."
-    return InputError(f"unknown name {name.text!r} in {text}. {hint}{alike}")
+    return InputError(
+        f"unknown name {name.text!r} in {text}. {hint(name.text, [*species, *sorted(constants)])}"
+    )
 
 
 def unused(row: ReactionRow, law: Law) -> str | None:
     """A constant of the row that its law does not name."""
-    carriers: Mapping[str, str] = {"k0": "k", "E": "k", "T ref": "k", "Keq T ref": "Keq"}
     for name, _ in row.constants:
         if name in ("dH", "dH T ref"):
             continue
-        if carriers.get(name, name) not in law.constants:
+        if CARRIERS.get(name, name) not in law.constants:
             return name
     return None

@@ -6,9 +6,10 @@ from functools import cached_property, lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.chemistry.alike import hint
 from moletally.chemistry.compiler import compile_laws
-from moletally.chemistry.errors import Finding, InputError, Level, Place, near_miss
-from moletally.chemistry.expression import names
+from moletally.chemistry.errors import Finding, InputError, Level, Place
+from moletally.chemistry.expression import Call, names, walk
 from moletally.chemistry.laws import Law, law_of, unused
 from moletally.chemistry.parameters import Parameter, Parameters
 from moletally.chemistry.quantity import Unit, parse_unit
@@ -113,11 +114,15 @@ def build_network(
         in_pressures = with_units and not row.rate and is_per_pressure(row, mass_basis)
         law = law_of(row, species, shared, in_pressures)
         _check_row(row, law, species, shared)
+        _check_basis(row, law, species, with_units, mass_basis)
         reactions.append(Reaction(number, _label(row), row, law, _change(row, species)))
         findings += _remarks(reactions[-1], table, species)
     _check_shared(constants, reactions, species)
     parameters = Parameters.of(tuple((r.number, r.row, r.law) for r in reactions), constants, with_units)
-    per_mass = with_units and check_rates(reactions, parameters, species, mass_basis, like, dict(exponents))
+    per_mass = False
+    if with_units:
+        per_mass, orders = check_rates(reactions, parameters, species, mass_basis, like, dict(exponents))
+        parameters = parameters.with_orders({slot: x for slot, x in exponents if slot in orders})
     program = compile_laws([r.law for r in reactions], parameters, species)
     model = Model(
         program, np.array([r.change for r in reactions], dtype=np.float64).reshape(-1, len(species))
@@ -152,12 +157,9 @@ def _check_names(table: ReactionTable, constants: tuple[ConstantRow, ...], speci
     for row in table.rows:
         for name, _ in (*row.equation.left, *row.equation.right):
             if name not in species:
-                alike = (
-                    "" if name.isascii() else " It holds letters that only look like others: type it again."
-                )
                 raise InputError(
                     f"the species {name!r} has no row in the feed table (write 0 if it is not fed)."
-                    f" {near_miss(name, species)}{alike}",
+                    f" {hint(name, species)}",
                     row.place,
                 )
         for name, number in row.constants:
@@ -183,12 +185,22 @@ def _check_row(row: ReactionRow, law: Law, species: tuple[str, ...], shared: fro
         return
     if name in ("E", "T ref"):
         raise InputError(f"{name} belongs to k, which the law {law.text} does not use", given[name].place)
-    hint = near_miss(
-        name, [n.text for n in names(law.tree) if n.text not in species and n.text not in shared]
-    )
-    raise InputError(
-        f"the constant {name!r} stands in no law: the Rate is {law.text}. {hint}".rstrip(), given[name].place
-    )
+    others = [n.text for n in names(law.tree) if n.text not in species and n.text not in shared]
+    raise InputError(f"the constant {name!r} stands in no law: the Rate is {law.text}."
+                     f" {hint(name, others)}".rstrip(), given[name].place)  # fmt: skip
+
+
+def _check_basis(
+    row: ReactionRow, law: Law, species: tuple[str, ...], with_units: bool, mass_basis: bool
+) -> None:
+    """Refuse what has no meaning without units, or on a basis of mass."""
+    if not with_units and any(
+        n.text == "R" and not n.bracketed and n.text not in species for n in names(law.tree)
+    ):
+        raise InputError("R is 8.314 J/(mol K): a law with R needs units throughout", row.rate_place)
+    if mass_basis and any(isinstance(node, Call) and node.function in ("p", "x") for node in walk(law.tree)):
+        raise InputError("p() and x() count moles, but the feed is in mass: give the MW of every species",
+                         row.rate_place)  # fmt: skip
 
 
 def _check_shared(
@@ -197,7 +209,7 @@ def _check_shared(
     for constant in constants:
         if not any(constant.name in r.law.constants for r in reactions):
             words = sorted({n.text for r in reactions for n in names(r.law.tree)} - set(species))
-            raise InputError(f"the constant {constant.name!r} stands in no Rate. {near_miss(constant.name, words)}",
+            raise InputError(f"the constant {constant.name!r} stands in no Rate. {hint(constant.name, words)}",
                              constant.place)  # fmt: skip
 
 

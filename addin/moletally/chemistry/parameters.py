@@ -1,6 +1,6 @@
 """The parameter vector of a network: rate constants, energies and reference temperatures, in SI."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -18,6 +18,8 @@ ENERGY = (-1, 2, -2, 1, 0)
 KELVIN = (0, 0, 0, 0, 1)
 LIKELY = (500.0, 60000.0)  # K; E/R outside of it is more often a slip of units than chemistry
 
+COLD = 100.0  # K; a reference below it is more often degrees Celsius in a column of kelvins
+
 
 class ParameterKind:
     """What a number is: each kind has its own way to SI."""
@@ -32,6 +34,7 @@ class Parameter:
     """One number of the vector.
 
     label : as in a table of cases, `k(2)` or `K_A`; name : of the constant; unit : None where none is used
+    order : the number an exponent had when the units of its law were checked, None for all others
     """
 
     label: str
@@ -40,6 +43,7 @@ class Parameter:
     slot: int
     unit: Unit | None
     place: Place
+    order: float | None = None
 
     @property
     def needs_temperature(self) -> bool:
@@ -86,6 +90,11 @@ class Parameter:
             )
         if self.name == "Keq" and self.kind == ParameterKind.VALUE and value <= 0:
             return f"{self.label} is {value:g}: an equilibrium constant is more than 0"
+        if self.order is not None and abs(value - self.order) > 1e-9:
+            return (
+                f"{self.label} is an order, and the units of the rate constants fit {self.order:g}, not {value:g}:"
+                " give the other order in reactions of its own, with the units that belong to it"
+            )
         if self.kind == ParameterKind.REFERENCE and self.to_si(value) <= 0:
             return f"{self.label} is below absolute zero"
         return ""
@@ -97,6 +106,10 @@ class Parameter:
             if not LIKELY[0] <= ratio <= LIKELY[1]:
                 return Finding(Level.DOUBT, str(self.place), f"E/R is {ratio:.4g} K, outside {LIKELY[0]:g} to"
                                f" {LIKELY[1]:g} K: is the unit of E right?")  # fmt: skip
+        if self.kind == ParameterKind.REFERENCE and self.to_si(value) < COLD:
+            return Finding(
+                Level.DOUBT, str(self.place), f"{self.label} is {self.to_si(value):g} K: is its unit right?"
+            )
         if self.name in ("k", "k0") and self.kind == ParameterKind.VALUE and value == 0:
             return Finding(Level.NOTE, str(self.place), f"{self.label} is 0: the reaction is switched off")
         return None
@@ -144,6 +157,12 @@ class Parameters:
                 findings.append(remark)
         return vector, tuple(findings)
 
+    def with_orders(self, orders: Mapping[int, float]) -> "Parameters":
+        """The same, with the numbers of exponents held fast: slot -> number."""
+        if not orders:
+            return self
+        return replace(self, items=tuple(replace(p, order=orders.get(p.slot)) for p in self.items))
+
     def find(self, label: str) -> int | None:
         """Index of a label of a case table: `k(2)`, `K_A`; a bare name that only one reaction has."""
         found = [
@@ -163,6 +182,8 @@ class _Maker:
     def own(self, number: int, row: ReactionRow) -> dict[str, Symbol]:
         """The constants of a reaction's row."""
         given = dict(row.constants)
+        if "dH" in given and "Keq" not in given:
+            self.unit("dH", ParameterKind.ENERGY, given["dH"])  # not used yet, but wrong is wrong
         made: dict[str, Symbol] = {}
         for name, value in given.items():
             if name in ("k", "k0"):
@@ -191,7 +212,7 @@ class _Maker:
         if energy is None:
             if reference is not None:
                 raise InputError(f"{reference_name} is given, but {energy_name} is not", reference.place)
-            if pre_exponential and name == "k0":
+            if pre_exponential:
                 raise InputError(f"{name} is a pre-exponential: it needs E (0 if there is none)", value.place)
             return Symbol(index)
         if pre_exponential:
@@ -234,7 +255,8 @@ class _Maker:
             unit = parse_unit(number.unit or "")
         except InputError as error:
             raise error.at(number.place) from None
-        if wanted is not None and unit.dims not in wanted:
+        shifted = kind == ParameterKind.ENERGY and unit.offset
+        if wanted is not None and (unit.dims not in wanted or shifted):
             example = "kJ/mol, or K for E/R" if kind == ParameterKind.ENERGY else "degC or K"
             raise InputError(f"{label} can't be in {unit.text}: it takes {example}", number.place)
         return unit

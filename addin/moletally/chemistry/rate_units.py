@@ -4,7 +4,7 @@ from collections.abc import Mapping, Sequence
 from typing import Protocol
 
 from moletally.chemistry.errors import InputError
-from moletally.chemistry.expression import source
+from moletally.chemistry.expression import Num, source, walk
 from moletally.chemistry.lawcheck import (
     GAS_CONSTANT,
     PRESSURE,
@@ -13,6 +13,7 @@ from moletally.chemistry.lawcheck import (
     Symbols,
     close,
     dimension,
+    orders,
     remedy,
 )  # fmt: skip
 from moletally.chemistry.laws import Law
@@ -67,12 +68,13 @@ def _plus(one: Dims, other: Dims, factor: float) -> Dims:
 
 
 def check_rates(reactions: Sequence[HasLaw], parameters: Parameters, species: tuple[str, ...], mass_basis: bool,
-                like: tuple[Unit, ...], exponents: Mapping[int, float]) -> bool:  # fmt: skip
-    """True where the rates are per mass of catalyst.
+                like: tuple[Unit, ...], exponents: Mapping[int, float]) -> tuple[bool, set[int]]:  # fmt: skip
+    """Whether the rates are per mass of catalyst, and the slots of the numbers that are orders.
 
     like : units of the feed, in which a unit is proposed; exponents : slot -> number
     """
     per_mass: set[bool] = set()
+    deciding: set[int] = set()
     concentration = MASS_CONCENTRATION if mass_basis else CONCENTRATION
     like = (*like, *(item.unit for item in parameters.items if item.unit is not None))
     for reaction, symbols in zip(reactions, parameters.symbols, strict=True):
@@ -86,11 +88,14 @@ def check_rates(reactions: Sequence[HasLaw], parameters: Parameters, species: tu
             if item.slot in exponents:
                 values[name] = exponents[item.slot]
         dims.update(dict.fromkeys(species, concentration))
-        per_mass.add(_check(reaction, Symbols(dims, values), units, mass_basis, like))
+        known = Symbols(dims, values)
+        per_mass.add(_check(reaction, known, units, mass_basis, like))
+        decided = orders(reaction.law.tree, known) & symbols.keys()
+        deciding |= {parameters.items[symbols[name].value].slot for name in decided}
     if len(per_mass) > 1:
         raise InputError("some rates are per volume, others per mass of catalyst: give all in one way",
                          reactions[0].row.place)  # fmt: skip
-    return per_mass == {True}
+    return per_mass == {True}, deciding
 
 
 def _check(reaction: HasLaw, symbols: Symbols, units: Mapping[str, Unit], mass_basis: bool,
@@ -122,7 +127,9 @@ def _complaint(law: Law, symbols: Symbols, units: Mapping[str, Unit], target: Di
                 return _proposal(name, units[name], proposed, text, similar)
     made = compose(target, similar)
     because = f": {wrong}" if wrong else ""
-    return f"the units of the law {text} do not fit together{because}. A rate is in {made}"
+    plain = any(isinstance(node, Num) and node.value != 0 for node in walk(law.tree))
+    numbers = ". A number in a law has no unit: give it a name and a column of its own" if plain else ""
+    return f"the units of the law {text} do not fit together{because}. A rate is in {made}{numbers}"
 
 
 def _proposal(name: str, unit: Unit, proposed: Dims, text: str, like: tuple[Unit, ...]) -> str:
