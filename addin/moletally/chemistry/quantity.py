@@ -1,5 +1,6 @@
 """Units as they are written in the trade, read into a factor to SI and a dimension."""
 
+import math
 import re
 from collections.abc import Iterable
 from dataclasses import dataclass
@@ -10,9 +11,9 @@ from typing import TYPE_CHECKING, NoReturn, TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.chemistry.errors import InputError
+from moletally.chemistry.errors import InputError, near_miss
 from moletally.chemistry.tables import Quantity
-from moletally.chemistry.unit_names import REFUSED, look_up
+from moletally.chemistry.unit_names import REFUSED, known_names, look_up
 
 if TYPE_CHECKING:
     import pint
@@ -22,11 +23,14 @@ __all__ = ["DIMENSIONLESS", "Dims", "Unit", "compose", "parse_unit", "to_si"]
 Dims = tuple[float, float, float, float, float]  # amount, length, time, mass, temperature
 ONE: Dims = (0, 0, 0, 0, 0)
 TIME = (0, 0, 1, 0, 0)
+PRESSURE: Dims = (0, -1, -2, 1, 0)
 MAX_LENGTH = 120
+MAX_POWER = 12  # beyond it a slip
+MAX_DECADES = 150  # of a factor: products of two stay floating-point numbers
 Value = TypeVar("Value", float, NDArray[np.float64])
 
 TOKEN = re.compile(
-    r"\s*(?:(?P<op>\*|/|\(|\)|\^)|(?P<num>[+-]?\d+(?:\.\d+)?)|(?P<name>[^\W\d]\w*(?:\([ag]\))?|[°ºµμ℃℉]\w*|lb-mol|%))\s*"
+    r"\s*(?:(?P<op>\*|/|\(|\)|\^)|(?P<num>[+-]?\d+(?:\.\d+)?)|(?P<name>(?:lb|k?g)-mol|[^\W\d]\w*(?:\([ag]\))?|[°ºµμ℃℉]\w*|%))\s*"
 )
 SUPERSCRIPT = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻", "0123456789+-")
 NAME_POWER = re.compile(r"(?P<name>.*?[^\W\d_])(?P<power>\d)$")
@@ -94,7 +98,8 @@ class _Reader:
             raise InputError(f"the unit {self.text!r} can't be read at {self.tokens[self.at][1]!r}")
         if self.offset and len(self.tokens) > 1:
             raise InputError(
-                f"the unit {self.text!r} has a shifted zero inside: write K, or a plain pressure unit"
+                f"the unit {self.text!r} has a shifted zero inside: write K for a step of 1 degC, degR for one of"
+                " 1 degF, and a pressure without its g"
             )
         return Unit(self.text, float(factor), dims, self.offset, tuple(self.names))
 
@@ -118,6 +123,8 @@ class _Reader:
             sign = -1 if operator == "/" else 1
             more, its = self.power()
             factor = factor * more if sign > 0 else factor / more
+            if not 10.0**-MAX_DECADES < factor < 10.0**MAX_DECADES:
+                raise InputError(f"the unit {self.text!r} is too large or too small to compute with")
             dims = _dims(a + sign * b for a, b in zip(dims, its, strict=True))
         return factor, dims
 
@@ -126,6 +133,8 @@ class _Reader:
         exponent = self.exponent(bare)
         if exponent == 1:
             return factor, dims
+        if abs(exponent) > MAX_POWER or abs(math.log10(factor)) * abs(exponent) > MAX_DECADES:
+            raise InputError(f"the unit {self.text!r} is raised to too high a power")
         raised = factor ** int(exponent) if exponent == int(exponent) else float(factor) ** exponent
         return raised, _dims(d * exponent for d in dims)
 
@@ -195,7 +204,9 @@ class _Reader:
         """A name outside the trade's table, as a general library knows it."""
         unit = _from_pint(name)
         if unit is None:
-            raise InputError(f"the unit {self.text!r}: {name!r} is no unit that is known here")
+            near = near_miss(name, known_names())
+            hint = f". {near}" if near.startswith("Did") else ""
+            raise InputError(f"the unit {self.text!r}: {name!r} is no unit that is known here{hint}")
         self.names.append(name)
         return unit
 
@@ -219,6 +230,8 @@ PINT_BASE = {"[substance]": 0, "[length]": 1, "[time]": 2, "[mass]": 3, "[temper
 
 @lru_cache(maxsize=256)
 def _from_pint(name: str) -> tuple[float, Dims] | None:
+    if len(name) < 2:  # there, k is Boltzmann's constant and b a barn
+        return None
     import pint
 
     registry = _registry()
@@ -231,6 +244,8 @@ def _from_pint(name: str) -> tuple[float, Dims] | None:
         if base not in PINT_BASE:
             return None
         dims[PINT_BASE[base]] = float(power)  # type: ignore[arg-type]  # a real number
+    if not any(dims):  # an angle or a percentage scales a plain number unseen
+        return None
     return float(str(quantity.magnitude)), _dims(dims)
 
 
@@ -309,25 +324,43 @@ def compose(dims: Dims, like: Iterable[Unit]) -> str:
     >>> compose((-1, 3, -1, 0, 0), [parse_unit("mol/L"), parse_unit("1/h")])
     'L/(mol h)'
     """
-    base = {"amount": "mol", "volume": "m^3", "time": "s", "mass": "kg", "temperature": "K"}
+    base = {
+        "amount": "mol",
+        "volume": "m^3",
+        "time": "s",
+        "mass": "kg",
+        "temperature": "K",
+        "pressure": "bar",
+    }
     kinds: dict[Dims, str] = {
         (1, 0, 0, 0, 0): "amount", (0, 3, 0, 0, 0): "volume", (0, 1, 0, 0, 0): "length",
-        (0, 0, 1, 0, 0): "time", (0, 0, 0, 1, 0): "mass",
+        (0, 0, 1, 0, 0): "time", (0, 0, 0, 1, 0): "mass", (0, -1, -2, 1, 0): "pressure",
     }  # fmt: skip
     for unit in reversed(list(like)):
         for name in reversed(unit.names):
             found = look_up(name)
             if found is not None and (kind := kinds.get(found.dims)):
                 base["volume" if kind == "length" else kind] = name + "^3" if kind == "length" else name
-    n, length, time, mass, temperature = dims
+    pressure = _pressures(dims)
+    n, length, time, mass, temperature = _dims(d - pressure * p for d, p in zip(dims, PRESSURE, strict=True))
     powers = [(base["amount"], n), (base["mass"], mass), (base["volume"], length / 3), (base["time"], time),
-              (base["temperature"], temperature)]  # fmt: skip
+              (base["temperature"], temperature), (base["pressure"], pressure)]  # fmt: skip
     above = [_power(name, p) for name, p in powers if p > 1e-9]
     below = [_power(name, -p) for name, p in powers if p < -1e-9]
     over = " ".join(above) or "1"
     if not below:
         return over
     return f"{over}/{below[0]}" if len(below) == 1 else f"{over}/({' '.join(below)})"
+
+
+def _pressures(dims: Dims) -> float:
+    """How many pressures are in a dimension: those that leave it whole volumes, and 1/time or no time."""
+    _, length, time, mass, _ = dims
+    for power in (0.0, -time / 2, -(time + 1) / 2):
+        whole = abs((length + power) / 3 - round((length + power) / 3)) < 1e-9 or power == 0.0 == mass
+        if whole and min(abs(time + 2 * power), abs(time + 2 * power + 1)) < 1e-9:
+            return power
+    return 0.0
 
 
 def _power(name: str, power: float) -> str:

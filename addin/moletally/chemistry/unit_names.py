@@ -8,7 +8,7 @@ Factors are exact fractions: definitions of the SI brochure and of NIST SP 811 (
 from dataclasses import dataclass
 from fractions import Fraction
 
-__all__ = ["ATMOSPHERE", "REFUSED", "NamedUnit", "look_up"]
+__all__ = ["ATMOSPHERE", "REFUSED", "NamedUnit", "known_names", "look_up"]
 
 Dims = tuple[int, int, int, int, int]  # amount, length, time, mass, temperature
 
@@ -102,7 +102,8 @@ ALIASES = {
     "litre": "L", "litres": "L", "liter": "L", "liters": "L", "ℓ": "L", "ccm": "cc",
     "mole": "mol", "moles": "mol", "gmol": "mol", "kgmol": "kmol", "lb-mol": "lbmol", "lbmole": "lbmol",
     "g-mol": "mol", "kg-mol": "kmol", "pound": "lb", "lbm": "lb", "lbs": "lb", "tonne": "t", "foot": "ft",
-    "feet": "ft", "inch": "in", "gallon": "gal", "GPM": "gpm", "LPM": "lpm", "CFM": "cfm",
+    "feet": "ft", "inch": "in", "gallon": "gal", "gallons": "gal", "barrel": "bbl", "barrels": "bbl",
+    "GPM": "gpm", "LPM": "lpm", "CFM": "cfm",
     "bara": "bar", "bar(a)": "bar", "bar(g)": "barg", "psia": "psi", "psi(a)": "psi", "psi(g)": "psig",
     "kPaa": "kPa", "kPa(a)": "kPa", "kPa(g)": "kPag", "torr": "Torr", "Btu": "BTU", "MMBtu": "MMBTU",
     "°C": "degC", "℃": "degC", "ºC": "degC", "celsius": "degC", "°F": "degF", "℉": "degF", "ºF": "degF",
@@ -123,6 +124,7 @@ REFUSED: dict[str, str] = {
     "M": MOLAR, "mM": MOLAR, "uM": MOLAR, "µM": MOLAR, "μM": MOLAR, "nM": MOLAR,
     "%": "write the fraction without a unit: a cell formatted as % holds 0.05 for 5 %",
     "ppm": "write a concentration, or the fraction without a unit", "ppmv": "write a concentration",
+    "percent": "write the fraction without a unit",
     "ton": "write t (1000 kg) or lb: a ton is a different mass in different places",
     "tons": "write t (1000 kg) or lb: a ton is a different mass in different places",
     "H": "write h for hours", "S": "write s for seconds", "Mol": "write mol", "MIN": "write min",
@@ -152,3 +154,8 @@ def look_up(name: str) -> NamedUnit | None:
         prefix = "µ" if name[0] in "µμu" else name[0]
         return NamedUnit(prefix + stem[0], PREFIXES[name[0]] * stem[1], stem[2])
     return None
+
+
+def known_names() -> list[str]:
+    """Every name of the table that stands without a prefix, the usual ones with it too."""
+    return [*PLAIN, *OFFSET, *PREFIXED, "kmol", "mmol", "kg", "mL", "kPa", "kJ", "MJ", "kcal", "kW", *ALIASES]
