@@ -15,6 +15,14 @@ __all__ = ["atoms", "check_formulas"]
 PIECE = re.compile(
     r"(?P<element>[A-Z][a-z]?)|(?P<open>[(\[])|(?P<close>[)\]])|(?P<count>\d+(?:\.\d+)?)|(?P<dot>[.·*])"
 )
+# IUPAC's 118, and D and T for heavy hydrogen
+SYMBOLS = (
+    "H D T He Li Be B C N O F Ne Na Mg Al Si P S Cl Ar K Ca Sc Ti V Cr Mn Fe Co Ni Cu Zn Ga Ge As Se Br Kr Rb Sr Y"
+    " Zr Nb Mo Tc Ru Rh Pd Ag Cd In Sn Sb Te I Xe Cs Ba La Ce Pr Nd Pm Sm Eu Gd Tb Dy Ho Er Tm Yb Lu Hf Ta W Re Os"
+    " Ir Pt Au Hg Tl Pb Bi Po At Rn Fr Ra Ac Th Pa U Np Pu Am Cm Bk Cf Es Fm Md No Lr Rf Db Sg Bh Hs Mt Ds Rg Cn Nh"
+    " Fl Mc Lv Ts Og"
+)
+ELEMENTS = frozenset(SYMBOLS.split())
 CHARGE = re.compile(r"(?:\^(?P<size>\d*))?(?P<sign>[+-]+)$")
 MAX_LENGTH = 200
 OFF_BY = 5e-3  # of the mass of a side: molar masses are often given to three digits
@@ -71,6 +79,8 @@ def _group(text: str, formula: str) -> dict[str, float]:
             _add(stack[-1], last, float(match[0]) - 1.0)
             last = {}
             continue
+        if match[0] not in ELEMENTS:
+            raise InputError(f"the formula {formula!r} has an element {match[0]!r} that does not exist")
         last = {match[0]: 1.0}
         _add(stack[-1], last, 1.0)
     if len(stack) > 1 or not stack[0]:

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from moletally.chemistry.errors import Finding, InputError, Level, Place
 from moletally.chemistry.laws import Law
-from moletally.chemistry.quantity import Unit, parse_unit
+from moletally.chemistry.quantity import ONE, Unit, parse_unit
 from moletally.chemistry.tables import ConstantRow, Number, ReactionRow
 
 __all__ = ["GAS_CONSTANT", "Parameter", "ParameterKind", "Parameters", "Symbol"]
@@ -67,19 +67,30 @@ class Parameter:
                     place,
                 )
             return replace(self, place=place)
-        if text is None and self.kind == ParameterKind.VALUE and self.unit is not None and not self.unit.text:
+        if (
+            text is None
+            and self.kind == ParameterKind.VALUE
+            and self.unit is not None
+            and self.unit.dims == ONE
+        ):
             return replace(self, place=place)
         if text is None:
             raise InputError(f"{self.label} has no unit: write it behind the label", place)
-        unit = parse_unit(text)
-        energies = self.kind == ParameterKind.ENERGY and unit.dims in (ENERGY, KELVIN)
-        if (
-            self.unit is not None
-            and not energies
-            and any(abs(a - b) > 1e-9 for a, b in zip(unit.dims, self.unit.dims, strict=True))
-        ):
-            raise InputError(f"{self.label} can't be in {text}: its table has {self.unit.text or '-'}", place)
+        try:
+            unit = parse_unit(text)
+        except InputError as error:
+            raise error.at(place) from None
+        if not self._takes(unit):
+            has = self.unit.text if self.unit is not None else ""
+            raise InputError(f"{self.label} can't be in {text}: its table has {has or '-'}", place)
         return replace(self, unit=unit, place=place)
+
+    def _takes(self, unit: Unit) -> bool:
+        """True for a unit of the same dimension; an energy may be J/mol here and K there."""
+        if self.kind == ParameterKind.ENERGY:
+            return unit.dims in (ENERGY, KELVIN) and not unit.offset
+        own = ONE if self.unit is None else self.unit.dims
+        return all(abs(a - b) <= 1e-9 for a, b in zip(unit.dims, own, strict=True))
 
     def wrong(self, value: float) -> str:
         """Why a number can't be, "" if it can."""

@@ -73,7 +73,7 @@ def check_rates(reactions: Sequence[HasLaw], parameters: Parameters, species: tu
 
     like : units of the feed, in which a unit is proposed; exponents : slot -> number
     """
-    per_mass: set[bool] = set()
+    bases: list[tuple[ReactionRow, bool]] = []
     deciding: set[int] = set()
     concentration = MASS_CONCENTRATION if mass_basis else CONCENTRATION
     like = (*like, *(item.unit for item in parameters.items if item.unit is not None))
@@ -89,13 +89,19 @@ def check_rates(reactions: Sequence[HasLaw], parameters: Parameters, species: tu
                 values[name] = exponents[item.slot]
         dims.update(dict.fromkeys(species, concentration))
         known = Symbols(dims, values)
-        per_mass.add(_check(reaction, known, units, mass_basis, like))
+        bases.append((reaction.row, _check(reaction, known, units, mass_basis, like)))
         decided = orders(reaction.law.tree, known) & symbols.keys()
         deciding |= {parameters.items[symbols[name].value].slot for name in decided}
-    if len(per_mass) > 1:
-        raise InputError("some rates are per volume, others per mass of catalyst: give all in one way",
-                         reactions[0].row.place)  # fmt: skip
-    return per_mass == {True}, deciding
+    if len({its for _, its in bases}) > 1:
+        odd = next(row for row, its in bases if its != bases[0][1])
+        raise InputError(f"the rate of {odd.equation.text} is per {_basis(not bases[0][1])}, that of"
+                         f" {bases[0][0].equation.text} per {_basis(bases[0][1])}: give all in one way",
+                         odd.place)  # fmt: skip
+    return bool(bases) and bases[0][1], deciding
+
+
+def _basis(per_mass: bool) -> str:
+    return "mass of catalyst" if per_mass else "volume"
 
 
 def _check(reaction: HasLaw, symbols: Symbols, units: Mapping[str, Unit], mass_basis: bool,
