@@ -5,7 +5,9 @@ Below a floor delta a law r of order q in species i is continued as
     r(max(c_i, delta)) g_q(c_i/delta),   g_q(u) = u ((2 - q) + (q - 1) u)
 
 which is zero at zero, has no corner at delta and is exact for q = 1 and q = 2. A law of order zero
-that consumes i settles where it takes what is supplied: all such laws are cut by one common factor.
+that consumes i has g = u and settles where it takes what is supplied: all such laws are cut by one
+common factor u. (The parabola would be flat at delta, and an integrator lost where supply and demand
+cross: a corner is passed once.)
 A law that only reads i (order zero or less, not consuming it) keeps its value at the floor.
 """
 
@@ -97,6 +99,8 @@ class Laws:
             steep = np.where(some > 0, some ** np.maximum(q, 2.0), 0.0)
             g = np.where(q > 2, steep, u * ((2 - q) + (q - 1) * some))
             dg = np.where(q > 2, q * steep / np.where(some > 0, some, 1.0), (2 - q) + 2 * (q - 1) * some)
+            flat = np.abs(q) < ZERO_ORDER
+            g, dg = np.where(flat, u, g), np.where(flat, 1.0, dg)
         applies = self.factor & (u < 1)
         runs = (applies & (u < 0)).sum(axis=2) < 2
         g, dg = np.where(applies, g, 1.0), np.where(applies, dg, 0.0)

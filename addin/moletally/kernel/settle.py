@@ -12,7 +12,7 @@ from moletally.kernel.rates import Floats
 from moletally.kernel.refine import refine
 from moletally.kernel.stability import growth, invaded
 from moletally.kernel.status import Status
-from moletally.kernel.steady import CLOSED, Tanks, newton, polish
+from moletally.kernel.steady import CLOSED, EPSILON, Tanks, newton, polish
 from moletally.kernel.structure import ZERO_ORDER, Structure, structures
 
 __all__ = ["Settled", "settle"]
@@ -63,8 +63,8 @@ def _settle(structure: Structure, tanks: Tanks, c: Floats, T: Floats, p: Floats,
     status[unstable] = np.where(swing[unstable] > 0, Status.OSCILLATES, Status.UNSTABLE)
     if not unique:
         status[invaded(structure, c, tanks.tau, T, p)] = Status.UNSTABLE
-    gone = _gone(structure, tanks.laws, c)
-    c = np.where(gone, 0.0, c)
+    gone = _gone(structure, tanks, c)
+    c = np.where(gone | (c <= tanks.nothing), 0.0, c)
     status[~np.isfinite(tanks.laws.strict(c)).all(axis=1)] = Status.NOT_FINITE
     status[~(c >= 0).all(axis=1)] = Status.NEGATIVE
     status[_totals_lost(structure, c, tanks.feed)] = Status.INVARIANT
@@ -86,11 +86,21 @@ def _in_decimals(
     return refine(structure.tape, tanks.nu, c, tanks.feed[k], float(tanks.tau[k]), float(T[k]), p[k])
 
 
-def _gone(structure: Structure, laws: Laws, c: Floats) -> Bools:
-    """Species below the floor of a law of order zero that consumes them, shape (n, present): used up."""
+def _gone(structure: Structure, tanks: Tanks, c: Floats) -> Bools:
+    """Species that laws of order zero use up, shape (n, present).
+
+    Below the floor of those laws, or below the rounding of what they take.
+    """
     gone = np.zeros(c.shape, dtype=np.bool_)
-    starved = np.isin(laws.edged, structure.starved)
-    gone[:, laws.edged] = (c[:, laws.edged] < laws.floor) & starved
+    if not len(structure.starved):
+        return gone
+    r = tanks.laws.rates(c)
+    flat = np.abs(structure.order) < ZERO_ORDER
+    for k, i in enumerate(tanks.laws.edged.tolist()):
+        takes = np.maximum(-structure.nu[:, i], 0.0)
+        taken = tanks.tau * (r @ (takes * flat[:, i]))
+        other = tanks.tau * (r @ (takes * ~flat[:, i]))
+        gone[:, i] = (c[:, i] < tanks.laws.floor[:, k]) | (c[:, i] + other < 4.0 * EPSILON * taken)
     return gone
 
 
@@ -130,7 +140,7 @@ def _settle_again(
             continue
         size = np.broadcast_to(scale[part], (len(part), len(less.present)))
         laws = Laws.of(less, less.starved, size, T[here], p[here])
-        fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here])
+        fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here])
         guess = np.maximum(answer.c[np.ix_(here, less.present)], 0.5 * _floor(less, laws, size))
         roots = newton(fewer, guess)
         found = _settle(less, fewer, roots.c, T[here], p[here], unique=True)

@@ -36,6 +36,7 @@ def invaded(structure: Structure, c: Floats, tau: Floats, T: Floats, p: Floats) 
     state[:, structure.present] = c
     state[:, absent] = TRACE * c.max(axis=1, keepdims=True, initial=1e-25)
     _, v = Bound.of(everything(model.program), T, p).slopes(state)
+    v[:, structure.held] = 0.0
     with np.errstate(all="ignore"):
         matrix = np.matmul(model.stoichiometry[:, absent].T, v[:, :, absent])
         return _largest(matrix, 1.0 / tau)[2]

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.kernel.creep import creep
 from moletally.kernel.cutoff import Laws
 from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
@@ -18,6 +19,7 @@ from moletally.kernel.steady import Tanks, newton
 from moletally.kernel.stepping import STIFF, Stepper
 from moletally.kernel.structure import Structure
 from moletally.kernel.tolerance import ABSOLUTE, Tolerance
+from moletally.kernel.totals import Totals
 
 __all__ = ["Rest", "start_up"]
 
@@ -26,7 +28,9 @@ MOST_STEPS = 1500
 NOTHING = 1e-10  # of the least concentration: where Newton's method begins for a species at zero
 LOOK_EVERY = 4  # attempts between two looks for the state ahead
 SLOW = 0.3  # relative change per residence time below which a look is worth its cost
+LATE = 3.0  # residence times after which a look is worth it anyway
 COINCIDES = 1e-4  # relative distance at which a start-up has arrived
+NEARBY = 1e-2  # the same for implicit Euler steps
 DEPARTURE = 45.0  # doublings of e after which rounding would have left an unstable state
 SWINGS = 8  # turning points without rest that tell oscillation from slowness
 VANISHING = 1e-5  # of the largest concentration: where a law of negative order is about to end
@@ -69,9 +73,10 @@ class _StartUp:
         self.near = np.zeros(start.shape)
         self.near[:, laws.edged] = 2.0 * laws.floor
         self.flow = Flow(laws, tanks.nu, tanks.feed, 1.0 / tanks.tau[:, None])
-        self.stepper = Stepper(
-            self.flow, start, Tolerance.of(structure, laws, scale, (RELATIVE, RELATIVE)), MOST_STEPS, STIFF
-        )
+        tolerance = Tolerance.of(structure, laws, scale, (RELATIVE, RELATIVE))
+        exchange = 1.0 / tanks.tau
+        totals = Totals.of(structure.conserved[:, structure.present], start, tanks.feed, exchange)
+        self.stepper = Stepper(self.flow, start, tolerance, MOST_STEPS, STIFF, totals)
         self.rest = Rest(
             start.copy(),
             np.full(n, Status.WORK_CAP),
@@ -94,6 +99,9 @@ class _StartUp:
             if tries % LOOK_EVERY == 0:
                 self._look()
         self._explain()
+        stuck = (Status.WORK_CAP, Status.OSCILLATES, Status.STEP_TOO_SMALL)
+        for row in np.flatnonzero(np.isin(self.rest.status, stuck) & ~self.rest.faded):
+            self._creep_on(np.array([row]))
         self.rest.work[:] += stepper.work
         return self.rest
 
@@ -117,7 +125,7 @@ class _StartUp:
         with np.errstate(all="ignore"):
             speed = np.abs(self.flow.at(rows).slope(c)) * tau[:, None]
             slow = (speed <= SLOW * np.abs(c) + self.near[rows] + self.least[rows]).all(axis=1)
-        slow |= stepper.t[rows] > 20.0 * tau
+        slow |= stepper.t[rows] > LATE * tau
         rows = rows[slow]
         if not len(rows):
             return
@@ -127,7 +135,7 @@ class _StartUp:
         self.rest.iterations[rows] += roots.iterations
         self.rest.work[rows] += roots.iterations
         gap = np.abs(roots.c - stepper.c[rows])
-        close = roots.settled & (gap <= COINCIDES * roots.c + self.near[rows]).all(axis=1)
+        close = roots.settled & (gap <= COINCIDES * roots.c + self.near[rows] + self.least[rows]).all(axis=1)
         if close.any():
             self._arrive(rows[close], roots.c[close])
 
@@ -143,6 +151,22 @@ class _StartUp:
             self.rest.c[rows[which]] = c[which]
             self.rest.status[rows[which]] = status
             stepper.active[rows[which]] = False
+
+    def _creep_on(self, row: Ints) -> None:
+        """Take up one tank where the integrator got stuck; a state it oscillates about stays refused."""
+        tanks = self.tanks.at(row)
+        far, iterations = creep(tanks, self.stepper.c[row])
+        self.rest.iterations[row] += iterations
+        self.rest.work[row] += 2 * iterations
+        if not np.isfinite(far).all():
+            return
+        roots = newton(tanks, far)
+        close = np.abs(roots.c - far) <= NEARBY * roots.c + self.near[row] + self.least[row]
+        if not (roots.settled[0] and close.all()):
+            return
+        _, swing, unstable = growth(tanks, roots.c)
+        found = Status.OK if not unstable[0] else Status.OSCILLATES if swing[0] > 0 else Status.UNSTABLE
+        self.rest.c[row], self.rest.status[row] = roots.c, found
 
     def _stop_endless(self, rows: Ints) -> None:
         laws, structure = self.flow.laws, self.structure

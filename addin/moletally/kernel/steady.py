@@ -15,10 +15,12 @@ from moletally.kernel.exact import balance
 from moletally.kernel.linear import inverse, solve
 from moletally.kernel.rates import Floats
 
-__all__ = ["Roots", "Tanks", "newton", "polish"]
+__all__ = ["CLOSED", "EPSILON", "NOTHING", "Roots", "Tanks", "newton", "polish"]
 
 MOST_ITERATIONS = 60
 MOST_FALL, DEEPEST_FALL = 0.1, 1e-8
+NOTHING = 1e-40  # of the largest concentration
+DEEPEST = 1e-20  # of that: where a falling concentration stops
 SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
 STALLED = 1e-5  # rounding may keep an ill-conditioned tank from settling closer
 CLOSED = 1e-12  # residual relative to the terms of its balance
@@ -30,16 +32,21 @@ Ints = NDArray[np.intp]
 
 @dataclass(frozen=True, slots=True)
 class Tanks:
-    """n tanks of one structure: laws of its S present species, nu (terms, S), feed (n, S), tau (n,)."""
+    """n tanks of one structure: laws of its S present species, nu (terms, S), feed (n, S), tau (n,).
+
+    nothing : ndarray, shape (n, 1) - below it a concentration is as good as none [mol/m3]; it is not
+        followed further (there are such species: what would be made of one that is used up)
+    """
 
     laws: Laws
     nu: Floats
     feed: Floats
     tau: Floats
+    nothing: Floats
 
     def at(self, rows: Ints) -> "Tanks":
         """The cases in `rows`."""
-        return Tanks(self.laws.at(rows), self.nu, self.feed[rows], self.tau[rows])
+        return Tanks(self.laws.at(rows), self.nu, self.feed[rows], self.tau[rows], self.nothing[rows])
 
     def linear(self, c: Floats) -> tuple[Floats, Floats, Floats]:
         """F (n, S), its terms' sum of sizes (n, S), and (I - tau nu^T V) diag(c) (n, S, S)."""
@@ -75,11 +82,12 @@ def newton(tanks: Tanks, start: Floats, most: int = MOST_ITERATIONS) -> Roots:
             now = c[active]
             f, terms, matrix = part.linear(now)
             y = solve(matrix, f)
-            change = np.abs(y).max(axis=1)
+            there = now > part.nothing
+            change = _largest(np.abs(y), there)
             falls = ~(y > MOST_FALL - 1.0)
-            c[active] = now * np.where(falls, fall, 1.0 + y)
+            c[active] = np.maximum(now * np.where(falls, fall, 1.0 + y), DEEPEST * part.nothing)
             fall = np.where(falls, np.maximum(fall * fall, DEEPEST_FALL), MOST_FALL)
-            closed = (np.abs(f) <= CLOSED * terms).all(axis=1)
+            closed = ((np.abs(f) <= CLOSED * terms) | ~there).all(axis=1)
             done = (change <= SETTLED) | ((change <= STALLED) & closed & (k >= 8))
             lost = ~np.isfinite(change)
             if done.any() or lost.any():
@@ -113,18 +121,24 @@ def polish(tanks: Tanks, c: Floats) -> Polished:
     with np.errstate(all="ignore"):
         f, terms, matrix = tanks.linear(c)
         solver = inverse(matrix)
-        error = EPSILON * np.matmul(np.abs(solver), terms[:, :, None]).max(axis=(1, 2))
-        residual = (np.abs(f) / terms).max(axis=1, initial=0.0, where=terms > 0)
+        there = c > tanks.nothing
+        error = EPSILON * _largest(np.matmul(np.abs(solver), terms[:, :, None])[:, :, 0], there)
+        residual = _largest(np.abs(f) / terms, there)
         r = tanks.laws.rates(c)
         sway = np.matmul(solver, tanks.nu.T) * (tanks.tau[:, None] * np.abs(r))[:, None, :]
         fed = np.matmul(np.abs(solver), (tanks.feed)[:, :, None])[:, :, 0]
-        condition = (np.abs(sway).sum(axis=2) + fed).max(axis=1)
+        condition = _largest(np.abs(sway).sum(axis=2) + fed, there)
         rough = np.flatnonzero(~(error <= GOOD))
         if len(rough):
             part = tanks.at(rough)
             c[rough], residual[rough], last = _twice_the_digits(part, c[rough])
             error[rough] = np.maximum(last, EPSILON * condition[rough])
     return Polished(c, residual, condition, error)
+
+
+def _largest(values: Floats, there: NDArray[np.bool_]) -> Floats:
+    """The largest of each row, shape (n,), among species that are there."""
+    return np.asarray(np.where(there, values, 0.0 * values).max(axis=1, initial=0.0))
 
 
 def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
@@ -136,9 +150,10 @@ def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
         f = balance(tanks.nu, tanks.tau[:, None] * r, tanks.feed, c)
         _, terms, matrix = tanks.linear(c)
         y = solve(matrix, f)
-        change = np.abs(y).max(axis=1)
+        there = c > tanks.nothing
+        change = _largest(np.abs(y), there)
         better = change < last
-        residual = np.where(better, (np.abs(f) / terms).max(axis=1), residual)
+        residual = np.where(better, _largest(np.abs(f) / terms, there), residual)
         last = np.where(better, change, last)
         c = np.where(better[:, None] & (y > -0.5), c * (1.0 + y), c)
         if not better.any() or (change <= EPSILON).all():

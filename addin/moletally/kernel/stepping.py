@@ -27,6 +27,7 @@ EXPLICIT, STIFF = 0, 1
 SAFETY = 0.9
 MOST_SHRINK = 0.1
 NOT_FINITE_SHRINK = 0.1  # where a law has no value the step went far too far
+TOO_FAR = 0.3  # of a step that ends below zero
 AHEAD = 0.98  # of the way to zero
 FIRST_CHANGE = 0.01  # a first step may change what is there by a hundredth
 STIFF_LIMIT = 3.0  # |h lambda|: accuracy asks for less than 1, stability for less than 6
@@ -120,6 +121,7 @@ class Stepper:
             size = np.where(finite, np.maximum(size, 1e-10), np.inf)
             factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
             negative = (new < -tolerance.least).any(axis=1)
+            factor = np.where(negative, np.minimum(factor, TOO_FAR), factor)
         fine = (size <= 1.0) & ~negative
         growth = np.where(self._rejected[rows] & fine, 1.0, METHODS[method].most_growth)
         factor = np.clip(factor, np.where(finite, MOST_SHRINK, NOT_FINITE_SHRINK), growth)
@@ -131,7 +133,9 @@ class Stepper:
         self._rejected[rows] = ~fine
         done = rows[fine]
         self._pass_time(done, h[fine])
-        self.c[done] = new[fine] if self.totals is None else self.totals.restore(new[fine], done)
+        self.c[done] = (
+            new[fine] if self.totals is None else self.totals.restore(new[fine], done, self.t[done])
+        )
         self._look_for_trouble(rows, fine, finite)
         if method == EXPLICIT:
             assert stiffness is not None

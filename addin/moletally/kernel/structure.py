@@ -39,6 +39,7 @@ class Structure:
     order : ndarray, shape (firing, present) - d ln r/d ln c as c goes to zero, the other species being there
     unbounded : bool - a running term has no bound because an absent species is missing
     wanted : ndarray - absent species that a term of order zero would consume
+    held : ndarray - those terms: they are cut to nothing
     undefined : ndarray - positions in `present` of species read by a term that is 0/0 or infinite at zero
     registers : floats of all that does not change with concentrations, of one case of this structure
     """
@@ -51,6 +52,7 @@ class Structure:
     order: Floats
     unbounded: bool
     wanted: Ints
+    held: Ints
     undefined: Ints
     registers: list[float]
 
@@ -186,7 +188,7 @@ def _analyse(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats) -> St
     program, nu = terms.model.program, terms.model.stoichiometry
     tape = everything(program)
     registers = Bound.of(tape, T, p).registers
-    present, firing, unbounded, wanted = _what_runs(tape, registers, nu, there)
+    present, firing, unbounded, wanted, held = _what_runs(tape, registers, nu, there)
     absent = np.flatnonzero(~present)
     order = np.zeros((len(firing), int(present.sum())))
     for k, i in enumerate(np.flatnonzero(present)):
@@ -203,6 +205,7 @@ def _analyse(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats) -> St
         order=np.clip(order, -30.0, 30.0),
         unbounded=unbounded,
         wanted=wanted,
+        held=held,
         undefined=_undefined(program, firing, here, T, p),
         registers=registers,
     )
@@ -232,8 +235,9 @@ def _species(present: NDArray[np.bool_], vanishing: int = -1) -> list[Leading]:
 
 def _what_runs(
     tape: Tape, registers: Sequence[float], nu: Floats, there: NDArray[np.bool_]
-) -> tuple[NDArray[np.bool_], Ints, bool, Ints]:
-    """Species that can be there, terms that can run, whether one has no bound, species wanted in vain."""
+) -> tuple[NDArray[np.bool_], Ints, bool, Ints, Ints]:
+    """Species that can be there, terms that can run, whether one has no bound; species wanted in vain, by
+    which terms."""
     present = there.copy()
     while True:
         order = np.array([limit.order for limit in leading(tape, registers, _species(present))])
@@ -244,8 +248,9 @@ def _what_runs(
         runs = would & (~missing.any(axis=1) | endless)
         more = present | ((nu > 0) & runs[:, None]).any(axis=0)
         if (more == present).all():
-            wanted = np.flatnonzero((missing & would[:, None]).any(axis=0))
-            return present, np.flatnonzero(runs), bool(endless[runs].any()), wanted
+            kept = missing & (would & ~runs)[:, None]
+            wanted, held = np.flatnonzero(kept.any(axis=0)), np.flatnonzero(kept.any(axis=1))
+            return present, np.flatnonzero(runs), bool(endless[runs].any()), wanted, held
         present = more
 
 

@@ -12,7 +12,7 @@ from moletally.kernel.settle import Settled, settle
 from moletally.kernel.stability import invaded
 from moletally.kernel.startup import start_up
 from moletally.kernel.status import Status
-from moletally.kernel.steady import Tanks, newton
+from moletally.kernel.steady import NOTHING, Tanks, newton
 from moletally.kernel.structure import Structure, structures
 
 __all__ = ["TankResult", "solve_tanks"]
@@ -134,7 +134,13 @@ class _Group:
         c = feed[:, here].copy()
         largest = np.maximum(feed, start).max(axis=1, keepdims=True)
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
-        tanks = Tanks(Laws.of(structure, structure.starved, scale, T, p), structure.nu, c.copy(), tau)
+        tanks = Tanks(
+            Laws.of(structure, structure.starved, scale, T, p),
+            structure.nu,
+            c.copy(),
+            tau,
+            NOTHING * scale[:, :1],
+        )
         if len(structure.firing):
             faded = self._states(tanks, c, scale, T, p, start[:, here])
         elif not structure.unique:

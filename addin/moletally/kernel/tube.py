@@ -91,9 +91,7 @@ class _Run:
         laws = Laws.of(structure, structure.edged, scale, T, p)
         self.flow = Flow(laws, structure.nu)
         self.tolerance = Tolerance.of(structure, laws, scale, RELATIVE)
-        weights = structure.conserved[:, structure.present]
-        weights = weights[weights.any(axis=1)]
-        totals = Totals(weights, c @ weights.T) if len(weights) else None
+        totals = Totals.of(structure.conserved[:, structure.present], c, c, np.zeros(len(c)))
         self.stepper = Stepper(self.flow, c, self.tolerance, MOST_STEPS, totals=totals)
         self.answers: list[tuple[Stride, Ints, Ints, Floats]] = []
 
@@ -168,7 +166,7 @@ class _Run:
                 one = np.array([k])
                 new[k] = _creep(flow.at(one), c[one], float(h[k]), tolerance.at(one))
             if self.stepper.totals is not None:
-                new = self.stepper.totals.restore(new, rows)
+                new = self.stepper.totals.restore(new, rows, h)
             self.points[rows[:, None], points[:, None], self.structure.present] = new
 
     def _check(self) -> None:
