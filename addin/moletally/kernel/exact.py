@@ -15,10 +15,11 @@ __all__ = ["balance"]
 SPLITTER = 134217729.0  # 2^27 + 1
 
 
-def balance(nu: Floats, extent: Floats, feed: Floats, c: Floats) -> Floats:
+def balance(nu: Floats, finer: Floats, extent: Floats, feed: Floats, c: Floats) -> Floats:
     """feed - c + nu^T extent, correctly rounded but for the last bits; shape (n, S).
 
-    nu : ndarray, shape (terms, S); extent : ndarray, shape (n, terms) - tau r [mol/m3]
+    nu, finer : ndarray, shape (terms, S) - coefficients, and what was lost when they were rounded
+    extent : ndarray, shape (n, terms) - tau r [mol/m3]
     """
     with np.errstate(all="ignore"):
         total, rest = _two_sum(feed, -c)
@@ -26,7 +27,7 @@ def balance(nu: Floats, extent: Floats, feed: Floats, c: Floats) -> Floats:
             product = extent[:, j, None] * nu[j]
             lost = _product_error(extent[:, j, None], nu[j], product)
             total, more = _two_sum(total, product)
-            rest = rest + (more + lost)
+            rest = rest + (more + lost + extent[:, j, None] * finer[j])
         return total + rest
 
 

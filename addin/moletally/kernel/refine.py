@@ -6,6 +6,7 @@ import numpy as np
 
 from moletally.kernel.arithmetic import DECIMAL_SLOPES, DECIMALS, DIGITS, Value
 from moletally.kernel.rates import Floats, Tape
+from moletally.kernel.totals import exact_coefficients
 
 __all__ = ["refine"]
 
@@ -22,7 +23,7 @@ def refine(tape: Tape, nu: Floats, c: Floats, feed: Floats, tau: float, T: float
 
     tape : the running terms, derivatives by the S present species; nu : ndarray, shape (terms, S)
     c, feed : ndarray, shape (S,) [mol/m3]; tau [s], T [K], p : ndarray, shape (P,)
-    The inputs are taken as exact.
+    The inputs are taken as exact, coefficients as the fractions that were meant.
     """
     if len(c) > MOST_SPECIES:
         return None
@@ -37,7 +38,7 @@ def _newton(
     tape: Tape, nu: Floats, c: Floats, feed: Floats, tau: float, registers: list[Value]
 ) -> Floats | None:
     fed, time = [Decimal(x) for x in feed.tolist()], Decimal(tau)
-    weights = [[Decimal(x) for x in row] for row in nu.tolist()]
+    weights = [[Decimal(x.numerator) / x.denominator for x in row] for row in exact_coefficients(nu)]
     state = [Decimal(x) for x in c.tolist()]
     for _ in range(MOST_ITERATIONS):
         rates, slopes = _laws(tape, registers, state)

@@ -6,6 +6,7 @@ and more only of a species that has been losing that much step after step.
 """
 
 from dataclasses import dataclass
+from fractions import Fraction
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +15,7 @@ from moletally.kernel.cutoff import Laws
 from moletally.kernel.exact import balance
 from moletally.kernel.linear import inverse, solve
 from moletally.kernel.rates import Floats
+from moletally.kernel.totals import exact_coefficients
 
 __all__ = ["CLOSED", "EPSILON", "NOTHING", "Roots", "Tanks", "newton", "polish"]
 
@@ -22,7 +24,7 @@ MOST_FALL, DEEPEST_FALL = 0.1, 1e-8
 NOTHING = 1e-40  # of the largest concentration
 DEEPEST = 1e-20  # of that: where a falling concentration stops
 SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
-STALLED = 1e-5  # rounding may keep an ill-conditioned tank from settling closer
+STALLED = 1e-4  # rounding may keep an ill-conditioned tank from settling closer
 CLOSED = 1e-12  # residual relative to the terms of its balance
 GOOD = 1e-12  # estimated relative error that needs no second look
 EPSILON = 2.2e-16
@@ -82,7 +84,7 @@ def newton(tanks: Tanks, start: Floats, most: int = MOST_ITERATIONS) -> Roots:
             now = c[active]
             f, terms, matrix = part.linear(now)
             y = solve(matrix, f)
-            there = now > part.nothing
+            there = (now > part.nothing) | (now * (1.0 + y) > part.nothing)
             change = _largest(np.abs(y), there)
             falls = ~(y > MOST_FALL - 1.0)
             c[active] = np.maximum(now * np.where(falls, fall, 1.0 + y), DEEPEST * part.nothing)
@@ -143,11 +145,12 @@ def _largest(values: Floats, there: NDArray[np.bool_]) -> Floats:
 
 def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
     """c, residual, and the last relative change."""
+    finer = _finer(tanks.nu)
     last = np.full(len(c), np.inf)
     residual = np.full(len(c), np.inf)
     for _ in range(6):
         r = tanks.laws.rates(c)
-        f = balance(tanks.nu, tanks.tau[:, None] * r, tanks.feed, c)
+        f = balance(tanks.nu, finer, tanks.tau[:, None] * r, tanks.feed, c)
         _, terms, matrix = tanks.linear(c)
         y = solve(matrix, f)
         there = c > tanks.nothing
@@ -159,3 +162,14 @@ def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
         if not better.any() or (change <= EPSILON).all():
             break
     return c, residual, np.where(np.isfinite(last), last, np.inf)
+
+
+def _finer(nu: Floats) -> Floats:
+    """What the coefficients lost in rounding: 0 for all but those like 2/3."""
+    exact = exact_coefficients(nu)
+    return np.array(
+        [
+            [float(a - Fraction(b)) for a, b in zip(*rows, strict=True)]
+            for rows in zip(exact, nu.tolist(), strict=True)
+        ]
+    )

@@ -8,11 +8,27 @@ from numpy.typing import NDArray
 
 from moletally.kernel.rates import Floats
 
-__all__ = ["Totals", "conserved"]
+__all__ = ["Totals", "conserved", "exact_coefficients"]
+
+LARGEST_DENOMINATOR = 1000
 
 # Of a total's terms. Methods keep linear totals exactly; what they lose is the rounding of fast reactions
 # that almost cancel, and that can be much. More than this is no rounding and must show.
 DRIFT = 1e-4
+
+
+def exact_coefficients(nu: Floats) -> list[list[Fraction]]:
+    """Coefficients as the fractions that were meant: 0.6666666666666666 is two thirds.
+
+    A fast equilibrium multiplies the rounding of a coefficient by its rate: what it makes of a total would
+    not be what the equation says.
+    """
+    return [[_fraction(x) for x in row] for row in nu.tolist()]
+
+
+def _fraction(x: float) -> Fraction:
+    near = Fraction(x).limit_denominator(LARGEST_DENOMINATOR)
+    return near if float(near) == x else Fraction(x)
 
 
 def conserved(nu: Floats) -> Floats:
@@ -22,7 +38,7 @@ def conserved(nu: Floats) -> Floats:
     would drown a total of trace species.
     """
     species = nu.shape[1]
-    rows = [[Fraction(x) for x in row] for row in np.unique(nu, axis=0).tolist()]
+    rows = exact_coefficients(np.unique(nu, axis=0))
     pivots: list[int] = []
     for i in range(species):
         k = next((k for k in range(len(pivots), len(rows)) if rows[k][i]), None)

@@ -38,9 +38,7 @@ class Rect(NamedTuple):
 
     def covers(self, sheet: str, row: int, column: int) -> bool:
         """Whether a cell lies inside."""
-        return (
-            self.sheet == sheet and self.top <= row <= self.bottom and self.left <= column <= self.right
-        )
+        return self.sheet == sheet and self.top <= row <= self.bottom and self.left <= column <= self.right
 
     def meets(self, other: "Rect") -> bool:
         """Whether two rectangles share a cell."""

@@ -1,0 +1,5 @@
+"""python -m moletally"""
+
+from moletally.cli import main
+
+main()

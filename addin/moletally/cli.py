@@ -1,0 +1,140 @@
+"""The command line: new, recalc, audit, functions.
+
+Exit codes: 0 all fine, 1 some cell has a problem or is stale, 2 the book or the call can't be used.
+"""
+
+import json
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+import click
+
+from moletally import __version__
+from moletally.sheet.functions import FUNCTIONS
+
+__all__ = ["main"]
+
+PROGRESS_AFTER = 2.0  # s
+
+
+class _Failed(click.ClickException):
+    """A book or call that can't be used."""
+
+    exit_code = 2
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(__version__, prog_name="moletally")
+def main() -> None:
+    """Worksheet functions that solve the mole balances of stirred tanks (CSTR) and plug-flow tubes (PFR).
+
+    These commands work on workbook files, without Excel.
+    """
+
+
+@main.command()
+@click.argument("template", required=False)
+@click.argument("book", required=False, type=click.Path(path_type=Path))
+def new(template: str | None, book: Path | None) -> None:
+    """Copy a ready design workbook: moletally new TEMPLATE BOOK.xlsx
+
+    Without a TEMPLATE they are listed.
+    """
+    from moletally.hosts.headless.book import BookError
+    from moletally.hosts.headless.templates import describe, new_book, templates
+
+    if template is None:
+        for name, path in templates().items():
+            click.echo(f"{name:16} {describe(path)}")
+        return
+    if book is None:
+        raise _Failed(f"name the workbook to make: moletally new {template} BOOK.xlsx")
+    try:
+        new_book(template, book)
+    except BookError as error:
+        raise _Failed(str(error)) from None
+    click.echo(f"{book} is ready: change an input and run moletally recalc {book}")
+
+
+@main.command()
+@click.argument("book", type=click.Path(path_type=Path))
+@click.option("--set", "settings", multiple=True, metavar="CELL=VALUE",
+              help='Change an input for this run: "Sheet!B3=0.5", or by name "Feed=2". May be repeated.')  # fmt: skip
+@click.option("--out", type=click.Path(path_type=Path), metavar="FILE",
+              help="Write a copy in which only values differ.")  # fmt: skip
+@click.option("--json", "as_json", is_flag=True, help="Print the answers as JSON.")
+def recalc(book: Path, settings: tuple[str, ...], out: Path | None, as_json: bool) -> None:
+    """Recalculate a workbook without Excel and print the answers of our functions.
+
+    Without --out nothing is written.
+    """
+    from moletally.hosts.headless import report
+    from moletally.hosts.headless.book import BookError, open_book
+    from moletally.hosts.headless.calculate import calculate
+    from moletally.hosts.headless.settings import apply_settings
+    from moletally.hosts.headless.write_back import patched, save
+
+    try:
+        opened = open_book(book)
+        inputs = apply_settings(opened, list(settings))
+        calculation = calculate(opened, progress=_progress())
+        if out is not None:
+            save(patched(opened, calculation.results, inputs), out)
+    except BookError as error:
+        raise _Failed(str(error)) from None
+    except OSError as error:
+        raise _Failed(f"{out} can't be written: {error.strerror}") from None
+    if as_json:
+        click.echo(json.dumps(report.as_json(calculation, FUNCTIONS), ensure_ascii=False, indent=1))
+    else:
+        click.echo(report.as_text(calculation, FUNCTIONS))
+        if out is not None:
+            click.echo(f"written: {out}")
+    sys.exit(1 if report.troubles(calculation) else 0)
+
+
+@main.command()
+@click.argument("book", type=click.Path(path_type=Path))
+def audit(book: Path) -> None:
+    """Print all findings for every call of our functions in a workbook."""
+    from moletally.hosts.headless.audit import audit_book
+    from moletally.hosts.headless.book import BookError, open_book
+
+    worst = False
+    try:
+        opened = open_book(book)
+    except BookError as error:
+        raise _Failed(str(error)) from None
+    for call in audit_book(opened):
+        click.echo(f"{call.cell}  {call.function}")
+        for level, where, what in call.rows:
+            worst |= level == "stop"
+            click.echo(f"    {level:5}  {where}: {what}".replace("\n", "\n        "))
+    sys.exit(1 if worst else 0)
+
+
+@main.command()
+def functions() -> None:
+    """Print the table of worksheet functions."""
+    for function in FUNCTIONS.values():
+        click.echo(f"{function.signature}\n    {function.summary}")
+        for argument in function.arguments:
+            optional = " (optional)" if argument.optional else ""
+            click.echo(f"      {argument.name:10} {argument.help}{optional}")
+        click.echo(f"    Result: {function.result}\n")
+
+
+def _progress() -> Callable[[int, int], None]:
+    """Tells on a terminal how far a long recalculation is; quiet while it is quick."""
+    begun = shown = time.monotonic()
+
+    def tell(done: int, of: int) -> None:
+        nonlocal shown
+        now = time.monotonic()
+        if now - begun > PROGRESS_AFTER and now - shown > 0.5:
+            shown = now
+            click.echo(f"{done} of {of} calls", err=True)
+
+    return tell
