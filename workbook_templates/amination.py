@@ -205,7 +205,7 @@ def write_profile(sheet: Worksheet, look: Look, inputs: Inputs) -> Area:
 
 def write_sweep(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
     """Both vessels over a column of residence times, at the temperature of the design sheet."""
-    page(sheet, (2, 16, 10, 8, *(14.5,) * 8), f"A1:L{30 + len(SWEEP)}", landscape=False)
+    page(sheet, (2, 16, 10, 8, *(17,) * 8), f"A1:L{30 + len(SWEEP)}", landscape=False)
     title(sheet, look, "Sweep over residence time", "Feed, flow and temperature as on the design sheet")
     grid(
         sheet,
@@ -244,5 +244,5 @@ def write_sweep(sheet: Worksheet, look: Look, inputs: Inputs) -> None:
         (Axis("residence time [min]"), Axis("made per amine fed [%]")),
         "Tank and tube",
     )
-    chart.set_size({"width": 1085, "height": 440})
+    chart.set_size({"width": 1230, "height": 480})
     sheet.insert_chart(last + 2, 1, chart, {"object_position": 2})

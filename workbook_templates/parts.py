@@ -32,7 +32,7 @@ NOTE_LINE = 104  # characters in a line of the notes; not every reader fits the 
 LEGEND = (
     ("input", "4.2", "an input: type over it"),
     ("law", "k*A*B", "an input in words: a rate law, or what to return"),
-    ("link", "4.2", "taken from another cell: change it there"),
+    ("link number", "4.2", "taken from another cell: change it there"),
     ("result", "3.1416", "a result: calculated, don't type here"),
     ("check", "1.0E-12", "a balance that has to close: near zero is right"),
 )

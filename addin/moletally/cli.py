@@ -4,7 +4,6 @@ Exit codes: 0 all fine, 1 some cell has a problem or is stale, 2 the book or the
 """
 
 import json
-import sys
 import time
 from collections.abc import Callable
 from pathlib import Path
@@ -92,7 +91,7 @@ def recalc(book: Path, settings: tuple[str, ...], out: Path | None, as_json: boo
         click.echo(report.as_text(calculation, FUNCTIONS))
         if out is not None:
             click.echo(f"written: {out}")
-    sys.exit(1 if report.troubles(calculation) else 0)
+    click.get_current_context().exit(1 if report.troubles(calculation) else 0)
 
 
 @main.command()
@@ -112,7 +111,7 @@ def audit(book: Path) -> None:
         for level, where, what in call.rows:
             worst |= level == "stop"
             click.echo(f"    {level:5}  {where}: {what}".replace("\n", "\n        "))
-    sys.exit(1 if worst else 0)
+    click.get_current_context().exit(1 if worst else 0)
 
 
 @main.command()

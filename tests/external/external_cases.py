@@ -90,6 +90,7 @@ for n, (in_tube, in_tank) in ORDERS.items():
     if in_tank:
         check("A06", f"CA, CSTR, order {n:g}", in_tank, tank(reactions, AB, 12.0, "A"))
 
+
 # A07: A -> B -> C
 def steps(k1, k2):
     return laws(("A -> B", "k*A", {"k": k1}), ("B -> C", "k*B", {"k": k2}), k="1/h")
@@ -110,9 +111,18 @@ check("A07", "CB/CA0, PFR, k1 = k2, tau = 2 h", "0.367879441171", tube(steps(0.5
 check("A07", "CB/CA0, CSTR, k1 = k2, tau = 2 h", "0.25", tank(steps(0.5, 0.5), ONE, 2.0, "B"))
 
 # A08: parallel, first and second order; units of k in columns of their own
-PARALLEL = (("Reaction", "Rate", "k", "k unit"), ("A -> R", "k*A", 0.3, "1/min"), ("A -> S", "k*A^2", 0.2, "L/(mol min)"))
+PARALLEL = (
+    ("Reaction", "Rate", "k", "k unit"),
+    ("A -> R", "k*A", 0.3, "1/min"),
+    ("A -> S", "k*A^2", 0.2, "L/(mol min)"),
+)
 ARS = feed("mol/L", A=2.0, R=0.0, S=0.0)
-for what, c in (("A", "0.219203517868"), ("[R]", "1.06635278389"), ("S", "0.714443698241"), ("[R]/(in(A) - A)", "0.598806654545")):
+for what, c in (
+    ("A", "0.219203517868"),
+    ("[R]", "1.06635278389"),
+    ("S", "0.714443698241"),
+    ("[R]/(in(A) - A)", "0.598806654545"),
+):
     check("A08", f"{what}, PFR", c, tube(PARALLEL, ARS, 5.0, what))
 for what, c in (("A", "0.637458608818"), ("[R]", "0.956187913227"), ("[R]/(in(A) - A)", "0.701767975208")):
     check("A08", f"{what}, CSTR", c, tank(PARALLEL, ARS, 5.0, what))
@@ -167,6 +177,7 @@ check("A31", "PFR after a CSTR at its outlet, C/C0", "0.188580484696",
 check("A31", "CSTR after a PFR at its outlet, C/C0", "0.16666666666666667",
       tank(SECOND_S, feed("mol/L", A=0.25, B=0.0), 1.0, "A"))  # fmt: skip
 
+
 # A35, F06: Arrhenius through the rate of a first-order law, k = r/C
 def arrhenius(k, energy, reference, at, unit="kJ/mol", kelvin="K"):
     table = (("Reaction", "k [1/s]", f"E [{unit}]", f"T ref [{kelvin}]"), ("A -> B", k, energy, reference))
@@ -174,13 +185,24 @@ def arrhenius(k, energy, reference, at, unit="kJ/mol", kelvin="K"):
                 vessel(Residence_time=(1.0, "s"), Temperature=(at, kelvin)), "(in(A) - A)/A")  # fmt: skip
 
 
-check("A35", "k(310 K) by E/R in K", "0.0229487329359", arrhenius(0.01, 7725.30197968, 300.0, 310.0, "K"), rel=1e-9)
+check(
+    "A35",
+    "k(310 K) by E/R in K",
+    "0.0229487329359",
+    arrhenius(0.01, 7725.30197968, 300.0, 310.0, "K"),
+    rel=1e-9,
+)
 check("A35", "k(320 K) by E in kJ/mol", "0.05", arrhenius(0.01, 64.231734524, 300.0, 320.0), rel=1e-9)
 PRE = (("Reaction", "k0 [1/s]", "E [kJ/mol]"), ("A -> B", 2.718281828459045**21.145836413, 64.231734524))
 check("A35", "k(300 K) by k0", "0.01", Call("MOLE_CSTR", PRE, feed("mol/L", A=1.0, B=0.0),
       vessel(Residence_time=(1.0, "s"), Temperature=(300.0, "K")), "(in(A) - A)/A"), rel=2e-9)  # fmt: skip
 check("F06", "k ratio 310/300 K, E = 50 kJ/mol", "1.90908785421", arrhenius(1.0, 50.0, 300.0, 310.0))
-check("F06", "k ratio 37/27 degC, E = 50 kJ/mol", "1.90787458133", arrhenius(1.0, 50.0, 27.0, 37.0, kelvin="degC"))
+check(
+    "F06",
+    "k ratio 37/27 degC, E = 50 kJ/mol",
+    "1.90787458133",
+    arrhenius(1.0, 50.0, 27.0, 37.0, kelvin="degC"),
+)
 check("F06", "k ratio, E = 11950.286 cal/mol", "1.90908785421",
       arrhenius(1.0, 50.0 / 4.184, 300.0, 310.0, "kcal/mol"))  # fmt: skip
 check("F06", "E for doubling, 300 to 310 K", "2", arrhenius(1.0, 53.5972607913, 300.0, 310.0), rel=1e-10)
@@ -208,7 +230,9 @@ for what, fed, unit, expected in (
     ("ft3/lbmol in L/mol", "lbmol/ft3", "mol/L", "16.018463374"), ("25 degC in degR", None, None, "536.67")
 ):  # fmt: skip
     if fed:
-        check("F05", f"lbmol/ft3 in {unit}", expected, tank(FIRST, feed(fed, A=1.0, B=0.0), 0.0, f"A [{unit}]"))
+        check(
+            "F05", f"lbmol/ft3 in {unit}", expected, tank(FIRST, feed(fed, A=1.0, B=0.0), 0.0, f"A [{unit}]")
+        )
     else:
         check("F05", what, expected, tank(FIRST, AB, vessel(Residence_time=(1.0, "min"), Temperature=(25.0, "degC")),
                                           "temperature [degR]"))  # fmt: skip
@@ -222,7 +246,12 @@ RS = laws(("A + B -> R", "k*A^1.5*B^0.3", {"k": 1.0}), ("A + B -> S", "k2*A^0.5*
 EQUAL_STREAMS = (("Species", "Feed acid [mol/L]", "Feed base [mol/L]"), ("A", 20.0, 0.0), ("B", 0.0, 20.0),
                  ("R", 0.0, 0.0), ("S", 0.0, 0.0), ("Flow [L/min]", 1.0, 1.0))  # fmt: skip
 # equal amounts react, so A = B = C: tau = (10 - C)/(C^1.8 + C^2.3) for the tank at C = 1
-check("C04", "CR, mixed flow at 90 % conversion", "4.5", tank(RS, EQUAL_STREAMS, vessel(Residence_time=(4.5, "min")), "[R]"))
+check(
+    "C04",
+    "CR, mixed flow at 90 % conversion",
+    "4.5",
+    tank(RS, EQUAL_STREAMS, vessel(Residence_time=(4.5, "min")), "[R]"),
+)
 ENZYME = laws(("A -> B", "k*A/(1 + K*A)", {"k": 0.1, "K": 0.5}), k="1/min", K="L/mol")
 check("C05", "X at V = 986.433 L and 25 L/min, PFR", "0.95",
       tube(ENZYME, AB, vessel(Volume=(986.433068388, "L"), Flow=(25.0, "L/min")), "conversion(A)"))  # fmt: skip
@@ -237,7 +266,12 @@ HYDROLYSIS = power(1, 0.158, "1/min")
 CM3 = vessel(Volume=(1800.0, "cm^3"), Flow=(582.0, "cm^3/min"))
 for n, x in ((1, "0.328254847645"), (2, "0.548758450288"), (3, "0.69688067644")):
     # conversion over the whole chain: from the outlet concentration of the last tank
-    check("C10", f"CA/CA0 after {n} tank(s)", repr(1 - float(x)), tank(HYDROLYSIS, feed("mol/L", A=1.0, B=0.0), CM3, "A", chain=n))
+    check(
+        "C10",
+        f"CA/CA0 after {n} tank(s)",
+        repr(1 - float(x)),
+        tank(HYDROLYSIS, feed("mol/L", A=1.0, B=0.0), CM3, "A", chain=n),
+    )
 check("C10", "X, PFR of one tank's volume", "0.386552009702", tube(HYDROLYSIS, AB, CM3, "conversion(A)"))
 # C12 with R = 8.314: E/R in K, so that the rounded R of the source is kept
 OPT = (("Reaction", "Rate", "k0 [1/min]", "E [K]"), ("A -> Rev", "", 2.718281828459045**17.34, 48900.0 / 8.314),
@@ -275,10 +309,19 @@ CUBIC = laws(("A + 2 B -> 3 B", "k*A*B^2", {"k": 1.0}), k="L^2/(mol^2 min)")
 for first, b in ((0.9, "1"), (1.9, "1"), (2.1, "3"), (3.2, "3")):
     fed = feed("mol/L", start={"A": 6.0 - first, "B": first}, A=60 / 11, B=6 / 11)
     check("D01", f"CB from a start with B = {first:g}", b, tank(CUBIC, fed, 1 / 11, "B"))
-check("D01", "CB from a vessel full of feed", "1", tank(CUBIC, feed("mol/L", A=60 / 11, B=6 / 11), 1 / 11, "B"))
-DECAY = laws(("A + 2 B -> 3 B", "k*A*B^2", {"k": 1.0}), ("B -> C", "k2*B", {"k2": 0.025}), k="L^2/(mol^2 s)", k2="1/s")
+check(
+    "D01", "CB from a vessel full of feed", "1", tank(CUBIC, feed("mol/L", A=60 / 11, B=6 / 11), 1 / 11, "B")
+)
+DECAY = laws(
+    ("A + 2 B -> 3 B", "k*A*B^2", {"k": 1.0}), ("B -> C", "k2*B", {"k2": 0.025}), k="L^2/(mol^2 s)", k2="1/s"
+)
 BC = vessel(Residence_time=(100.0, "s"))
-check("D03", "extent without autocatalyst", "0", tank(DECAY, feed("mol/L", A=1.0, B=0.0, C=0.0), BC, "1 - A/in(A)"))
+check(
+    "D03",
+    "extent without autocatalyst",
+    "0",
+    tank(DECAY, feed("mol/L", A=1.0, B=0.0, C=0.0), BC, "1 - A/in(A)"),
+)
 IGNITED = feed("mol/L", start={"A": 0.2, "B": 0.3, "C": 0.5}, A=1.0, B=0.0, C=0.0)
 check("D03", "extent, ignited", "0.857071421427", tank(DECAY, IGNITED, BC, "1 - A/in(A)"))
 check("D03", "b, ignited", "0.244877548979", tank(DECAY, IGNITED, BC, "B"))
@@ -287,11 +330,21 @@ for kappa, b0, tau, extent in (
     (0.025, 1 / 15, 1000, "0.0082297456"), (0.02, 0.15, 10, "0.88061321"), (0.02, 0.15, 100, "0.92813676"),
     (0.08, 1 / 15, 100, "0.0065799582"),
 ):  # fmt: skip
-    table = laws(("A + 2 B -> 3 B", "k*A*B^2", {"k": 1.0}), ("B -> C", "k2*B", {"k2": kappa}), k="L^2/(mol^2 s)", k2="1/s")
+    table = laws(
+        ("A + 2 B -> 3 B", "k*A*B^2", {"k": 1.0}),
+        ("B -> C", "k2*B", {"k2": kappa}),
+        k="L^2/(mol^2 s)",
+        k2="1/s",
+    )
     check("D03b", f"extent, b0 = {b0:g}, kappa = {kappa:g}, T = {tau:g}", extent,
           tank(table, feed("mol/L", A=1.0, B=b0, C=0.0), vessel(Residence_time=(float(tau), "s")), "1 - A/in(A)"), rel=2e-7)  # fmt: skip
 LHHW = laws(("C -> P", "k*C/(1 + K*C)^2", {"k": 1.0, "K": 1.0}), k="1/s", K="L/mol")
-check("D04", "u from a vessel full of feed", "10.3875793279", tank(LHHW, feed("mol/L", C=20.0, P=0.0), 120.0, "C"))
+check(
+    "D04",
+    "u from a vessel full of feed",
+    "10.3875793279",
+    tank(LHHW, feed("mol/L", C=20.0, P=0.0), 120.0, "C"),
+)
 check("D04", "u from a reacted start", "0.261938798622",
       tank(LHHW, feed("mol/L", start={"C": 0.5, "P": 19.5}, C=20.0, P=0.0), 120.0, "C"))  # fmt: skip
 check("D12", "CB, non-trivial state", "0.75",
@@ -314,7 +367,13 @@ for name, expected in zip("ABC", DIGITS["tubes"]["ROBER"], strict=True):
     check("B01", f"{name}, tau = 1e11 s", expected, tube(ROBER, ABC, 1e11, name), rel=STIFF)
 for tau in ("1", "100", "10000", "1000000", "100000000000"):
     for name, expected in zip("ABC", DIGITS["tanks"][f"ROBER_{tau}"], strict=True):
-        check("B01-tank", f"{name}, tau = {float(tau):g} s", expected, tank(ROBER, ABC, float(tau), name), rel=1e-9)
+        check(
+            "B01-tank",
+            f"{name}, tau = {float(tau):g} s",
+            expected,
+            tank(ROBER, ABC, float(tau), name),
+            rel=1e-9,
+        )
 
 HIRES = tuple((equation, law) for equation, law in (
     ("0 -> y1", "0.0007"), ("y1 -> y2", "1.71*y1"), ("y2 -> y1", "0.43*y2"), ("y2 -> y4", "8.32*y2"), ("y3 -> y1", "8.32*y3"),
@@ -324,8 +383,20 @@ HIRES = tuple((equation, law) for equation, law in (
 HIRES_TABLE = (("Reaction", "Rate"), *HIRES)
 EIGHT = feed(**{f"y{i}": {1: 1.0, 8: 0.0057}.get(i, 0.0) for i in range(1, 9)})
 for i in range(8):
-    check("B02", f"y{i + 1}, tau = 321.8122", DIGITS["tubes"]["HIRES"][i], tube(HIRES_TABLE, EIGHT, 321.8122, f"y{i + 1}"), rel=STIFF)
-    check("B02-tank", f"y{i + 1}, tau = 10", DIGITS["tanks"]["HIRES_10"][i], tank(HIRES_TABLE, EIGHT, 10.0, f"y{i + 1}"), rel=1e-9)
+    check(
+        "B02",
+        f"y{i + 1}, tau = 321.8122",
+        DIGITS["tubes"]["HIRES"][i],
+        tube(HIRES_TABLE, EIGHT, 321.8122, f"y{i + 1}"),
+        rel=STIFF,
+    )
+    check(
+        "B02-tank",
+        f"y{i + 1}, tau = 10",
+        DIGITS["tanks"]["HIRES_10"][i],
+        tank(HIRES_TABLE, EIGHT, 10.0, f"y{i + 1}"),
+        rel=1e-9,
+    )
 
 POLLU = """1>2+3 .35;2+4>1 26.6;5+2>6+1 1.23e4;7>2*5+8 8.6e-4;7>8 8.2e-4;7+6>5+8 1.5e4;9>10+8+5 1.3e-4;9+6>11 2.4e4;
 11+2>10+12+1 1.65e4;11+1>13 9e3;13>11+1 .022;10+2>14+1 1.2e4;14>7+5 1.88;1+6>15 1.63e4;3>4 4.8e6;4>16 3.5e-4;4>3 .0175;
@@ -333,23 +404,48 @@ POLLU = """1>2+3 .35;2+4>1 26.6;5+2>6+1 1.23e4;7>2*5+8 8.6e-4;7>8 8.2e-4;7+6>5+8
 
 
 def side(text):
-    return " + ".join(f"{t.split('*')[0]} y{t.split('*')[1]}" if "*" in t else f"y{t}" for t in text.split("+"))
+    return " + ".join(
+        f"{t.split('*')[0]} y{t.split('*')[1]}" if "*" in t else f"y{t}" for t in text.split("+")
+    )
 
 
 rows = [item.split() for item in POLLU.replace("\n", "").split(";")]
-POLLU_TABLE = (("Reaction", "k"), *((f"{side(e.split('>')[0])} -> {side(e.split('>')[1])}", float(k)) for e, k in rows))
-TWENTY = feed(**{f"y{i}": {2: 0.2, 4: 0.04, 7: 0.1, 8: 0.3, 9: 0.01, 17: 0.007}.get(i, 0.0) for i in range(1, 21)})
+POLLU_TABLE = (
+    ("Reaction", "k"),
+    *((f"{side(e.split('>')[0])} -> {side(e.split('>')[1])}", float(k)) for e, k in rows),
+)
+TWENTY = feed(
+    **{f"y{i}": {2: 0.2, 4: 0.04, 7: 0.1, 8: 0.3, 9: 0.01, 17: 0.007}.get(i, 0.0) for i in range(1, 21)}
+)
 for i in range(20):
     if float(DIGITS["tubes"]["POLLU"][i]) > 1e-12 * 0.3:
-        check("B03", f"y{i + 1}, tau = 60", DIGITS["tubes"]["POLLU"][i], tube(POLLU_TABLE, TWENTY, 60.0, f"y{i + 1}"), rel=STIFF)
-    check("B03-tank", f"y{i + 1}, tau = 60", DIGITS["tanks"]["POLLU_60"][i], tank(POLLU_TABLE, TWENTY, 60.0, f"y{i + 1}"), rel=1e-9)
+        check(
+            "B03",
+            f"y{i + 1}, tau = 60",
+            DIGITS["tubes"]["POLLU"][i],
+            tube(POLLU_TABLE, TWENTY, 60.0, f"y{i + 1}"),
+            rel=STIFF,
+        )
+    check(
+        "B03-tank",
+        f"y{i + 1}, tau = 60",
+        DIGITS["tanks"]["POLLU_60"][i],
+        tank(POLLU_TABLE, TWENTY, 60.0, f"y{i + 1}"),
+        rel=1e-9,
+    )
 
 Q = 77.27
 OREGO = (("Species", "Feed", "a", "b", "c", "d", "e"),
          ("y1", 1.0, Q, Q, -Q * 8.375e-6, -Q, None), ("y2", 2.0, -1 / Q, None, None, -1 / Q, 1 / Q),
          ("y3", 3.0, None, 0.161, None, None, -0.161), ("Rate", None, "y2", "y1", "y1^2", "y1*y2", "y3"))  # fmt: skip
 for i in range(3):
-    check("B04", f"y{i + 1}, tau = 360", DIGITS["tubes"]["OREGO"][i], tube(OREGO, None, 360.0, f"y{i + 1}"), rel=STIFF)
+    check(
+        "B04",
+        f"y{i + 1}, tau = 360",
+        DIGITS["tubes"]["OREGO"][i],
+        tube(OREGO, None, 360.0, f"y{i + 1}"),
+        rel=STIFF,
+    )
 
 E5 = laws(("y1 -> y2 + y3", "k1*y1", {"k1": 7.89e-10}), ("y2 + y3 -> waste", "k2*y2*y3", {"k2": 1.13e9}),
           ("y1 + y3 -> y4", "k3*y1*y3", {"k3": 1.1e7}), ("y4 -> y3", "k4*y4", {"k4": 1.13e3}))  # fmt: skip

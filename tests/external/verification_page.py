@@ -31,6 +31,8 @@ def page(checks, sources, got) -> str:
         for c in checks:
             if c.case == case:
                 ours, expected = got[c.case, c.what], float(c.expected)
-                lines.append(f"| {c.what} | `{c.ask.function}` | {c.expected} | {ours:.9g} | {agreement(ours, expected)} |")
+                lines.append(
+                    f"| {c.what} | `{c.ask.function}` | {c.expected} | {ours:.9g} | {agreement(ours, expected)} |"
+                )
         lines.append("")
     return "\n".join(lines)

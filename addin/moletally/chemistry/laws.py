@@ -1,14 +1,15 @@
 """The law of each reaction: as typed, or mass action where the Rate is left blank."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 from moletally.chemistry.alike import hint
 from moletally.chemistry.errors import InputError, SheetError
-from moletally.chemistry.expression import Call, Name, Node, check_reserved, names, parse, walk
-from moletally.chemistry.tables import ReactionRow
+from moletally.chemistry.expression import Binary, Call, Name, Node, check_reserved, names, parse, walk
+from moletally.chemistry.tables import ConstantRow, ReactionRow, ReactionTable
 from moletally.chemistry.tokens import bracketed
 
-__all__ = ["Law", "law_of"]
+__all__ = ["Law", "exponent_slots", "law_of"]
 
 RESERVED = ("T", "R")
 CARRIERS = {"k0": "k", "E": "k", "T ref": "k", "dH": "Keq", "dH T ref": "Keq", "Keq T ref": "Keq"}
@@ -46,6 +47,26 @@ def law_of(row: ReactionRow, species: tuple[str, ...], shared: frozenset[str], i
         return _checked(text, tree, row, species, shared)
     except SheetError as error:
         raise error.at(row.rate_place) from None
+
+
+@lru_cache(maxsize=512)
+def exponent_slots(table: ReactionTable, constants: tuple[ConstantRow, ...]) -> frozenset[int]:
+    """Slots of the constants that stand in an exponent of some Rate."""
+    shared = {row.name: row.value.slot for row in constants}
+    slots: set[int] = set()
+    for row in table.rows:
+        known = shared | {name: number.slot for name, number in row.constants}
+        slots |= {known[name] for name in _in_exponents(row.rate) if name in known}
+    return frozenset(slots)
+
+
+def _in_exponents(rate: str) -> set[str]:
+    try:
+        tree = parse(rate)
+    except SheetError:  # law_of says what is wrong with it
+        return set()
+    powers = (node.right for node in walk(tree) if isinstance(node, Binary) and node.op == "^")
+    return {name.text for power in powers for name in names(power)}
 
 
 def _mass_action(row: ReactionRow, in_pressures: bool) -> str:

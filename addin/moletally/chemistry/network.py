@@ -10,7 +10,7 @@ from moletally.chemistry.alike import hint
 from moletally.chemistry.compiler import compile_laws
 from moletally.chemistry.errors import Finding, InputError, Level, Place
 from moletally.chemistry.expression import Call, names, walk
-from moletally.chemistry.laws import Law, law_of, unused
+from moletally.chemistry.laws import Law, exponent_slots, law_of, unused
 from moletally.chemistry.parameters import Parameter, Parameters
 from moletally.chemistry.quantity import Unit, parse_unit
 from moletally.chemistry.rate_units import check_rates, is_per_pressure
@@ -89,7 +89,6 @@ class Network:
         return self.parameters.values(numbers)
 
 
-@lru_cache(maxsize=512)
 def build_network(
     table: ReactionTable,
     constants: tuple[ConstantRow, ...],
@@ -104,7 +103,28 @@ def build_network(
     species : names in feed order
     feed_units : units of the feed as written, in which a missing unit is proposed
     exponents : (slot, number) of the plain numbers that may be exponents: orders decide dimensions
+
+    Raises
+    ------
+    InputError
+        With its place, for what is missing, unknown, unused or does not fit together.
     """
+    if exponents:  # a number that is no exponent must not make a network of its own
+        slots = exponent_slots(table, constants)
+        exponents = tuple(pair for pair in exponents if pair[0] in slots)
+    return _build(table, constants, species, with_units, mass_basis, feed_units, exponents)
+
+
+@lru_cache(maxsize=512)
+def _build(
+    table: ReactionTable,
+    constants: tuple[ConstantRow, ...],
+    species: tuple[str, ...],
+    with_units: bool,
+    mass_basis: bool,
+    feed_units: tuple[str, ...],
+    exponents: tuple[tuple[int, float], ...],
+) -> Network:
     _check_names(table, constants, species)
     shared = frozenset(row.name for row in constants)
     like = tuple(parse_unit(u) for u in feed_units)

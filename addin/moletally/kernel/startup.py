@@ -30,7 +30,6 @@ LOOK_EVERY = 4  # attempts between two looks for the state ahead
 SLOW = 0.3  # relative change per residence time below which a look is worth its cost
 LATE = 3.0  # residence times after which a look is worth it anyway
 COINCIDES = 1e-4  # relative distance at which a start-up has arrived
-NEARBY = 1e-2  # the same for implicit Euler steps
 DEPARTURE = 45.0  # doublings of e after which rounding would have left an unstable state
 SWINGS = 8  # turning points without rest that tell oscillation from slowness
 VANISHING = 1e-5  # of the largest concentration: where a law of negative order is about to end
@@ -160,13 +159,9 @@ class _StartUp:
         self.rest.work[row] += 2 * iterations
         if not np.isfinite(far).all():
             return
-        roots = newton(tanks, far)
-        close = np.abs(roots.c - far) <= NEARBY * roots.c + self.near[row] + self.least[row]
-        if not (roots.settled[0] and close.all()):
-            return
-        _, swing, unstable = growth(tanks, roots.c)
+        _, swing, unstable = growth(tanks, far)
         found = Status.OK if not unstable[0] else Status.OSCILLATES if swing[0] > 0 else Status.UNSTABLE
-        self.rest.c[row], self.rest.status[row] = roots.c, found
+        self.rest.c[row], self.rest.status[row] = far, found
 
     def _stop_endless(self, rows: Ints) -> None:
         laws, structure = self.flow.laws, self.structure
