@@ -121,6 +121,8 @@ MW = {"A": {"molar_mass": (50.0, "g/mol")}}
         (feed({"A": 2.0}, "1"), "mole fractions need a gas phase, which this version does not solve yet"),
         (feed({"A": 2.0}, "bar"), "a feed can't be in bar"),
         (feed({"A": 2.0}, "M"), "write mol/L"),
+        (feed({"A": 1e308}), "too large to compute with"),
+        (feed({"A": 2.0}, "g/L", columns={"A": {"molar_mass": (0.0, "g/mol")}}), "MW of A must be more than 0"),
         (feed({"A": 2.0}, "mol/h"), "the feed is given as a flow: give Flow too"),
         (feed({"A": (2.0, 1.0)}, streams=({"flow": (1.0, "L/h")}, {})), "give Flow of s1"),
         (feed({"A": 2.0}, streams=({"flow": (0.0, "L/h")},)), "must be more than 0"),

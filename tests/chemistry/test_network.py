@@ -264,6 +264,8 @@ def test_what_is_refused_and_why(equation, rate, given, words):
     ("given", "words"),
     [
         ({"k": (-1, "1/h"), "Keq": (1, "-")}, "rate constant is not negative"),
+        ({"k": (1e308, "1/ms"), "Keq": (1, "-")}, "too large or too small to compute with"),
+        ({"k": (1e-323, "1/h"), "Keq": (1, "-")}, "too large or too small to compute with"),
         ({"k": (1, "1/h"), "Keq": (0, "-")}, "equilibrium constant is more than 0"),
         ({"k": (1, "1/h"), "Keq": (-2, "-")}, "equilibrium constant is more than 0"),
         (
@@ -332,3 +334,74 @@ def test_what_the_audit_remarks(tables, words):
 def test_no_energy_is_no_slip():
     tables = Tables().reaction("A -> B", "k*A", k=(1, "1/h"), E=(0, "kJ/mol"), T_ref=(300, "K"))
     assert tables.remarks() == []
+
+
+def test_only_exponents_make_networks_of_their_own():
+    def network(keq, n):
+        tables = Tables().reaction("A -> B", "k*A^n - k*A^n*B/(Keq*A)", k=(1, "L/(mol h)"), n=(n, "-"))
+        return tables.constant("Keq", (keq, "-")).network()
+
+    assert network(2.0, 2.0) is network(3.0, 2.0)
+    with pytest.raises(InputError, match="order"):
+        network(2.0, 1.0)
+
+
+PIECES = st.sampled_from(
+    [
+        "k",
+        "A",
+        "B",
+        "n",
+        "K",
+        "T",
+        "R",
+        "(",
+        ")",
+        "+",
+        "-",
+        "*",
+        "/",
+        "^",
+        "0",
+        "1",
+        "0.5",
+        "2",
+        "exp(",
+        "ln(",
+        "sqrt(",
+        "max(",
+        "min(",
+        ",",
+        "p(A)",
+        "x(B)",
+        "[T]",
+        "Keq",
+        "E",
+    ]
+)
+UNITS = st.sampled_from(
+    ["1/h", "L/(mol h)", "L/mol", "-", None, "K", "kJ/mol", "degC", "bar", "mol/L", "x", "m^0.5"]
+)
+
+
+@settings(max_examples=400, deadline=1000)
+@given(
+    st.lists(PIECES, max_size=14),
+    UNITS,
+    UNITS,
+    UNITS,
+    st.floats(allow_nan=False, allow_infinity=False),
+    st.booleans(),
+)
+def test_any_law_and_unit_gives_a_network_or_one_of_our_errors(pieces, k, n, shared, number, with_units):
+    tables = Tables().reaction("A + B -> C", " ".join(pieces), k=(number, k), n=(number, n))
+    tables.constant("K", (number, shared))
+    try:
+        network = tables.network(with_units=with_units)
+        vector, _ = network.values(tuple(tables.numbers))
+    except InputError as error:
+        assert error.reason
+        return
+    assert len(vector) == len(network.parameters.items)
+    rates = evaluate(network.model.program, np.ones((1, 4)), np.array([300.0]), vector[None, :])
+    assert rates.shape == (1, 1)

@@ -51,6 +51,13 @@ def _unit(quantity: Quantity, name: str) -> Unit:
     return unit
 
 
+def _molar_mass(quantity: Quantity, name: str) -> float:
+    value = to_si(quantity, MOLAR_MASS, True, f"MW of {name}")
+    if not 0 < value < np.inf:
+        raise InputError(f"MW of {name} must be more than 0", quantity.place)
+    return value
+
+
 def is_mass_basis(feed: FeedTable, with_units: bool) -> bool:
     """True where amounts are masses: fed in mass, and no molar mass to make them moles."""
     if not with_units:
@@ -106,7 +113,7 @@ class Inlet:
 
     def _molar_masses(self) -> Floats:
         return np.array([
-            np.nan if row.molar_mass is None else to_si(row.molar_mass, MOLAR_MASS, True, f"MW of {row.name}")
+            np.nan if row.molar_mass is None else _molar_mass(row.molar_mass, row.name)
             for row in self.feed.species
         ])  # fmt: skip
 
@@ -207,6 +214,8 @@ class Inlet:
             if not self.with_units and quantity.unit not in (None, "", "-"):
                 to_si(quantity, ONE, False, f"the feed of {row.name}")
             values.append(unit.to_si(quantity.value) / self._per_mole(unit, i, quantity.place))
+            if not np.isfinite(values[-1]):
+                raise InputError(f"the feed of {row.name} is too large to compute with", quantity.place)
         return self._not_negative(np.array(values), stream)
 
     def _not_negative(self, values: Floats, stream: int) -> Floats:

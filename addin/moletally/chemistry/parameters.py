@@ -1,5 +1,6 @@
 """The parameter vector of a network: rate constants, energies and reference temperatures, in SI."""
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
@@ -106,7 +107,10 @@ class Parameter:
                 f"{self.label} is an order, and the units of the rate constants fit {self.order:g}, not {value:g}:"
                 " give the other order in reactions of its own, with the units that belong to it"
             )
-        if self.kind == ParameterKind.REFERENCE and self.to_si(value) <= 0:
+        si = self.to_si(value)
+        if not math.isfinite(si) or (value and self.kind == ParameterKind.VALUE and not si):
+            return f"{self.label} is {value:g}: too large or too small to compute with in SI units"
+        if self.kind == ParameterKind.REFERENCE and si <= 0:
             return f"{self.label} is below absolute zero"
         return ""
 
