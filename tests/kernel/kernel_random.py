@@ -6,6 +6,7 @@ adsorption term, a fifth can run backwards.
 """
 
 from dataclasses import dataclass
+from fractions import Fraction
 
 import mpmath
 import numpy as np
@@ -157,7 +158,7 @@ def _balance(case, unknown, cut, idle, x):
                 elastic[i] = 1
         for i in range(size):
             if term.nu[i]:
-                flow = mpmath.mpf(float(term.nu[i])) * rate * tau
+                flow = _meant(term.nu[i]) * rate * tau
                 f[i] += flow
                 scale[i] += abs(flow)
                 for k, e in elastic.items():
@@ -198,3 +199,9 @@ def _apart(case, cut):
         if laws[i] not in [laws[k] for k in kept]:
             kept.append(i)
     return kept
+
+
+def _meant(x):
+    """A coefficient as the fraction that was meant: products are made in the ratio of masses 1 to 3."""
+    near = Fraction(float(x)).limit_denominator(1000)
+    return mpmath.mpf(near.numerator) / near.denominator

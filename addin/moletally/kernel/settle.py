@@ -12,7 +12,7 @@ from moletally.kernel.rates import Floats
 from moletally.kernel.refine import refine
 from moletally.kernel.stability import growth, invaded
 from moletally.kernel.status import Status
-from moletally.kernel.steady import CLOSED, EPSILON, Tanks, newton, polish
+from moletally.kernel.steady import CLOSED, EPSILON, NOTHING, Tanks, newton, polish
 from moletally.kernel.structure import ZERO_ORDER, Structure, structures
 
 __all__ = ["Settled", "settle"]
@@ -45,7 +45,7 @@ def settle(structure: Structure, tanks: Tanks, c: Floats, T: Floats, p: Floats) 
         gone = tuple(np.flatnonzero(pattern[structure.present]).tolist())
         model = _without(structure, gone)
         if model is not None:
-            _settle_again(model, structure, answer, rows, tanks, T, p)
+            _settle_again(model, structure, answer, rows, tanks, c, T, p)
     return answer
 
 
@@ -128,12 +128,14 @@ def _without(structure: Structure, gone: tuple[int, ...]) -> Model | None:
 
 
 def _settle_again(
-    model: Model, structure: Structure, answer: Settled, rows: Ints, tanks: Tanks, T: Floats, p: Floats
-) -> None:
+    model: Model, structure: Structure, answer: Settled, rows: Ints, tanks: Tanks, c: Floats, T: Floats,
+    p: Floats,
+) -> None:  # fmt: skip
     """Solve the tanks in `rows` without those terms, from where they are; keep what is as good."""
-    feed = np.zeros((len(rows), model.program.n_species))
-    feed[:, structure.present] = tanks.feed[rows]
-    scale = feed.max(axis=1, keepdims=True)
+    feed, start = np.zeros((2, len(rows), model.program.n_species))
+    feed[:, structure.present], start[:, structure.present] = tanks.feed[rows], c[rows]
+    scale = tanks.nothing[rows] / NOTHING
+    gone = answer.exhausted[rows] & np.isin(np.arange(feed.shape[1]), structure.present)
     for less, part in structures(model, feed > 0, T[rows], p[rows]):
         here = rows[part]
         if less.unbounded or not len(less.firing):
@@ -141,19 +143,9 @@ def _settle_again(
         size = np.broadcast_to(scale[part], (len(part), len(less.present)))
         laws = Laws.of(less, less.starved, size, T[here], p[here])
         fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here])
-        guess = np.maximum(answer.c[np.ix_(here, less.present)], 0.5 * _floor(less, laws, size))
-        roots = newton(fewer, guess)
+        roots = newton(fewer, np.maximum(start[np.ix_(part, less.present)], tanks.nothing[here]))
         found = _settle(less, fewer, roots.c, T[here], p[here], unique=True)
-        good = (
-            roots.settled
-            & (found.status == Status.OK)
-            & (found.exhausted >= answer.exhausted[here]).all(axis=1)
-        )
-        for name in Settled.__dataclass_fields__:
+        good = roots.settled & (found.status == Status.OK) & ~(gone[part] & (found.c != 0)).any(axis=1)
+        answer.exhausted[here[good]] |= found.exhausted[good]
+        for name in ("c", "status", "residual", "condition", "growth"):
             getattr(answer, name)[here[good]] = getattr(found, name)[good]
-
-
-def _floor(structure: Structure, laws: Laws, size: Floats) -> Floats:
-    floor = np.full(size.shape, 1e-300)
-    floor[:, laws.edged] = laws.floor
-    return floor
