@@ -27,7 +27,7 @@ def run(*arguments: str) -> subprocess.CompletedProcess[str]:
 
 def recalculate(book: Path, *options: str) -> dict[str, object]:
     """Value by cell of a recalculation in which nothing may fail."""
-    done = run("-m", "moletally.cli", "recalc", str(book), "--json", *options)
+    done = run("-m", "moletally", "recalc", str(book), "--json", *options)
     report = json.loads(done.stdout)
     assert done.returncode == 0, report["problems"]
     assert report["problems"] == []
