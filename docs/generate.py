@@ -1,7 +1,7 @@
 """Writes the pages that come from tables in the code: functions.md and errors.md.
 
-    python docs/generate.py           write them
-    python docs/generate.py --check   fail if a committed page is stale
+python docs/generate.py           write them
+python docs/generate.py --check   fail if a committed page is stale
 """
 
 import sys
@@ -63,9 +63,7 @@ def function_section(function: Function) -> str:
 def pages() -> dict[str, str]:
     """Every generated page by file name."""
     functions = FUNCTIONS_HEAD + "".join(function_section(f) for f in FUNCTIONS.values())
-    statuses = [
-        (f"`{s.name}`", STATUS[s].sentence, STATUS[s].remedy) for s in Status if s is not Status.OK
-    ]
+    statuses = [(f"`{s.name}`", STATUS[s].sentence, STATUS[s].remedy) for s in Status if s is not Status.OK]
     return {
         "functions.md": functions,
         "errors.md": ERRORS_HEAD + "\n" + table(("status", "meaning", "what to do"), statuses),

@@ -10,8 +10,9 @@ import argparse
 import tempfile
 from pathlib import Path
 
-from moletally.cli import main as moletally
 from workbook_templates import adsorbing_tube, amination, matrix_sheet
+
+from moletally.cli import main as moletally
 
 __all__ = ["TEMPLATES", "build"]
 

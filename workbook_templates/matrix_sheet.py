@@ -7,6 +7,7 @@ from workbook_templates.parts import (
     check,
     curves,
     grid,
+    here,
     named_curves,
     not_below,
     notes_sheet,
@@ -188,7 +189,7 @@ def write_results(sheet: Worksheet, look: Look, matrix: Area, time: str, last: A
             f"=({last.cell(3, 0)}-{enal})/({last.cell(5, 0)}-{fed.cell(5, 0)})",
         )
     ):
-        sheet.write_formula(top + row, 11, formula, look["result"])
+        sheet.write_formula(top + row, 11, here(sheet, formula), look["result"])
     heading(sheet, look, (17, 8), 5, "Do the balances close? (deviation, share of the feed)")
     for row, (what, weights) in enumerate(
         (("Ald units", "{1;0;1;1;2;2;0}"), ("Ket units", "{0;1;1;1;1;0;0}"))

@@ -9,7 +9,7 @@ from xlsxwriter.utility import xl_rowcol_to_cell
 from xlsxwriter.worksheet import Worksheet
 
 __all__ = [
-    "Axis", "Curve", "audit_sheet", "check", "curves", "grid", "named_curves", "not_below", "notes_sheet",
+    "Axis", "Curve", "audit_sheet", "check", "curves", "grid", "here", "named_curves", "not_below", "notes_sheet",
     "spill", "verdict",
 ]  # fmt: skip
 
@@ -97,11 +97,16 @@ def _put(sheet: Worksheet, look: Look, at: tuple[int, int], value: Value, style:
     if value is None:
         sheet.write_blank(*at, None, look[style])
     elif isinstance(value, str) and value.startswith("="):
-        sheet.write_formula(*at, value, look[LINKS.get(style, style)])
+        sheet.write_formula(*at, here(sheet, value), look[LINKS.get(style, style)])
     elif isinstance(value, str):
         sheet.write_string(*at, value, look[style])
     else:
         sheet.write_number(*at, value, look[style])
+
+
+def here(sheet: Worksheet, formula: str) -> str:
+    """A formula as it is typed on this sheet: its own cells without the sheet's name."""
+    return formula.replace(f"{sheet.get_name()}!", "")
 
 
 def spill(
@@ -132,13 +137,14 @@ def check(
     row, left = at
     sheet.merge_range(row, left, row, left + columns - 1, text, look["label"])
     for column, formula in enumerate(formulas, left + columns):
-        sheet.write_formula(row, column, formula, look["check"])
+        sheet.write_formula(row, column, here(sheet, formula), look["check"])
 
 
 def verdict(sheet: Worksheet, look: Look, at: tuple[int, int], text: str, call: str, columns: int) -> None:
     """The first row of an audit: the vessel, what was found over `columns` cells, and the level."""
     row, left = at
     last = left + columns + 1
+    call = here(sheet, call)
     sheet.set_row(row, 33)
     sheet.write_string(row, left, text, look["label"])
     sheet.merge_range(row, left + 1, row, last - 1, "", look["result text"])
