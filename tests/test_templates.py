@@ -138,3 +138,17 @@ def test_the_notes_say_what_engineers_have_to_know(book):
     assert "Invented data" in text
     assert "licensed engineer" in text
     assert "local codes" in text
+
+
+def test_the_spare_rows_take_a_species_and_a_reaction():
+    book = ROOT / "workbook_templates" / "amination.xlsx"
+    typed = {
+        "B18": "Waste", "C18": "0", "B9": "2 Oxide -> Waste", "C9": "k*Oxide^2", "D9": "0.001",
+        "E9": "L/(mol min)", "F9": "60", "G9": "70",
+    }  # fmt: skip
+    options = [text for cell, value in typed.items() for text in ("--set", f"Design!{cell}={value}")]
+    outlet = [row[0] for row in recalculate(book, *options)["Design!L6"]]
+    assert len(outlet) == 6
+    # Oxide is where it went: one per mono, two per di, three per tri, two per waste.
+    assert outlet[1] + outlet[2] + 2 * outlet[3] + 3 * outlet[4] + 2 * outlet[5] == pytest.approx(3.5)
+    assert outlet[5] > 0
