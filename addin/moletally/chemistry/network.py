@@ -250,6 +250,12 @@ def _remarks(reaction: Reaction, table: ReactionTable, species: tuple[str, ...])
         notes.append(
             Finding(Level.NOTE, where, f"r is the rate of {row.equation.text} as written: {', '.join(words)}")
         )
+    given = {name for name, _ in row.constants}
+    for reference, energy, name in (("T ref", "E", "k"), ("Keq T ref", "dH", "Keq")):
+        if reference in given and energy not in given:
+            notes.append(
+                Finding(Level.NOTE, where, f"{reference} but no {energy}: {name} does not depend on temperature")
+            )
     if not any(reaction.change):
         notes.append(Finding(Level.DOUBT, where, f"{row.equation.text} changes nothing: is it meant?"))
     twins = [r for r in table.rows if r is not row and r.equation == row.equation and r.rate == row.rate]

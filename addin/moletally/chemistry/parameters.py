@@ -225,8 +225,6 @@ class _Maker:
         """A constant with what makes it depend on temperature."""
         index = self.value(name + suffix, name, value)
         if energy is None:
-            if reference is not None:
-                raise InputError(f"{reference_name} is given, but {energy_name} is not", reference.place)
             if pre_exponential:
                 raise InputError(f"{name} is a pre-exponential: it needs E (0 if there is none)", value.place)
             return Symbol(index)
