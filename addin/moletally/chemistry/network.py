@@ -254,7 +254,9 @@ def _remarks(reaction: Reaction, table: ReactionTable, species: tuple[str, ...])
     for reference, energy, name in (("T ref", "E", "k"), ("Keq T ref", "dH", "Keq")):
         if reference in given and energy not in given:
             notes.append(
-                Finding(Level.NOTE, where, f"{reference} but no {energy}: {name} does not depend on temperature")
+                Finding(
+                    Level.NOTE, where, f"{reference} but no {energy}: {name} does not depend on temperature"
+                )
             )
     if not any(reaction.change):
         notes.append(Finding(Level.DOUBT, where, f"{row.equation.text} changes nothing: is it meant?"))

@@ -122,6 +122,10 @@ class Stepper:
             factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
             negative = (new < -tolerance.least).any(axis=1)
             factor = np.where(negative, np.minimum(factor, TOO_FAR), factor)
+            leak = tolerance.leaked(flow, c, new, h)
+            if leak is not None:
+                factor = np.where(leak > 1.0, np.minimum(factor, SAFETY / leak), factor)
+                size = np.maximum(size, leak)
         fine = (size <= 1.0) & ~negative
         growth = np.where(self._rejected[rows] & fine, 1.0, METHODS[method].most_growth)
         factor = np.clip(factor, np.where(finite, MOST_SHRINK, NOT_FINITE_SHRINK), growth)
@@ -139,7 +143,7 @@ class Stepper:
         self._look_for_trouble(rows, fine, finite)
         if method == EXPLICIT:
             assert stiffness is not None
-            self._look_for_stiffness(rows, stiffness > STIFF_LIMIT)
+            self._look_for_stiffness(rows, stiffness > STIFF_LIMIT, fine)
         return Stride(done, t[fine], c[fine], h[fine], method)
 
     def _approach_zero(self, rows: Ints, h: Floats) -> None:
@@ -160,13 +164,13 @@ class Stepper:
         self.t[rows] = before + step
         self._late[rows] = step - (self.t[rows] - before)
 
-    def _look_for_stiffness(self, rows: Ints, limited: NDArray[np.bool_]) -> None:
+    def _look_for_stiffness(self, rows: Ints, limited: NDArray[np.bool_], moved: NDArray[np.bool_]) -> None:
         count = self._stiff_steps[rows]
         self._stiff_steps[rows] = np.where(limited, count + 1.0, np.maximum(count - PARDON, 0.0))
         stiff = self._stiff_steps[rows] >= STIFF_STEPS
         laws = self.flow.laws
         if len(laws.edged):
-            stiff |= (self.c[np.ix_(rows, laws.edged)] < laws.floor[rows]).any(axis=1)
+            stiff |= moved & (self.c[np.ix_(rows, laws.edged)] < laws.floor[rows]).any(axis=1)
         self.mode[rows[stiff]] = STIFF
 
     def _look_for_trouble(self, rows: Ints, fine: NDArray[np.bool_], finite: NDArray[np.bool_]) -> None:

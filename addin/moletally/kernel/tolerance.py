@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.cutoff import Laws
+from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
 from moletally.kernel.structure import Structure
 
@@ -17,6 +18,7 @@ ABSOLUTE = 1e-25  # trace species are followed relatively
 # supply comes to exceed them again its size is their rounding for a while.
 STARVED = 1e-18
 NOTHING = 1e-40  # shown as zero
+LEAK = 10.0  # times the relative error, of the largest concentration
 AT_FLOOR = 10.0  # times `least`, which is a tenth of the floor
 
 
@@ -53,5 +55,22 @@ class Tolerance:
         """Errors in units of what is accepted, shape (n, S)."""
         size = np.maximum(np.abs(before), np.abs(after))
         # Not on the way to the floor: a step that is not sure to end there would be tried for ever.
-        extra = np.where(before < AT_FLOOR * self.least, self.blurred, 0.0)
+        extra = np.where(self._at_floor(before), self.blurred, 0.0)
         return np.abs(error) / (self.least + extra + self.relative[method] * size)
+
+    def _at_floor(self, c: Floats) -> NDArray[np.bool_]:
+        return np.asarray((self.blurred > 0) & (c < AT_FLOOR * self.least))
+
+    def leaked(self, flow: Flow, before: Floats, after: Floats, h: Floats) -> Floats | None:
+        """What species at the floor still gain or lose at the end of a step, in units of what is accepted.
+
+        Shape (n,), None if there are none. A Rosenbrock method takes a law at the floor for a stiff
+        spring; where supply has come to exceed it the law gives way, and the method would not notice that
+        the excess of a whole step is gone.
+        """
+        low = self._at_floor(before)
+        if not low.any():
+            return None
+        allowed = LEAK * self.relative[1] * self.blurred / STARVED
+        gain = np.abs(flow.slope(after)) * h[:, None]
+        return np.asarray(np.where(low, gain / np.where(low, allowed, 1.0), 0.0).max(axis=1))

@@ -162,7 +162,9 @@ class _Run:
                 new, error, _ = METHODS[method].step(flow, c, h, tolerance.least)
             # A shorter step is a better one, but for fast transients that the long one damps.
             fine = (tolerance.missed(error, c, new, method) <= 4.0) & (new >= -tolerance.least)
-            for k in np.flatnonzero(~fine.all(axis=1)):
+            leak = tolerance.leaked(flow, c, new, h)
+            poor = ~fine.all(axis=1) if leak is None else ~fine.all(axis=1) | ~(leak <= 4.0)
+            for k in np.flatnonzero(poor):
                 one = np.array([k])
                 new[k] = _creep(flow.at(one), c[one], float(h[k]), tolerance.at(one))
             if self.stepper.totals is not None:
