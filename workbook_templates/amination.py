@@ -21,7 +21,7 @@ from xlsxwriter.worksheet import Worksheet
 __all__ = ["DESCRIPTION", "NAME", "build"]
 
 NAME = "Stepwise amination"
-DESCRIPTION = "Three steps that use up the same oxide, one of order 0.5: tank against tube, profile, sweep"
+DESCRIPTION = "three steps that use up the same oxide, one of order 0.5: tank against tube, profile, sweep"
 
 REACTIONS = (
     ("Amine + Oxide -> Mono", "k*Amine*Oxide", 0.026, "L/(mol min)", 52.0, 70.0),

@@ -103,7 +103,7 @@ class Look:
 def open_book(path: str, name: str, description: str) -> Look:
     """A new workbook; `description` is what `moletally new` lists."""
     book = Workbook(path)
-    book.set_properties({"title": name, "comments": description, "author": "moletally", "created": BUILT})
+    book.set_properties({"title": f"{name}: {description}", "author": "moletally", "created": BUILT})
     book.set_calc_mode("auto", ENGINE)
     book.calc_on_load = False  # a reader without the add-in keeps the stored values
     book.set_size(24000, 14000)
