@@ -20,7 +20,7 @@ __all__ = ["DESCRIPTION", "NAME", "build"]
 
 NAME = "Species-and-reaction table"
 DESCRIPTION = (
-    "Four reactions as a matrix of coefficients, one reversible: three tanks in series against a tube"
+    "four reactions as a matrix of coefficients, one reversible: three tanks in series against a tube"
 )
 
 STEPS = ("Join", "Split", "Grow", "Dimerise")
