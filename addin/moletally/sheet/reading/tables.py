@@ -1,10 +1,13 @@
 """The tables of one call, whatever their layout: reactions, feed, constants."""
 
+import marshal
 from dataclasses import dataclass
+from functools import lru_cache
+from typing import Any
 
 from moletally.chemistry.errors import InputError, Place
 from moletally.chemistry.tables import ConstantRow, FeedTable, ReactionTable
-from moletally.sheet.cells import Argument
+from moletally.sheet.cells import OMITTED, Argument, Omitted
 from moletally.sheet.reading.constants import read_constants
 from moletally.sheet.reading.feed import read_feed
 from moletally.sheet.reading.grid import Grid, is_empty
@@ -12,6 +15,8 @@ from moletally.sheet.reading.matrix import is_matrix, read_matrix
 from moletally.sheet.reading.reactions import Numbers, read_list
 
 __all__ = ["Tables", "read_tables"]
+
+MOST_ROWS = 2000  # of a range that is remembered: whole columns would fill the memory
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,11 +32,32 @@ class Tables:
 def read_tables(reactions: Argument, feed: Argument, constants: Argument) -> Tables:
     """Read a reactions table with a feed table, or a species-and-reaction table in either orientation.
 
+    Tables that were read lately are remembered: the cells of a sheet ask many questions of the same ones.
+
     Raises
     ------
     SheetError
         With the place: table, row and column of the range, header.
     """
+    arguments = (reactions, feed, constants)
+    if any(isinstance(a, tuple) and len(a) > MOST_ROWS for a in arguments):
+        return _read(*arguments)
+    try:
+        # Bytes, because TRUE and 1 are equal as cells but not as content; version 2 does not depend on identity.
+        plain: Any = tuple(... if isinstance(a, Omitted) else a for a in arguments)
+        key = marshal.dumps(plain, 2)
+    except ValueError:  # dates and error values: rare, and refused anyway
+        return _read(*arguments)
+    return _remembered(key)
+
+
+@lru_cache(maxsize=256)
+def _remembered(key: bytes) -> Tables:
+    reactions, feed, constants = (OMITTED if a is ... else a for a in marshal.loads(key))
+    return _read(reactions, feed, constants)
+
+
+def _read(reactions: Argument, feed: Argument, constants: Argument) -> Tables:
     if is_empty(reactions):
         raise InputError("the reactions are missing: give the range of their table", Place("Reactions"))
     numbers = Numbers()
