@@ -106,10 +106,11 @@ def tank_error(case: Case, c: np.ndarray, exhausted: np.ndarray) -> tuple[float,
 
 def _error(case, c, exhausted, rounding):
     gone = [i for i in range(len(c)) if exhausted[i]]
+    c = np.where(c > rounding, c, 0.0)
     cut = _supplied(case, c, gone)
     idle = set(gone) - set(cut)
     cut = _apart(case, cut)
-    unknown = [i for i in range(len(c)) if c[i] > rounding or i in cut]
+    unknown = [i for i in range(len(c)) if c[i] > 0 or i in cut]
     x = [mpmath.mpf(1) / 2 if i in cut else mpmath.mpf(float(c[i])) for i in unknown]
     residual = mpmath.mpf(0)
     start = list(x)

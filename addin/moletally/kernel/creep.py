@@ -27,7 +27,7 @@ def creep(tanks: Tanks, c: Floats) -> tuple[Floats, int]:
     tau = float(tanks.tau[0])
     t, h, iterations = 0.0, FIRST * tau, 0
     largest = max(float(c.max()), float(tanks.feed.max()))
-    now, trend = np.maximum(c, 1e-24 * largest), np.zeros_like(c)
+    now, trend = c, np.zeros_like(c)
     for step in range(1, MOST_STEPS + 1):
         new, count = _euler(tanks, now, h)
         iterations += count

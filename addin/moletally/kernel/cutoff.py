@@ -19,12 +19,14 @@ from numpy.typing import NDArray
 from moletally.kernel.rates import Bound, Floats
 from moletally.kernel.structure import ZERO_ORDER, Structure
 
-__all__ = ["Laws"]
+__all__ = ["FLOOR", "STEADY_FLOOR", "Laws"]
 
 # Of the species' scale. It must be deep: beside a law of order zero that takes all that is supplied, a
 # fast one of order one half would take its share at 1e-15; and a chain carrier of half order in its own
 # end may run a reaction from a share of 1e-16.
 FLOOR = 1e-30
+# Newton's method has no steps to take care of: deep enough that what is left at it matters to nothing.
+STEADY_FLOOR = 1e-60
 # Where a law has no bound at zero there is no answer beyond; what counts is to get there in few steps.
 ENDLESS_FLOOR = 1e-15
 
@@ -49,13 +51,15 @@ class Laws:
     order: Floats
 
     @classmethod
-    def of(cls, structure: Structure, edged: Ints, scale: Floats, T: Floats, p: Floats) -> "Laws":
-        """Laws of N cases; scale, shape (N, present): what the floor of each species is measured by."""
+    def of(
+        cls, structure: Structure, edged: Ints, scale: Floats, T: Floats, p: Floats, share: float = FLOOR
+    ) -> "Laws":
+        """Laws of N cases; scale, shape (N, present): what the floors are a share of."""
         order = structure.order[:, edged]
         reading = (order < ZERO_ORDER) & (structure.nu[:, edged] >= 0)
         bound = Bound.of(structure.tape, T, p)
-        share = np.where(structure.endless[edged], ENDLESS_FLOOR, FLOOR)
-        return cls(bound, edged, share * scale[:, edged], ~reading, order)
+        shares = np.where(structure.endless[edged], max(ENDLESS_FLOOR, share), share)
+        return cls(bound, edged, shares * scale[:, edged], ~reading, order)
 
     def at(self, rows: Ints) -> "Laws":
         """The cases in `rows`."""

@@ -6,7 +6,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import Laws
+from moletally.kernel.cutoff import STEADY_FLOOR, Laws
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
 from moletally.kernel.refine import refine
@@ -89,7 +89,7 @@ def _in_decimals(
 def _gone(structure: Structure, tanks: Tanks, c: Floats) -> Bools:
     """Species that laws of order zero use up, shape (n, present).
 
-    Below the floor of those laws, or below the rounding of what they take.
+    Below the floor of those laws, which then take most of it, or below the rounding of what they take.
     """
     gone = np.zeros(c.shape, dtype=np.bool_)
     if not len(structure.starved):
@@ -100,7 +100,8 @@ def _gone(structure: Structure, tanks: Tanks, c: Floats) -> Bools:
         takes = np.maximum(-structure.nu[:, i], 0.0)
         taken = tanks.tau * (r @ (takes * flat[:, i]))
         other = tanks.tau * (r @ (takes * ~flat[:, i]))
-        gone[:, i] = (c[:, i] < tanks.laws.floor[:, k]) | (c[:, i] + other < 4.0 * EPSILON * taken)
+        below = (c[:, i] < tanks.laws.floor[:, k]) & (taken >= other)
+        gone[:, i] = below | (c[:, i] + other < 4.0 * EPSILON * taken)
     return gone
 
 
@@ -141,7 +142,7 @@ def _settle_again(
         if less.unbounded or not len(less.firing):
             continue
         size = np.broadcast_to(scale[part], (len(part), len(less.present)))
-        laws = Laws.of(less, less.starved, size, T[here], p[here])
+        laws = Laws.of(less, less.starved, size, T[here], p[here], STEADY_FLOOR)
         fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here])
         roots = newton(fewer, np.maximum(start[np.ix_(part, less.present)], tanks.nothing[here]))
         found = _settle(less, fewer, roots.c, T[here], p[here], unique=True)

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.creep import creep
-from moletally.kernel.cutoff import Laws
+from moletally.kernel.cutoff import FLOOR, STEADY_FLOOR, Laws
 from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
 from moletally.kernel.stability import growth
@@ -128,15 +128,22 @@ class _StartUp:
         rows = rows[slow]
         if not len(rows):
             return
-        now = stepper.c[rows]
-        guess = np.where(now > 0, now, NOTHING * self.least[rows])
-        roots = newton(self.tanks.at(rows), guess, most=20)
+        roots = newton(self.tanks.at(rows), self._guess(rows), most=20)
         self.rest.iterations[rows] += roots.iterations
         self.rest.work[rows] += roots.iterations
         gap = np.abs(roots.c - stepper.c[rows])
         close = roots.settled & (gap <= COINCIDES * roots.c + self.near[rows] + self.least[rows]).all(axis=1)
         if close.any():
             self._arrive(rows[close], roots.c[close])
+
+    def _guess(self, rows: Ints) -> Floats:
+        """Where Newton's method begins: species at the floor of the integrator at that of the steady balance."""
+        c = self.stepper.c[rows]
+        c = np.where(c > 0, c, NOTHING * self.least[rows])
+        low = np.zeros(c.shape, dtype=np.bool_)
+        edged = self.flow.laws.edged
+        low[:, edged] = (c[:, edged] < self.flow.laws.floor[rows]) & np.isin(edged, self.structure.starved)
+        return np.where(low, c * (STEADY_FLOOR / FLOOR), c)
 
     def _arrive(self, rows: Ints, c: Floats) -> None:
         """Take stable states; wait at unstable ones until rounding must have carried the tank away."""
@@ -154,7 +161,7 @@ class _StartUp:
     def _creep_on(self, row: Ints) -> None:
         """Take up one tank where the integrator got stuck; a state it oscillates about stays refused."""
         tanks = self.tanks.at(row)
-        far, iterations = creep(tanks, self.stepper.c[row])
+        far, iterations = creep(tanks, self._guess(row))
         self.rest.iterations[row] += iterations
         self.rest.work[row] += 2 * iterations
         if not np.isfinite(far).all():

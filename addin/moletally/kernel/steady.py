@@ -21,7 +21,7 @@ __all__ = ["CLOSED", "EPSILON", "NOTHING", "Roots", "Tanks", "newton", "polish"]
 
 MOST_ITERATIONS = 60
 MOST_FALL, DEEPEST_FALL = 0.1, 1e-8
-NOTHING = 1e-40  # of the largest concentration
+NOTHING = 1e-80  # of the largest concentration; well below STEADY_FLOOR
 DEEPEST = 1e-20  # of that: where a falling concentration stops
 SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
 STALLED = 1e-4  # rounding may keep an ill-conditioned tank from settling closer
