@@ -33,10 +33,10 @@ def feed_quantities(feed: FeedTable) -> list[Quantity]:
     return amounts + [s.flow for s in feed.streams if s.flow is not None]
 
 
-def _unit(quantity: Quantity, name: str) -> Unit:
-    """The unit of an amount; raises where it is none that a feed can have."""
+def _unit(quantity: Quantity, what: str) -> Unit:
+    """The unit of an amount, `what` in words; raises where it is none that a feed can have."""
     if quantity.unit is None:
-        raise InputError(f"the feed of {name} has no unit, but other quantities of this call have one:"
+        raise InputError(f"{what} has no unit, but other quantities of this call have one:"
                          " give units everywhere or nowhere", quantity.place)  # fmt: skip
     try:
         unit = parse_unit(quantity.unit)
@@ -66,7 +66,7 @@ def is_mass_basis(feed: FeedTable, with_units: bool) -> bool:
     without: list[tuple[str, Place]] = []
     for row in feed.species:
         for quantity in row.feed:
-            in_mass = "mass" in KINDS[_unit(quantity, row.name).dims]
+            in_mass = "mass" in KINDS[_unit(quantity, f"the feed of {row.name}").dims]
             if not in_mass:
                 molar.append(row.name)
             elif row.molar_mass is None:
@@ -109,7 +109,7 @@ class Inlet:
         return np.nan if quantity is None else to_si(quantity, dims, self.with_units, name)
 
     def _amount_unit(self, name: str, quantity: Quantity) -> Unit:
-        return _unit(quantity, name) if self.with_units else DIMENSIONLESS
+        return _unit(quantity, f"the feed of {name}") if self.with_units else DIMENSIONLESS
 
     def _molar_masses(self) -> Floats:
         return np.array([
@@ -193,7 +193,7 @@ class Inlet:
         name = f"Start of {self.feed.species[i].name}"
         if not self.with_units:
             return to_si(quantity, ONE, False, name)
-        unit = _unit(quantity, self.feed.species[i].name)
+        unit = _unit(quantity, f"Start of {self.feed.species[i].name}")
         if "flow" in KINDS[unit.dims]:
             raise InputError(f"{name} is a concentration, not a flow", quantity.place)
         return unit.to_si(quantity.value) / self._per_mole(unit, i, quantity.place)
