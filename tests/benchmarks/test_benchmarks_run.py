@@ -1,0 +1,14 @@
+"""The benchmark script runs, and its two ways agree; times are not judged."""
+
+import subprocess
+import sys
+from pathlib import Path
+
+
+def test_the_script_prints_its_table():
+    script = Path(__file__).with_name("run.py")
+    done = subprocess.run(
+        [sys.executable, str(script), "--quick"], capture_output=True, text=True, check=False
+    )
+    assert done.returncode == 0, done.stderr
+    assert done.stdout.count("\n| ") >= 14
