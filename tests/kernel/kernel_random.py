@@ -109,7 +109,7 @@ def _error(case, c, exhausted, rounding):
     c = np.where(c > rounding, c, 0.0)
     cut = _supplied(case, c, gone)
     idle = set(gone) - set(cut)
-    cut = _apart(case, cut)
+    cut = _apart(case, c, cut)
     unknown = [i for i in range(len(c)) if c[i] > 0 or i in cut]
     x = [mpmath.mpf(1) / 2 if i in cut else mpmath.mpf(float(c[i])) for i in unknown]
     residual = mpmath.mpf(0)
@@ -186,20 +186,15 @@ def _supplied(case, c, gone):
         supplied = more
 
 
-def _apart(case, cut):
-    """Species used up, less those that are held back by the very laws that hold back another.
-
-    Only the product of their factors counts then.
-    """
-    laws = {
-        i: frozenset(k for k, t in enumerate(case.terms) if t.nu[i] < 0 and t.orders.get(i) == 0.0)
-        for i in cut
-    }
-    kept = []
+def _apart(case, c, cut):
+    """Species used up, less those held back by the very laws that hold back another: one factor counts."""
+    state = [mpmath.mpf(float(x)) for x in c]
+    running = [t.rate(state) > 0 for t in case.terms]
+    kept = {}
     for i in cut:
-        if laws[i] not in [laws[k] for k in kept]:
-            kept.append(i)
-    return kept
+        laws = [k for k, t in enumerate(case.terms) if running[k] and t.nu[i] < 0 and t.orders.get(i) == 0.0]
+        kept.setdefault(tuple(laws), i)
+    return sorted(kept.values())
 
 
 def _meant(x):

@@ -68,6 +68,41 @@ def at_most_one_state(model: Model, registers: Sequence[float], all_present: boo
     all_present : bool - no species is missing from feed and products; (b) holds for positive states only
     """
     laws = _laws(model, registers)
+    nu = model.stoichiometry
+    return all(_holds(*_inside(laws, nu, group), all_present) for group in _blocks(laws, nu))
+
+
+def _blocks(laws: Laws, nu: Floats) -> list[list[int]]:
+    """Species in groups that act on each other both ways.
+
+    Upstream groups settle by themselves; with their state given, one group at a time has to be proven,
+    and a chain of many species is many small proofs.
+    """
+    acts = np.eye(nu.shape[1], dtype=np.bool_)
+    for j, row in enumerate(laws.entries):
+        acts[np.ix_([entry.species for entry in row], np.flatnonzero(nu[j]))] = True
+    for _ in range(max(nu.shape[1] - 1, 1).bit_length()):
+        acts = (acts.astype(np.intp) @ acts.astype(np.intp)) > 0
+    groups = {tuple(np.flatnonzero(row).tolist()) for row in acts & acts.T}
+    return [list(group) for group in sorted(groups)]
+
+
+def _inside(laws: Laws, nu: Floats, group: list[int]) -> tuple[Laws, Floats]:
+    """Laws and coefficients as the species of a group see them, numbered anew."""
+    number = {species: i for i, species in enumerate(group)}
+    seen = [
+        j
+        for j, row in enumerate(laws.entries)
+        if nu[j, group].any() and any(e.species in number for e in row)
+    ]
+    entries = [
+        [e._replace(species=number[e.species]) for e in laws.entries[j] if e.species in number] for j in seen
+    ]
+    return Laws(entries, laws.powers), nu[np.ix_(seen, group)]
+
+
+def _holds(laws: Laws, nu: Floats, all_present: bool) -> bool:
+    """True if no product in the sum above can be negative for the species of one group."""
     found: dict[tuple[tuple[int, ...], tuple[int, ...]], float] = {}
     level = [Matching((), (), (1,), 1.0)]
     signs_hold, seen = True, 0
@@ -78,7 +113,7 @@ def at_most_one_state(model: Model, registers: Sequence[float], all_present: boo
             return False
         if not level:
             break
-        determinant = _determinants(model.stoichiometry, level)
+        determinant = _determinants(nu, level)
         for (terms, species, signs, power), d in zip(level, determinant.tolist(), strict=True):
             if d:
                 signs_hold = signs_hold and all(s * d >= 0 for s in signs)

@@ -128,7 +128,7 @@ class _StartUp:
         rows = rows[slow]
         if not len(rows):
             return
-        roots = newton(self.tanks.at(rows), self._guess(rows), most=20)
+        roots = newton(self.tanks.at(rows), self._guess(rows), most=30)
         self.rest.iterations[rows] += roots.iterations
         self.rest.work[rows] += roots.iterations
         gap = np.abs(roots.c - stepper.c[rows])

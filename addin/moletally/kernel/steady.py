@@ -20,8 +20,8 @@ from moletally.kernel.totals import exact_coefficients
 __all__ = ["CLOSED", "EPSILON", "NOTHING", "Roots", "Tanks", "newton", "polish"]
 
 MOST_ITERATIONS = 60
-MOST_FALL, DEEPEST_FALL = 0.1, 1e-8
-NOTHING = 1e-80  # of the largest concentration; well below STEADY_FLOOR
+MOST_FALL, DEEPEST_FALL = 0.1, 1e-16
+NOTHING = 1e-200  # of the largest concentration: the root of the root of the root of it is still little
 DEEPEST = 1e-20  # of that: where a falling concentration stops
 SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
 STALLED = 1e-4  # rounding may keep an ill-conditioned tank from settling closer
