@@ -80,7 +80,8 @@ def _blocks(laws: Laws, nu: Floats) -> list[list[int]]:
     """
     acts = np.eye(nu.shape[1], dtype=np.bool_)
     for j, row in enumerate(laws.entries):
-        acts[np.ix_([entry.species for entry in row], np.flatnonzero(nu[j]))] = True
+        causes = np.array([entry.species for entry in row], dtype=np.intp)
+        acts[np.ix_(causes, np.flatnonzero(nu[j]))] = True
     for _ in range(max(nu.shape[1] - 1, 1).bit_length()):
         acts = (acts.astype(np.intp) @ acts.astype(np.intp)) > 0
     groups = {tuple(np.flatnonzero(row).tolist()) for row in acts & acts.T}
