@@ -1,14 +1,14 @@
-"""Laws near zero concentrations, made fit for integrators.
+"""Laws near zero concentrations, made fit for integrators and for Newton's method.
 
-Below a floor delta a law r of order q in species i is continued as
+Within a depth delta of zero a law r of order q < 1 in a species i that it consumes is continued as
 
-    r(max(c_i, delta)) g_q(c_i/delta),   g_q(u) = u ((2 - q) + (q - 1) u)
+    r(c_i + delta) c_i/(c_i + delta)
 
-which is zero at zero, has no corner at delta and is exact for q = 1 and q = 2. A law of order zero
-that consumes i has g = u and settles where it takes what is supplied: all such laws are cut by one
-common factor u. (The parabola would be flat at delta, and an integrator lost where supply and demand
-cross: a corner is passed once.)
-A law that only reads i (order zero or less, not consuming it) keeps its value at the floor.
+which is zero at zero, exact for q = 1, and for c_i >> delta differs from r by delta/c_i. A law of order
+zero settles where it takes what is supplied, all such laws of a species cut by one common factor; one
+of order one half fades out smoothly. (Joining a parabola or a line to r at a floor is simpler and
+fails: integrators get lost at the seam when supply comes to match demand there.) A law that only reads
+i, of order zero or less, is r(c_i + delta); one of order q > 1 has the factor to the power q: exact.
 """
 
 from dataclasses import dataclass
@@ -19,16 +19,18 @@ from numpy.typing import NDArray
 from moletally.kernel.rates import Bound, Floats
 from moletally.kernel.structure import ZERO_ORDER, Structure
 
-__all__ = ["FLOOR", "STEADY_FLOOR", "Laws"]
+__all__ = ["DEPTH", "LOW", "STEADY_DEPTH", "Laws"]
 
-# Of the species' scale. It must be deep: beside a law of order zero that takes all that is supplied, a
-# fast one of order one half would take its share at 1e-15; and a chain carrier of half order in its own
-# end may run a reaction from a share of 1e-16.
-FLOOR = 1e-30
-# Newton's method has no steps to take care of: deep enough that what is left at it matters to nothing.
-STEADY_FLOOR = 1e-60
+# Of the largest concentration. It must be small: beside a law of order zero that takes all that is
+# supplied, a fast one of order one half would take its share at 1e-15; and a chain carrier of half order
+# in its own end may run a reaction from a share of 1e-16.
+DEPTH = 1e-30
+# Newton's method has no steps to take care of: deep enough that what is left there matters to nothing.
+STEADY_DEPTH = 1e-60
 # Where a law has no bound at zero there is no answer beyond; what counts is to get there in few steps.
-ENDLESS_FLOOR = 1e-15
+ENDLESS_DEPTH = 1e-15
+FAR = 1e16  # depths from zero at which the difference is rounding
+LOW = 1e6  # depths from zero within which a law of order zero no longer gets all it asks for
 
 Ints = NDArray[np.intp]
 
@@ -38,77 +40,83 @@ class Laws:
     """The running terms of a structure, cut near zero of some species.
 
     bound : Bound - of n cases
-    edged : ndarray - positions of the species that are cut
-    floor : ndarray, shape (n, edged) - delta [mol/m3]
-    factor : bool ndarray, shape (terms, edged) - where g applies
-    order : ndarray, shape (terms, edged)
+    edged : ndarray - positions of the species whose laws are cut
+    depth : ndarray, shape (n, edged) - delta [mol/m3]
+    power : ndarray, shape (terms, edged) - of the factor; 0 where a law only reads the species
     """
 
     bound: Bound
     edged: Ints
-    floor: Floats
-    factor: NDArray[np.bool_]
-    order: Floats
+    depth: Floats
+    power: Floats
 
     @classmethod
     def of(
-        cls, structure: Structure, edged: Ints, scale: Floats, T: Floats, p: Floats, share: float = FLOOR
+        cls, structure: Structure, edged: Ints, scale: Floats, T: Floats, p: Floats, share: float = DEPTH
     ) -> "Laws":
-        """Laws of N cases; scale, shape (N, present): what the floors are a share of."""
+        """Laws of N cases; scale, shape (N, present): what the depths are a share of."""
         order = structure.order[:, edged]
         reading = (order < ZERO_ORDER) & (structure.nu[:, edged] >= 0)
         bound = Bound.of(structure.tape, T, p)
-        shares = np.where(structure.endless[edged], max(ENDLESS_FLOOR, share), share)
-        return cls(bound, edged, shares * scale[:, edged], ~reading, order)
+        shares = np.where(structure.endless[edged], max(ENDLESS_DEPTH, share), share)
+        return cls(bound, edged, shares * scale[:, edged], np.where(reading, 0.0, np.maximum(order, 1.0)))
 
     def at(self, rows: Ints) -> "Laws":
         """The cases in `rows`."""
-        return Laws(self.bound.at(rows), self.edged, self.floor[rows], self.factor, self.order)
+        return Laws(self.bound.at(rows), self.edged, self.depth[rows], self.power)
+
+    def low(self, c: Floats) -> NDArray[np.bool_]:
+        """Where c, shape (n, present), is as good as zero for a law of order zero; shape (n, edged)."""
+        return np.asarray(c[:, self.edged] < LOW * self.depth)
 
     def rates(self, c: Floats) -> Floats:
         """r, shape (n, terms), at c, shape (n, present)."""
-        if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
+        if self._far(c):
             return self.bound.rates(c)
         return np.asarray(self.bound.rates(self._lifted(c)) * self._factors(c)[0])
 
     def slopes(self, c: Floats) -> tuple[Floats, Floats]:
         """r and its exact derivatives dr/dc, shape (n, terms, present)."""
-        if not len(self.edged) or not (c[:, self.edged] < self.floor).any():
+        if self._far(c):
             return self.bound.slopes(c)
         factor, slope = self._factors(c)
         r, v = self.bound.slopes(self._lifted(c))
-        v = v * factor[:, :, None]
-        below = (c[:, self.edged] < self.floor)[:, None, :]
-        v[:, :, self.edged] = np.where(below, r[:, :, None] * slope, v[:, :, self.edged])
+        below = np.zeros(c.shape, dtype=np.bool_)
+        below[:, self.edged] = c[:, self.edged] < 0
+        v = np.where(below[:, None, :], 0.0, v) * factor[:, :, None]
+        v[:, :, self.edged] += r[:, :, None] * slope
         return r * factor, v
 
     def strict(self, c: Floats) -> Floats:
         """r with nan where a root of a negative number is taken: for checking answers."""
-        return self.bound.rates(self._lifted(c) if len(self.edged) else c, strict=True)
+        return self.bound.rates(self._lifted(c), strict=True)
+
+    def _far(self, c: Floats) -> bool:
+        return not len(self.edged) or not bool((c[:, self.edged] < FAR * self.depth).any())
 
     def _lifted(self, c: Floats) -> Floats:
         lifted: Floats = c.copy()
-        lifted[:, self.edged] = np.maximum(c[:, self.edged], self.floor)
+        lifted[:, self.edged] = np.maximum(c[:, self.edged], 0.0) + self.depth
         return lifted
 
     def _factors(self, c: Floats) -> tuple[Floats, Floats]:
-        """What the laws at the floor are multiplied by, shape (n, terms), and its derivatives by c.
+        """What the lifted laws are multiplied by, shape (n, terms), and its derivatives by c of edged species.
 
-        A little below zero g goes on as a straight line, so that a law draws its species back. A law
-        stops where two of its species are negative: their product would drive both further away.
+        A little below zero c/(c + delta) goes on as a straight line, so that a law draws its species back.
+        A law stops where two of its species are negative: their product would drive both further away.
         """
-        u = np.minimum(c[:, self.edged] / self.floor, 1.0)[:, None, :]
-        q, some = self.order, np.maximum(u, 0.0)
+        edge, depth = c[:, self.edged], self.depth
+        negative = edge < 0
+        whole = np.where(negative, depth, edge + depth)
+        share = (edge / whole)[:, None, :]
+        rise = (depth / whole**2)[:, None, :]
+        q = self.power
+        some = np.maximum(share, 0.0)
         with np.errstate(all="ignore"):
-            steep = np.where(some > 0, some ** np.maximum(q, 2.0), 0.0)
-            g = np.where(q > 2, steep, u * ((2 - q) + (q - 1) * some))
-            dg = np.where(q > 2, q * steep / np.where(some > 0, some, 1.0), (2 - q) + 2 * (q - 1) * some)
-            flat = np.abs(q) < ZERO_ORDER
-            g, dg = np.where(flat, u, g), np.where(flat, 1.0, dg)
-        applies = self.factor & (u < 1)
-        runs = (applies & (u < 0)).sum(axis=2) < 2
-        g, dg = np.where(applies, g, 1.0), np.where(applies, dg, 0.0)
+            g = np.where(q == 1, share, some**q)
+            dg = np.where(q == 1, 1.0, np.where(q > 1, q * some ** (q - 1.0), 0.0)) * rise
+        runs = ((q > 0) & negative[:, None, :]).sum(axis=2) < 2
         slope = np.empty_like(g)
         for k in range(len(self.edged)):
             slope[:, :, k] = np.delete(g, k, axis=2).prod(axis=2) * dg[:, :, k]
-        return g.prod(axis=2) * runs, slope * runs[:, :, None] / self.floor[:, None, :]
+        return g.prod(axis=2) * runs, slope * runs[:, :, None]

@@ -37,6 +37,15 @@ class Flow:
             out += (self.feed - c) * self.exchange
         return out
 
+    def balance(self, c: Floats) -> tuple[Floats, Floats]:
+        """dc/dt and the sum of the sizes of its terms, shape (n, S)."""
+        r = self.laws.rates(c)
+        net, gross = r @ self.nu, np.abs(r) @ np.abs(self.nu)
+        if self.feed is not None and self.exchange is not None:
+            net += (self.feed - c) * self.exchange
+            gross += (self.feed + np.abs(c)) * self.exchange
+        return net, gross
+
     def linear(self, c: Floats) -> tuple[Floats, Floats]:
         """dc/dt and its Jacobian, shape (n, S, S)."""
         r, v = self.laws.slopes(c)

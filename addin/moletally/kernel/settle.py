@@ -6,7 +6,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import STEADY_FLOOR, Laws
+from moletally.kernel.cutoff import LOW, STEADY_DEPTH, Laws
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
 from moletally.kernel.refine import refine
@@ -81,7 +81,7 @@ def _in_decimals(
     structure: Structure, tanks: Tanks, k: int, c: Floats, T: Floats, p: Floats
 ) -> Floats | None:
     laws = tanks.laws
-    if len(laws.edged) and (c[laws.edged] < laws.floor[k]).any():
+    if (c[laws.edged] < LOW * laws.depth[k]).any():
         return None
     return refine(structure.tape, tanks.nu, c, tanks.feed[k], float(tanks.tau[k]), float(T[k]), p[k])
 
@@ -89,18 +89,18 @@ def _in_decimals(
 def _gone(structure: Structure, tanks: Tanks, c: Floats) -> Bools:
     """Species that laws of order zero use up, shape (n, present).
 
-    Below the floor of those laws, which then take most of it, or below the rounding of what they take.
+    So low that those laws are cut and take most of it, or below the rounding of what they take.
     """
     gone = np.zeros(c.shape, dtype=np.bool_)
     if not len(structure.starved):
         return gone
-    r = tanks.laws.rates(c)
+    r, low = tanks.laws.rates(c), tanks.laws.low(c)
     flat = np.abs(structure.order) < ZERO_ORDER
     for k, i in enumerate(tanks.laws.edged.tolist()):
         takes = np.maximum(-structure.nu[:, i], 0.0)
         taken = tanks.tau * (r @ (takes * flat[:, i]))
         other = tanks.tau * (r @ (takes * ~flat[:, i]))
-        below = (c[:, i] < tanks.laws.floor[:, k]) & (taken >= other)
+        below = low[:, k] & (taken >= other)
         gone[:, i] = below | (c[:, i] + other < 4.0 * EPSILON * taken)
     return gone
 
@@ -116,7 +116,7 @@ def _totals_lost(structure: Structure, c: Floats, feed: Floats) -> Bools:
 def _without(structure: Structure, gone: tuple[int, ...]) -> Model | None:
     """The model less the terms that vanish with the species used up; None if there are none.
 
-    At the floor such a term still takes a share, of order one half a share of 1e-15 times its constant.
+    Near zero such a term still takes a share, one of order one half 1e-30 times its constant.
     """
     keep = ~(structure.order[:, list(gone)] > ZERO_ORDER).any(axis=1)
     if keep.all():
@@ -142,7 +142,7 @@ def _settle_again(
         if less.unbounded or not len(less.firing):
             continue
         size = np.broadcast_to(scale[part], (len(part), len(less.present)))
-        laws = Laws.of(less, less.starved, size, T[here], p[here], STEADY_FLOOR)
+        laws = Laws.of(less, less.starved, size, T[here], p[here], STEADY_DEPTH)
         fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here])
         roots = newton(fewer, np.maximum(start[np.ix_(part, less.present)], tanks.nothing[here]))
         found = _settle(less, fewer, roots.c, T[here], p[here], unique=True)

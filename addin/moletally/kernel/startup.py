@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.creep import creep
-from moletally.kernel.cutoff import FLOOR, STEADY_FLOOR, Laws
+from moletally.kernel.cutoff import DEPTH, LOW, STEADY_DEPTH, Laws
 from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
 from moletally.kernel.stability import growth
@@ -70,7 +70,7 @@ class _StartUp:
         scale = np.broadcast_to(largest, start.shape)
         self.least = ABSOLUTE * scale
         self.near = np.zeros(start.shape)
-        self.near[:, laws.edged] = 2.0 * laws.floor
+        self.near[:, laws.edged] = LOW * laws.depth
         self.flow = Flow(laws, tanks.nu, tanks.feed, 1.0 / tanks.tau[:, None])
         tolerance = Tolerance.of(structure, laws, scale, (RELATIVE, RELATIVE))
         exchange = 1.0 / tanks.tau
@@ -137,13 +137,13 @@ class _StartUp:
             self._arrive(rows[close], roots.c[close])
 
     def _guess(self, rows: Ints) -> Floats:
-        """Where Newton's method begins: species at the floor of the integrator at that of the steady balance."""
+        """Where Newton's method begins: cut species as deep below the integrator's depth as they are in it."""
         c = self.stepper.c[rows]
         c = np.where(c > 0, c, NOTHING * self.least[rows])
         low = np.zeros(c.shape, dtype=np.bool_)
         edged = self.flow.laws.edged
-        low[:, edged] = (c[:, edged] < self.flow.laws.floor[rows]) & np.isin(edged, self.structure.starved)
-        return np.where(low, c * (STEADY_FLOOR / FLOOR), c)
+        low[:, edged] = self.flow.laws.at(rows).low(c) & np.isin(edged, self.structure.starved)
+        return np.where(low, c * (STEADY_DEPTH / DEPTH), c)
 
     def _arrive(self, rows: Ints, c: Floats) -> None:
         """Take stable states; wait at unstable ones until rounding must have carried the tank away."""
@@ -175,7 +175,7 @@ class _StartUp:
         if not len(laws.edged) or not len(rows):
             return
         ends = structure.endless[laws.edged]
-        gone = ((self.stepper.c[np.ix_(rows, laws.edged)] < laws.floor[rows]) & ends).any(axis=1)
+        gone = (laws.at(rows).low(self.stepper.c[rows]) & ends).any(axis=1)
         self.rest.status[rows[gone]] = Status.UNBOUNDED_AT_ZERO
         self.stepper.active[rows[gone]] = False
 

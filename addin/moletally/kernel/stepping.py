@@ -3,7 +3,7 @@
 A mesh depends on where it starts and on nothing else: not on where the answer is wanted, not on the
 other cases. Whoever asks for a point in between takes one shorter step from the mesh point before it.
 Integration starts explicit; where stability rather than accuracy limits the step, or a species sinks
-below the floor of its laws, it goes on with the stiff method.
+to where its laws are cut, it goes on with the stiff method.
 """
 
 from dataclasses import dataclass
@@ -116,7 +116,7 @@ class Stepper:
         t, c, h = self.t[rows], self.c[rows], self.h[rows]
         with np.errstate(all="ignore"):
             new, error, stiffness = METHODS[method].step(flow, c, h, tolerance.least)
-            size = tolerance.missed(error, c, new, method).max(axis=1)
+            size = tolerance.missed(flow, error, c, new, method).max(axis=1)
             finite = np.isfinite(size) & np.isfinite(new).all(axis=1)
             size = np.where(finite, np.maximum(size, 1e-10), np.inf)
             factor = SAFETY * size ** (-1.0 / (METHODS[method].error_order + 1))
@@ -155,7 +155,7 @@ class Stepper:
         c = self.c[np.ix_(rows, laws.edged)]
         f = self.flow.at(rows).slope(self.c[rows])[:, laws.edged]
         with np.errstate(all="ignore"):
-            left = np.where((f < 0) & (c > laws.floor[rows]), -c / f, np.inf).min(axis=1)
+            left = np.where((f < 0) & (c > laws.depth[rows]), -c / f, np.inf).min(axis=1)
         self.h[rows] = np.where(left < h, AHEAD * left, self.h[rows])
 
     def _pass_time(self, rows: Ints, h: Floats) -> None:
@@ -170,7 +170,7 @@ class Stepper:
         stiff = self._stiff_steps[rows] >= STIFF_STEPS
         laws = self.flow.laws
         if len(laws.edged):
-            stiff |= moved & (self.c[np.ix_(rows, laws.edged)] < laws.floor[rows]).any(axis=1)
+            stiff |= moved & laws.at(rows).low(self.c[rows]).any(axis=1)
         self.mode[rows[stiff]] = STIFF
 
     def _look_for_trouble(self, rows: Ints, fine: NDArray[np.bool_], finite: NDArray[np.bool_]) -> None:

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import STEADY_FLOOR, Laws
+from moletally.kernel.cutoff import STEADY_DEPTH, Laws
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
 from moletally.kernel.settle import Settled, settle
@@ -135,7 +135,7 @@ class _Group:
         largest = np.maximum(feed, start).max(axis=1, keepdims=True)
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
         tanks = Tanks(
-            Laws.of(structure, structure.starved, scale, T, p, STEADY_FLOOR),
+            Laws.of(structure, structure.starved, scale, T, p, STEADY_DEPTH),
             structure.nu,
             c.copy(),
             tau,

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import Laws
+from moletally.kernel.cutoff import LOW, Laws
 from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
 from moletally.kernel.structure import Structure
@@ -14,26 +14,31 @@ __all__ = ["ABSOLUTE", "NOTHING", "Tolerance"]
 
 # Shares of the largest concentration.
 ABSOLUTE = 1e-25  # trace species are followed relatively
-# A species that laws of order zero take away as it comes is the small difference of large rates; where
-# supply comes to exceed them again its size is their rounding for a while.
-STARVED = 1e-18
 NOTHING = 1e-40  # shown as zero
+# A species that laws of order zero take away as it comes is the small difference of large rates: where
+# supply comes to match them its size is their rounding.
+STARVED = 1e-18
+ROUNDING = 1e-15  # of half order: the root of its concentration is such a difference
+FALLS = 1e-6  # of all rates that make or take it: a species that loses more is on its way to zero
+SHARE_OF_DEPTH = 0.1
 LEAK = 10.0  # times the relative error, of the largest concentration
-AT_FLOOR = 10.0  # times `least`, which is a tenth of the floor
 
 
 @dataclass(frozen=True, slots=True)
 class Tolerance:
     """Accepted error of a step: relative (explicit and stiff) times the concentration + least.
 
-    blurred : ndarray, shape (n, S) - added for species that stand at the floor of their laws [mol/m3]
     least : ndarray, shape (n, S) - size of a concentration that is as good as none; how far below zero
-        a step may end
+        a step may end [mol/m3]
+    scale : ndarray, shape (n, S) - the largest concentration
+    ends, starved : bool ndarray, shape (S,) - species that laws of order below one use up; of order zero
     """
 
     relative: tuple[float, float]
     least: Floats
-    blurred: Floats
+    scale: Floats
+    ends: NDArray[np.bool_]
+    starved: NDArray[np.bool_]
 
     @classmethod
     def of(
@@ -41,36 +46,40 @@ class Tolerance:
     ) -> "Tolerance":
         """Tolerances of n vessels; scale, shape (n, S)."""
         least = ABSOLUTE * scale
-        ends = structure.finite_end[laws.edged]
-        least[:, laws.edged[ends]] = 0.1 * laws.floor[:, ends]
-        blurred = np.zeros_like(least)
-        blurred[:, structure.starved] = STARVED * scale[:, structure.starved]
-        return cls(relative, least, blurred)
+        ends = structure.finite_end
+        near = ends[laws.edged]
+        least[:, laws.edged[near]] = SHARE_OF_DEPTH * laws.depth[:, near]
+        starved = np.isin(np.arange(scale.shape[1]), structure.starved)
+        return cls(relative, least, scale, ends, starved)
 
     def at(self, rows: NDArray[np.intp]) -> "Tolerance":
         """The vessels in `rows`."""
-        return Tolerance(self.relative, self.least[rows], self.blurred[rows])
+        return Tolerance(self.relative, self.least[rows], self.scale[rows], self.ends, self.starved)
 
-    def missed(self, error: Floats, before: Floats, after: Floats, method: int) -> Floats:
+    def missed(self, flow: Flow, error: Floats, before: Floats, after: Floats, method: int) -> Floats:
         """Errors in units of what is accepted, shape (n, S)."""
         size = np.maximum(np.abs(before), np.abs(after))
-        # Not on the way to the floor: a step that is not sure to end there would be tried for ever.
-        extra = np.where(self._at_floor(before), self.blurred, 0.0)
-        return np.abs(error) / (self.least + extra + self.relative[method] * size)
+        accepted = self.least + self.relative[method] * size
+        if self.ends.any():
+            accepted = accepted + self.ends * ROUNDING * np.sqrt(size * self.scale)
+        if self.starved.any():
+            # Not on the way to zero: a step that is not sure to end there would be tried for ever.
+            net, gross = flow.balance(before)
+            accepted = accepted + self.starved * (net >= -FALLS * gross) * STARVED * self.scale
+        return np.abs(error) / accepted
 
-    def _at_floor(self, c: Floats) -> NDArray[np.bool_]:
-        return np.asarray((self.blurred > 0) & (c < AT_FLOOR * self.least))
+    def _low(self, c: Floats) -> NDArray[np.bool_]:
+        return np.asarray(self.starved & (c < LOW / SHARE_OF_DEPTH * self.least))
 
     def leaked(self, flow: Flow, before: Floats, after: Floats, h: Floats) -> Floats | None:
-        """What species at the floor still gain or lose at the end of a step, in units of what is accepted.
+        """What species near zero still gain or lose at the end of a step, in units of what is accepted.
 
-        Shape (n,), None if there are none. A Rosenbrock method takes a law at the floor for a stiff
-        spring; where supply has come to exceed it the law gives way, and the method would not notice that
-        the excess of a whole step is gone.
+        Shape (n,), None if there are none. A Rosenbrock method takes a law of order zero that is cut for a
+        stiff spring; where supply has come to exceed it the law gives way, and the method would not notice
+        that the excess of a whole step is gone.
         """
-        low = self._at_floor(before)
+        low = self._low(before)
         if not low.any():
             return None
-        allowed = LEAK * self.relative[1] * self.blurred / STARVED
-        gain = np.abs(flow.slope(after)) * h[:, None]
-        return np.asarray(np.where(low, gain / np.where(low, allowed, 1.0), 0.0).max(axis=1))
+        gain = np.abs(flow.slope(after)) * h[:, None] / (LEAK * self.relative[1] * self.scale)
+        return np.asarray(np.where(low, gain, 0.0).max(axis=1))

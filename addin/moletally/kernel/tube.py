@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import Laws
+from moletally.kernel.cutoff import LOW, Laws
 from moletally.kernel.flow import Flow
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
@@ -125,7 +125,7 @@ class _Run:
         """Which species this stride has brought to nothing, and whether a law has no bound there."""
         structure, rows, laws = self.structure, stride.rows, self.flow.laws
         edged = structure.edged
-        now = self.stepper.c[np.ix_(rows, edged)] < laws.floor[rows]
+        now = laws.at(rows).low(self.stepper.c[rows])
         species = structure.present[edged]
         ends = structure.finite_end[edged]
         known = self.exhausted_at[np.ix_(rows, species)]
@@ -161,7 +161,7 @@ class _Run:
             with np.errstate(all="ignore"):
                 new, error, _ = METHODS[method].step(flow, c, h, tolerance.least)
             # A shorter step is a better one, but for fast transients that the long one damps.
-            fine = (tolerance.missed(error, c, new, method) <= 4.0) & (new >= -tolerance.least)
+            fine = (tolerance.missed(flow, error, c, new, method) <= 4.0) & (new >= -tolerance.least)
             leak = tolerance.leaked(flow, c, new, h)
             poor = ~fine.all(axis=1) if leak is None else ~fine.all(axis=1) | ~(leak <= 4.0)
             for k in np.flatnonzero(poor):
@@ -175,9 +175,9 @@ class _Run:
         """Settle the status of every point; failed ones become nan, vanished species zero."""
         structure = self.structure
         c = self.points[:, :, structure.present]
-        edged, floor = structure.edged, self.flow.laws.floor[:, None, :]
+        edged, depth = structure.edged, self.flow.laws.depth[:, None, :]
         if len(edged):
-            gone = (c[:, :, edged] < floor) & structure.finite_end[edged] & (self.asked > 0)[:, :, None]
+            gone = (c[:, :, edged] < LOW * depth) & structure.finite_end[edged] & (self.asked > 0)[:, :, None]
             c[:, :, edged] = np.where(gone, 0.0, c[:, :, edged])
         least = self.tolerance.least[:, None, :]
         negative = (c < -least).any(axis=2)
