@@ -50,5 +50,7 @@ def _euler(tanks: Tanks, c: Floats, h: float) -> tuple[Floats, int]:
     tau = float(tanks.tau[0])
     rate = 1.0 / h + 1.0 / tau
     mixed = (c / h + tanks.feed / tau) / rate
-    roots = newton(Tanks(tanks.laws, tanks.nu, mixed, np.array([1.0 / rate]), tanks.nothing), c, most=30)
+    roots = newton(
+        Tanks(tanks.laws, tanks.coefficients, mixed, np.array([1.0 / rate]), tanks.nothing), c, most=30
+    )
     return (roots.c if roots.settled[0] else np.full_like(c, np.nan)), int(roots.iterations[0])

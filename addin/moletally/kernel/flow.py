@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.kernel.coefficients import Coefficients
 from moletally.kernel.cutoff import Laws
 from moletally.kernel.rates import Floats
 
@@ -15,24 +16,24 @@ __all__ = ["Flow"]
 class Flow:
     """n vessels: tubes (no exchange) or tanks in their start-up.
 
-    laws : Laws - of n cases; nu : ndarray, shape (terms, S)
+    laws : Laws - of n cases; coefficients : Coefficients - of their terms
     feed : ndarray, shape (n, S), or None for tubes; exchange : ndarray, shape (n, 1) - 1/tau [1/s]
     """
 
     laws: Laws
-    nu: Floats
+    coefficients: Coefficients
     feed: Floats | None = None
     exchange: Floats | None = None
 
     def at(self, rows: NDArray[np.intp]) -> "Flow":
         """The cases in `rows`."""
         if self.feed is None or self.exchange is None:
-            return Flow(self.laws.at(rows), self.nu)
-        return Flow(self.laws.at(rows), self.nu, self.feed[rows], self.exchange[rows])
+            return Flow(self.laws.at(rows), self.coefficients)
+        return Flow(self.laws.at(rows), self.coefficients, self.feed[rows], self.exchange[rows])
 
     def slope(self, c: Floats) -> Floats:
         """dc/dt, shape (n, S)."""
-        out: Floats = self.laws.rates(c) @ self.nu
+        out = self.coefficients.gain(self.laws.rates(c))
         if self.feed is not None and self.exchange is not None:
             out += (self.feed - c) * self.exchange
         return out
@@ -40,7 +41,7 @@ class Flow:
     def balance(self, c: Floats) -> tuple[Floats, Floats]:
         """dc/dt and the sum of the sizes of its terms, shape (n, S)."""
         r = self.laws.rates(c)
-        net, gross = r @ self.nu, np.abs(r) @ np.abs(self.nu)
+        net, gross = self.coefficients.gain(r), self.coefficients.traffic(r)
         if self.feed is not None and self.exchange is not None:
             net += (self.feed - c) * self.exchange
             gross += (self.feed + np.abs(c)) * self.exchange
@@ -49,8 +50,8 @@ class Flow:
     def linear(self, c: Floats) -> tuple[Floats, Floats]:
         """dc/dt and its Jacobian, shape (n, S, S)."""
         r, v = self.laws.slopes(c)
-        out: Floats = r @ self.nu
-        jacobian = np.matmul(self.nu.T, v)
+        out = self.coefficients.gain(r)
+        jacobian = self.coefficients.jacobian(v)
         if self.feed is not None and self.exchange is not None:
             out += (self.feed - c) * self.exchange
             diagonal = np.arange(c.shape[1])

@@ -83,7 +83,7 @@ def _in_decimals(
     laws = tanks.laws
     if (c[laws.edged] < LOW * laws.depth[k]).any():
         return None
-    return refine(structure.tape, tanks.nu, c, tanks.feed[k], float(tanks.tau[k]), float(T[k]), p[k])
+    return refine(structure.tape, structure.nu, c, tanks.feed[k], float(tanks.tau[k]), float(T[k]), p[k])
 
 
 def _gone(structure: Structure, tanks: Tanks, c: Floats) -> Bools:
@@ -143,7 +143,9 @@ def _settle_again(
             continue
         size = np.broadcast_to(scale[part], (len(part), len(less.present)))
         laws = Laws.of(less, less.starved, size, T[here], p[here], STEADY_DEPTH)
-        fewer = Tanks(laws, less.nu, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here])
+        fewer = Tanks(
+            laws, less.coefficients, feed[np.ix_(part, less.present)], tanks.tau[here], tanks.nothing[here]
+        )
         roots = newton(fewer, np.maximum(start[np.ix_(part, less.present)], tanks.nothing[here]))
         found = _settle(less, fewer, roots.c, T[here], p[here], unique=True)
         good = roots.settled & (found.status == Status.OK) & ~(gone[part] & (found.c != 0)).any(axis=1)

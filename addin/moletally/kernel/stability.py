@@ -20,7 +20,7 @@ def growth(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
     """
     _, v = tanks.laws.slopes(c)
     with np.errstate(all="ignore"):
-        matrix = np.matmul(tanks.nu.T, v) * (c[:, None, :] / c[:, :, None])
+        matrix = tanks.coefficients.jacobian(v) * (c[:, None, :] / c[:, :, None])
         return _largest(matrix, 1.0 / tanks.tau)
 
 

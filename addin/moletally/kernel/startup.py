@@ -71,7 +71,7 @@ class _StartUp:
         self.least = ABSOLUTE * scale
         self.near = np.zeros(start.shape)
         self.near[:, laws.edged] = LOW * laws.depth
-        self.flow = Flow(laws, tanks.nu, tanks.feed, 1.0 / tanks.tau[:, None])
+        self.flow = Flow(laws, tanks.coefficients, tanks.feed, 1.0 / tanks.tau[:, None])
         tolerance = Tolerance.of(structure, laws, scale, (RELATIVE, RELATIVE))
         exchange = 1.0 / tanks.tau
         totals = Totals.of(structure.conserved[:, structure.present], start, tanks.feed, exchange)

@@ -11,6 +11,7 @@ from fractions import Fraction
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.kernel.coefficients import Coefficients
 from moletally.kernel.cutoff import Laws
 from moletally.kernel.exact import balance
 from moletally.kernel.linear import inverse, solve
@@ -34,29 +35,31 @@ Ints = NDArray[np.intp]
 
 @dataclass(frozen=True, slots=True)
 class Tanks:
-    """n tanks of one structure: laws of its S present species, nu (terms, S), feed (n, S), tau (n,).
+    """n tanks of one structure: laws and coefficients of its S present species, feed (n, S), tau (n,).
 
     nothing : ndarray, shape (n, 1) - below it a concentration is as good as none [mol/m3]; it is not
         followed further (there are such species: what would be made of one that is used up)
     """
 
     laws: Laws
-    nu: Floats
+    coefficients: Coefficients
     feed: Floats
     tau: Floats
     nothing: Floats
 
     def at(self, rows: Ints) -> "Tanks":
         """The cases in `rows`."""
-        return Tanks(self.laws.at(rows), self.nu, self.feed[rows], self.tau[rows], self.nothing[rows])
+        return Tanks(
+            self.laws.at(rows), self.coefficients, self.feed[rows], self.tau[rows], self.nothing[rows]
+        )
 
     def linear(self, c: Floats) -> tuple[Floats, Floats, Floats]:
         """F (n, S), its terms' sum of sizes (n, S), and (I - tau nu^T V) diag(c) (n, S, S)."""
         r, v = self.laws.slopes(c)
         tau = self.tau[:, None]
-        f = self.feed - c + tau * (r @ self.nu)
-        terms = self.feed + c + tau * (np.abs(r) @ np.abs(self.nu))
-        matrix = np.matmul(self.nu.T, v) * (-tau[:, :, None] * c[:, None, :])
+        f = self.feed - c + tau * self.coefficients.gain(r)
+        terms = self.feed + c + tau * self.coefficients.traffic(r)
+        matrix = self.coefficients.jacobian(v) * (-tau[:, :, None] * c[:, None, :])
         diagonal = np.arange(c.shape[1])
         matrix[:, diagonal, diagonal] += c
         return f, terms, matrix
@@ -127,7 +130,7 @@ def polish(tanks: Tanks, c: Floats) -> Polished:
         error = EPSILON * _largest(np.matmul(np.abs(solver), terms[:, :, None])[:, :, 0], there)
         residual = _largest(np.abs(f) / terms, there)
         r = tanks.laws.rates(c)
-        sway = np.matmul(solver, tanks.nu.T) * (tanks.tau[:, None] * np.abs(r))[:, None, :]
+        sway = np.matmul(solver, tanks.coefficients.nu.T) * (tanks.tau[:, None] * np.abs(r))[:, None, :]
         fed = np.matmul(np.abs(solver), (tanks.feed)[:, :, None])[:, :, 0]
         condition = _largest(np.abs(sway).sum(axis=2) + fed, there)
         rough = np.flatnonzero(~(error <= GOOD))
@@ -145,12 +148,12 @@ def _largest(values: Floats, there: NDArray[np.bool_]) -> Floats:
 
 def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
     """c, residual, and the last relative change."""
-    finer = _finer(tanks.nu)
+    finer = _finer(tanks.coefficients.nu)
     last = np.full(len(c), np.inf)
     residual = np.full(len(c), np.inf)
     for _ in range(6):
         r = tanks.laws.rates(c)
-        f = balance(tanks.nu, finer, tanks.tau[:, None] * r, tanks.feed, c)
+        f = balance(tanks.coefficients.nu, finer, tanks.tau[:, None] * r, tanks.feed, c)
         _, terms, matrix = tanks.linear(c)
         y = solve(matrix, f)
         there = c > tanks.nothing

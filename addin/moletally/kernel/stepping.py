@@ -32,6 +32,7 @@ AHEAD = 0.98  # of the way to zero
 FIRST_CHANGE = 0.01  # a first step may change what is there by a hundredth
 STIFF_LIMIT = 3.0  # |h lambda|: accuracy asks for less than 1, stability for less than 6
 STIFF_STEPS = 12.0  # that many such steps, accepted or not, are no accident
+PATIENCE = 500  # explicit steps after which something must be stiff that does not show in the estimate
 PARDON = 0.25  # what a step that is not so limited takes off the count
 SMALLEST = 1e-33  # of the time gone; time is kept to twice the digits, as laws that end need small steps
 RUNAWAY = 1e6  # growth beyond which a vanishing step means that concentrations run away
@@ -167,7 +168,7 @@ class Stepper:
     def _look_for_stiffness(self, rows: Ints, limited: NDArray[np.bool_], moved: NDArray[np.bool_]) -> None:
         count = self._stiff_steps[rows]
         self._stiff_steps[rows] = np.where(limited, count + 1.0, np.maximum(count - PARDON, 0.0))
-        stiff = self._stiff_steps[rows] >= STIFF_STEPS
+        stiff = (self._stiff_steps[rows] >= STIFF_STEPS) | (self.steps[rows] >= PATIENCE)
         laws = self.flow.laws
         if len(laws.edged):
             stiff |= moved & laws.at(rows).low(self.c[rows]).any(axis=1)

@@ -12,6 +12,7 @@ from functools import cached_property, lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.kernel.coefficients import Coefficients
 from moletally.kernel.injectivity import at_most_one_state
 from moletally.kernel.limits import Leading, leading
 from moletally.kernel.program import Model, Op, Program
@@ -60,6 +61,11 @@ class Structure:
     def tape(self) -> Tape:
         """The running terms, with derivatives by the present species."""
         return tape_of(self.terms.model.program, tuple(self.firing.tolist()), tuple(self.present.tolist()))
+
+    @cached_property
+    def coefficients(self) -> Coefficients:
+        """Stoichiometry of the running terms and their reactions, by the present species."""
+        return Coefficients.of(self.nu, self.terms.sign[self.firing], self.terms.reaction[self.firing])
 
     @cached_property
     def starved(self) -> Ints:

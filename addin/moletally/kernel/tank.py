@@ -99,7 +99,7 @@ def _hardly_changed(
     with np.errstate(all="ignore"):
         extent = tau[rows, None] * laws.rates(feed)
         brief = (np.abs(extent) < BRIEF * largest[:, None]).all(axis=1) & (largest > 0)
-        result.c[np.ix_(rows[brief], structure.present)] += extent[brief] @ structure.nu
+        result.c[np.ix_(rows[brief], structure.present)] += structure.coefficients.gain(extent[brief])
     return np.asarray(brief)
 
 
@@ -136,7 +136,7 @@ class _Group:
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
         tanks = Tanks(
             Laws.of(structure, structure.starved, scale, T, p, STEADY_DEPTH),
-            structure.nu,
+            structure.coefficients,
             c.copy(),
             tau,
             NOTHING * scale[:, :1],

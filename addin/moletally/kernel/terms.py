@@ -22,10 +22,12 @@ class Terms:
 
     model : Model - rates are terms; the sign of a term stands in its stoichiometry
     reaction : int ndarray, shape (n_terms,) - the reaction each term belongs to
+    sign : ndarray, shape (n_terms,) - its sign there
     """
 
     model: Model
     reaction: NDArray[np.intp]
+    sign: NDArray[np.float64]
 
 
 def split(model: Model, whole: frozenset[int] = frozenset()) -> Terms:
@@ -41,9 +43,9 @@ def split(model: Model, whole: frozenset[int] = frozenset()) -> Terms:
             writer.builder.rate(reg)
             reaction.append(j)
             signs.append(sign)
-    owner = np.array(reaction, dtype=np.intp)
-    stoichiometry = model.stoichiometry[owner] * np.array(signs)[:, None]
-    return Terms(Model(writer.builder.finish(), stoichiometry), owner)
+    owner, direction = np.array(reaction, dtype=np.intp), np.array(signs, dtype=np.float64)
+    stoichiometry = model.stoichiometry[owner] * direction[:, None]
+    return Terms(Model(writer.builder.finish(), stoichiometry), owner, direction)
 
 
 class _Writer:

@@ -89,7 +89,7 @@ class _Run:
         largest = feed.max(axis=1, keepdims=True)
         scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
         laws = Laws.of(structure, structure.edged, scale, T, p)
-        self.flow = Flow(laws, structure.nu)
+        self.flow = Flow(laws, structure.coefficients)
         self.tolerance = Tolerance.of(structure, laws, scale, RELATIVE)
         totals = Totals.of(structure.conserved[:, structure.present], c, c, np.zeros(len(c)))
         self.stepper = Stepper(self.flow, c, self.tolerance, MOST_STEPS, totals=totals)
