@@ -73,9 +73,9 @@ def _power(x: Leading, y: Leading) -> Leading:
     return Leading(x.order * exponent, FLOATS[Op.POW](x.coefficient, exponent), x.cancelled)
 
 
-def _size(x: Leading) -> float:
-    """The value a little away from the limit, to compare by."""
-    return x.coefficient * 1e-9 ** min(x.order, 30.0) if x.coefficient else 0.0
+def _either(x: Leading, y: Leading) -> Leading:
+    """min or max: which of them rules is a matter of concentrations, so the one that vanishes less."""
+    return x if x.order <= y.order else y
 
 
 def _exp(x: Leading) -> Leading:
@@ -101,8 +101,8 @@ _FUNCTIONS: dict[Op, Value] = {
     Op.MUL: _multiply,
     Op.DIV: _divide,
     Op.POW: _power,
-    Op.MIN: lambda x, y: x if _size(x) <= _size(y) else y,
-    Op.MAX: lambda x, y: x if _size(x) >= _size(y) else y,
+    Op.MIN: _either,
+    Op.MAX: _either,
     Op.NEG: lambda x, _: _negative(x),
     Op.SQRT: lambda x, _: _power(x, Leading(0.0, 0.5)),
     Op.EXP: lambda x, _: _exp(x),

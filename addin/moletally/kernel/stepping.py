@@ -34,8 +34,13 @@ STIFF_LIMIT = 3.0  # |h lambda|: accuracy asks for less than 1, stability for le
 STIFF_STEPS = 12.0  # that many such steps, accepted or not, are no accident
 PATIENCE = 500  # explicit steps after which something must be stiff that does not show in the estimate
 PARDON = 0.25  # what a step that is not so limited takes off the count
-SMALLEST = 1e-33  # of the time gone; time is kept to twice the digits, as laws that end need small steps
-RUNAWAY = 1e6  # growth beyond which a vanishing step means that concentrations run away
+SMALLEST = 1e-40  # of the time gone: where a fast law ends steps are tiny; time is kept to twice the digits
+RUNAWAY, RUSH = (
+    1e6,
+    1e-6,
+)  # growth, and share of the time gone, at which steps show concentrations running away
+REVIEW_EVERY = 400  # steps
+PROGRESS = 1e-9  # of the time gone, that so many steps have to bring
 LARGEST = 1e250
 
 Ints = NDArray[np.intp]
@@ -79,8 +84,10 @@ class Stepper:
         self.steps = np.zeros(n, dtype=np.int_)
         self.work = np.zeros(n, dtype=np.int_)
         self._stiff_steps = np.zeros(n)
+        self._reviewed = np.zeros(n)  # time at the last review
         self._rejected = np.zeros(n, dtype=np.bool_)
-        self._largest = np.maximum(np.abs(c).max(axis=1), 1e-300)
+        largest = np.abs(c).max(axis=1)
+        self._largest = np.where(largest > 0, largest, np.inf)  # nothing to measure growth by
         self._whole: tuple[Ints, Flow, Tolerance] | None = None
 
     def attempt(self) -> list[Stride]:
@@ -179,7 +186,12 @@ class Stepper:
         stuck = ~fine & (self.h[rows] <= SMALLEST * self.t[rows])
         stuck |= ~fine & (self.h[rows] < 1e-290)
         size = np.abs(self.c[rows]).max(axis=1)
-        explodes = (size > LARGEST) | (stuck & (size > RUNAWAY * self._largest[rows]))
+        explodes = (size > LARGEST) | (
+            (size > RUNAWAY * self._largest[rows]) & (self.h[rows] < RUSH * self.t[rows])
+        )
+        review = self.steps[rows] % REVIEW_EVERY == 0
+        stuck |= review & (self.t[rows] - self._reviewed[rows] <= PROGRESS * self.t[rows])
+        self._reviewed[rows] = np.where(review, self.t[rows], self._reviewed[rows])
         for bad, status in (
             (self.steps[rows] >= self.most_steps, Status.WORK_CAP),
             (stuck, Status.STEP_TOO_SMALL),

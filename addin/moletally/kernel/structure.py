@@ -234,7 +234,7 @@ def _species(present: NDArray[np.bool_], vanishing: int = -1) -> list[Leading]:
     """Leading terms of all species: constants, e for the one that vanishes, far less for absent ones."""
     out = []
     for i, here in enumerate(present.tolist()):
-        value = 1.0 + 0.6180339887 * ((i * 0.7548776662) % 1.0)  # no two alike, no simple ratios
+        value = 1.3 + 0.6180339887 * ((i * 0.7548776662) % 1.0)  # no two alike, no simple ratios
         out.append(Leading((1.0 if i == vanishing else 0.0) if here else ABSENT_ORDER, value))
     return out
 
