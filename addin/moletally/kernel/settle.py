@@ -50,7 +50,7 @@ def settle(structure: Structure, tanks: Tanks, c: Floats, T: Floats, p: Floats) 
 
 
 def _settle(structure: Structure, tanks: Tanks, c: Floats, T: Floats, p: Floats, unique: bool) -> Settled:
-    polished = polish(tanks, c)
+    polished = polish(tanks, c, _gone(structure, tanks, c))
     c, error, residual = polished.c, polished.error, polished.residual
     for k in np.flatnonzero(~(error <= RELIABLE)).tolist():
         better = _in_decimals(structure, tanks, k, c[k], T, p)

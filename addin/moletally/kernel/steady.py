@@ -120,13 +120,16 @@ class Polished:
     error: Floats
 
 
-def polish(tanks: Tanks, c: Floats) -> Polished:
-    """Improve roots until rounding no longer shows, with sums in twice the digits where it does."""
+def polish(tanks: Tanks, c: Floats, gone: NDArray[np.bool_]) -> Polished:
+    """Improve roots until rounding no longer shows, with sums in twice the digits where it does.
+
+    gone : bool ndarray, shape (n, S) - species that are used up: what is left of them has no digits to lose
+    """
     c = c.copy()
     with np.errstate(all="ignore"):
         f, terms, matrix = tanks.linear(c)
         solver = inverse(matrix)
-        there = c > tanks.nothing
+        there = (c > tanks.nothing) & ~gone
         error = EPSILON * _largest(np.matmul(np.abs(solver), terms[:, :, None])[:, :, 0], there)
         residual = _largest(np.abs(f) / terms, there)
         r = tanks.laws.rates(c)
@@ -136,7 +139,7 @@ def polish(tanks: Tanks, c: Floats) -> Polished:
         rough = np.flatnonzero(~(error <= GOOD))
         if len(rough):
             part = tanks.at(rough)
-            c[rough], residual[rough], last = _twice_the_digits(part, c[rough])
+            c[rough], residual[rough], last = _twice_the_digits(part, c[rough], gone[rough])
             error[rough] = np.maximum(last, EPSILON * condition[rough])
     return Polished(c, residual, condition, error)
 
@@ -146,7 +149,7 @@ def _largest(values: Floats, there: NDArray[np.bool_]) -> Floats:
     return np.asarray(np.where(there, values, 0.0 * values).max(axis=1, initial=0.0))
 
 
-def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
+def _twice_the_digits(tanks: Tanks, c: Floats, gone: NDArray[np.bool_]) -> tuple[Floats, Floats, Floats]:
     """c, residual, and the last relative change."""
     finer = _finer(tanks.coefficients.nu)
     last = np.full(len(c), np.inf)
@@ -156,7 +159,7 @@ def _twice_the_digits(tanks: Tanks, c: Floats) -> tuple[Floats, Floats, Floats]:
         f = balance(tanks.coefficients.nu, finer, tanks.tau[:, None] * r, tanks.feed, c)
         _, terms, matrix = tanks.linear(c)
         y = solve(matrix, f)
-        there = c > tanks.nothing
+        there = (c > tanks.nothing) & ~gone
         change = _largest(np.abs(y), there)
         better = change < last
         residual = np.where(better, _largest(np.abs(f) / terms, there), residual)
