@@ -19,7 +19,7 @@ from moletally.kernel.arithmetic import (
 )
 from moletally.kernel.program import NONE, Op, Program
 
-__all__ = ["Bound", "Floats", "Tape", "evaluate", "tape_of"]
+__all__ = ["Bound", "Floats", "Tape", "derivatives", "evaluate", "tape_of"]
 
 Floats = NDArray[np.float64]
 Edge = tuple[int, int, int, int, int, bool]  # result, argument, operands x and y, operation, second argument?
@@ -206,6 +206,3 @@ def derivatives(program: Program, c: Floats, T: Floats, p: Floats) -> tuple[Floa
     r, jacobian = bound.slopes(everything)
     species = program.n_species
     return r, jacobian[:, :, :species], jacobian[:, :, species], jacobian[:, :, species + 1 :]
-
-
-assert len(Op) == len(FLOATS)

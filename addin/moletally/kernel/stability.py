@@ -34,7 +34,8 @@ def invaded(structure: Structure, c: Floats, tau: Floats, T: Floats, p: Floats) 
         return np.zeros(len(c), dtype=np.bool_)
     state = np.empty((len(c), model.program.n_species))
     state[:, structure.present] = c
-    state[:, absent] = TRACE * c.max(axis=1, keepdims=True, initial=1e-25)
+    largest = c.max(axis=1, keepdims=True, initial=0.0)
+    state[:, absent] = TRACE * np.where(largest > 0, largest, 1.0)
     _, v = Bound.of(everything(model.program), T, p).slopes(state)
     v[:, structure.held] = 0.0
     with np.errstate(all="ignore"):

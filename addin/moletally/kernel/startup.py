@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from moletally.kernel import steady
 from moletally.kernel.creep import creep
 from moletally.kernel.cutoff import DEPTH, LOW, STEADY_DEPTH, Laws
 from moletally.kernel.flow import Flow
@@ -66,8 +67,8 @@ class _StartUp:
     ) -> None:
         self.structure, self.tanks, self.fed = structure, tanks, fed
         n = len(start)
-        largest = np.maximum(tanks.feed, start).max(axis=1, keepdims=True, initial=1e-25)
-        scale = np.broadcast_to(largest, start.shape)
+        self.scale = tanks.nothing / steady.NOTHING
+        scale = np.broadcast_to(self.scale, start.shape)
         self.least = ABSOLUTE * scale
         self.near = np.zeros(start.shape)
         self.near[:, laws.edged] = LOW * laws.depth
@@ -192,6 +193,5 @@ class _StartUp:
         status[failed] = stepper.status[failed]
         status[failed & (status == Status.WORK_CAP) & (self.swings >= SWINGS)] = Status.OSCILLATES
         ends = self.structure.endless
-        scale = self.tanks.feed.max(axis=1, keepdims=True, initial=1e-25)
-        gone = (stepper.c[:, ends] < VANISHING * scale).any(axis=1)
+        gone = (stepper.c[:, ends] < VANISHING * self.scale).any(axis=1)
         status[failed & gone] = Status.UNBOUNDED_AT_ZERO

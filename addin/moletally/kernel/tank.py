@@ -20,7 +20,7 @@ __all__ = ["TankResult", "solve_tanks"]
 FIRST_GUESSES = (1e-3, 1e-9)  # of the largest concentration, for species that are not fed
 BRIEFEST = 1e-50  # s: no residence time above it is brief
 BRIEF = 1e-100  # of the feed: a conversion that is exact to first order
-NOWHERE = 1e-25  # mol/m3: the scale of a vessel with nothing in it
+NOWHERE = 1.0  # mol/m3: the scale of a vessel into which nothing is fed, for want of another
 
 Ints = NDArray[np.intp]
 

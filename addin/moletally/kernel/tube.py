@@ -21,7 +21,7 @@ RELATIVE = (1e-10, 1e-9)  # error of a step, explicit and stiff; the sum of all 
 MOST_STEPS = 12000
 VANISHING = 1e-5  # of the feed: where a law of negative order is about to end
 INVARIANT = 1e-9  # of the sum of a total's terms
-NOWHERE = 1e-25  # mol/m3: the scale of a vessel with nothing in it
+NOWHERE = 1.0  # mol/m3: the scale of a vessel into which nothing is fed, for want of another
 
 Ints = NDArray[np.intp]
 
@@ -202,8 +202,8 @@ class _Run:
     def _stopped(self) -> NDArray[np.int_]:
         """Why vessels stopped early: beside a vanishing species it is that species' doing."""
         ends = self.structure.endless
-        scale = np.maximum(self.feed.max(axis=1, keepdims=True), NOWHERE)
-        gone = (self.stepper.c[:, ends] < VANISHING * scale).any(axis=1)
+        largest = self.feed.max(axis=1, keepdims=True)
+        gone = (self.stepper.c[:, ends] < VANISHING * largest).any(axis=1)
         return np.where(
             gone & (self.stepper.status != Status.OK), Status.UNBOUNDED_AT_ZERO, self.stepper.status
         )
