@@ -24,8 +24,6 @@ __all__ = ["Bound", "Floats", "Tape", "derivatives", "evaluate", "tape_of"]
 Floats = NDArray[np.float64]
 Edge = tuple[int, int, int, int, int, bool]  # result, argument, operands x and y, operation, second argument?
 
-UNUSED = -1  # operand of unary operations
-
 
 class Tape:
     """A program cut down to the outputs that are wanted, with the paths that its derivatives take.
