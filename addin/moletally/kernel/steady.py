@@ -26,6 +26,7 @@ NOTHING = 1e-200  # of the largest concentration: the root of the root of the ro
 DEEPEST = 1e-20  # of that: where a falling concentration stops
 SETTLED = 1e-9  # relative change after which the next, quadratic, one is rounding
 STALLED = 1e-4  # rounding may keep an ill-conditioned tank from settling closer
+ROUGHLY_CLOSED = 1e-8  # before the last change; where species that count as none still feed others it is not
 CLOSED = 1e-12  # residual relative to the terms of its balance
 GOOD = 1e-12  # estimated relative error that needs no second look
 EPSILON = 2.2e-16
@@ -92,8 +93,9 @@ def newton(tanks: Tanks, start: Floats, most: int = MOST_ITERATIONS) -> Roots:
             falls = ~(y > MOST_FALL - 1.0)
             c[active] = np.maximum(now * np.where(falls, fall, 1.0 + y), DEEPEST * part.nothing)
             fall = np.where(falls, np.maximum(fall * fall, DEEPEST_FALL), MOST_FALL)
-            closed = ((np.abs(f) <= CLOSED * terms) | ~there).all(axis=1)
-            done = (change <= SETTLED) | ((change <= STALLED) & closed & (k >= 8))
+            gap = _largest(np.abs(f) / terms, there)
+            done = (change <= SETTLED) & (gap <= ROUGHLY_CLOSED)
+            done |= (change <= STALLED) & (gap <= CLOSED) & (k >= 8)
             lost = ~np.isfinite(change)
             if done.any() or lost.any():
                 settled[active[done]] = True
