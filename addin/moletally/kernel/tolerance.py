@@ -82,4 +82,6 @@ class Tolerance:
         if not low.any():
             return None
         gain = np.abs(flow.slope(after)) * h[:, None] / (LEAK * self.relative[1] * self.scale)
+        net, gross = flow.balance(before)
+        gain = np.where((net > FALLS * gross) & (after < before), np.inf, gain)
         return np.asarray(np.where(low, gain, 0.0).max(axis=1))
