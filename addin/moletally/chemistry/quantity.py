@@ -234,9 +234,9 @@ def _from_pint(name: str) -> tuple[float, Dims] | None:
         return None
     import pint
 
-    registry = _registry()
+    units = _registry()
     try:
-        quantity = registry.Quantity(1.0, name).to_base_units()
+        quantity = units.Quantity(1.0, name).to_base_units()
     except (pint.errors.PintError, AttributeError, TypeError, ValueError, AssertionError):
         return None
     dims = [0.0] * 5
