@@ -20,7 +20,7 @@ def verified():
 
 def pytest_sessionfinish(session, exitstatus):
     """After a run of all checks the page is written anew; its numbers are rounded so that it stays still."""
-    from external_cases import CHECKS
+    from external_stiff import CHECKS
 
     if len(GOT) == len(CHECKS):
         sources = json.loads((HERE / "sources.json").read_text(encoding="utf-8"))

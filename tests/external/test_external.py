@@ -5,7 +5,7 @@ from pathlib import Path
 
 import pytest
 from external_calls import feed, laws, value
-from external_cases import CHECKS
+from external_stiff import CHECKS
 
 from moletally.sheet.functions import call
 

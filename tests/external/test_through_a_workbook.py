@@ -5,8 +5,8 @@ import json
 import pytest
 import xlsxwriter
 from click.testing import CliRunner
-from external_cases import CHECKS
-from xlsxwriter.utility import xl_cell_to_rowcol, xl_range_abs
+from external_stiff import CHECKS
+from xlsxwriter.utility import xl_range_abs
 
 from moletally.cli import main
 from moletally.sheet.cells import OMITTED
@@ -80,6 +80,5 @@ def test_every_check_in_one_workbook(tmp_path):
     assert result.exit_code == 0
     values = {c["cell"]: c["value"] for c in found["cells"]}
     for cell, check in cells.items():
-        assert xl_cell_to_rowcol(cell.split("!")[1])
         expected = float(check.expected)
         assert values[cell] == pytest.approx(expected, rel=check.rel, abs=0.0), (check.case, check.what)

@@ -1,9 +1,14 @@
 """Real workbook files for the tests of headless recalculation."""
 
+import json
 import re
 import zipfile
 
+import pytest
 import xlsxwriter
+from click.testing import CliRunner
+
+from moletally.cli import main
 
 MATRIX = [
     ["Species", "Feed [mol/L]", "step 1", "step 2"], ["A", 2.0, -1, None], ["B", 0, 1, -1], ["C", 0, None, 1],
@@ -53,3 +58,23 @@ def replace_in_part(path, part, old, new):
     with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as package:
         for name, data in whole.items():
             package.writestr(name, data)
+
+
+def run(*arguments):
+    return CliRunner().invoke(main, [str(a) for a in arguments])
+
+
+def recalc(path, *arguments):
+    """Exit code, values by cell and problems by cell."""
+    result = run("recalc", path, "--json", *arguments)
+    found = json.loads(result.stdout)
+    assert set(found) == {"cells", "problems"}
+    return (
+        result.exit_code,
+        {c["cell"]: c["value"] for c in found["cells"]},
+        {p["cell"]: (p["error"], p["reason"]) for p in found["problems"]},
+    )
+
+
+def near(expected):
+    return pytest.approx(expected, rel=1e-10)

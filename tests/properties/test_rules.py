@@ -201,8 +201,7 @@ def test_g14_a_reaction_written_twice_as_large(seed):
 def test_g15_g16_g17_balances_close_and_masses_are_conserved(seed):
     network = draw(seed)
     c = outlet("MOLE_CSTR", network)
-    if c is None:  # counted, with its cause, in the large run of random networks
-        return
+    assert c is not None  # the drawn networks are fixed; refusals at large are counted in the long run
     assert min(c) >= 0.0
     at = (("Species", "Feed"), *zip(network.species, c, strict=True))
     rates = [

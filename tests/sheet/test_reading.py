@@ -112,6 +112,7 @@ def replaced(block, row, column, cell):
     "reactions, feed, words",
     [
         (LIST, OMITTED, "feed is missing"),
+        (replaced(LIST, 0, 1, "Rat"), FEED, "meant to be 'Rate'"),
         (OMITTED, FEED, "reactions are missing"),
         (((None,),), FEED, "reactions are missing"),
         (replaced(LIST, 0, 0, "Reacton"), FEED, "no column 'Reaction'"),

@@ -1,5 +1,7 @@
 """The reactions table, a row per reaction; and the row's quantities, which other layouts share."""
 
+from difflib import get_close_matches
+
 from moletally.chemistry.equations import parse_equation
 from moletally.chemistry.errors import InputError, SheetError, near_miss
 from moletally.chemistry.tables import Number, ReactionRow, ReactionTable
@@ -81,7 +83,19 @@ def read_constants_of_row(
     """
     cells = columns.grid.cells[row]
     return tuple(
-        (column.name, numbers.put(columns, column, row))
+        (column.name, _number(columns, column, row, numbers))
         for column in columns.by_name.values()
         if column.name not in texts and cells[column.index] is not None
     )
+
+
+def _number(columns: Columns, column: Column, row: int, numbers: Numbers) -> Number:
+    """A constant's number; where a text stands under a header that is almost `Rate`, the header is to blame."""
+    try:
+        return numbers.put(columns, column, row)
+    except InputError as error:
+        if not get_close_matches(column.name.casefold(), ("rate",), cutoff=0.6):
+            raise
+        raise InputError(
+            f"{error.what}. Is the header {column.name!r} meant to be 'Rate'?", error.place
+        ) from None
