@@ -1,0 +1,37 @@
+Attribute VB_Name = "MoleCalls"
+' The way of a call from a cell: ranges are read, Python is asked, errors become true errors.
+Option Explicit
+Option Private Module
+
+Public Function Answered(ByVal name As String, ByVal arguments As Variant) As Variant
+    Dim home As String, sent() As Variant, problem As String, result As Variant
+    home = MoleHost.Home()
+    If Not Gathered(name, arguments, sent, problem) Then
+        Answered = MoleReasons.Shown(home, MoleReasons.Marked("#VALUE!", problem))
+        Exit Function
+    End If
+    If MoleTransport.Sent(name, sent, result) Then
+        MoleAudit.Note home, name, sent
+        Answered = MoleReasons.Shown(home, result)
+    Else
+        Answered = MoleAside.LastValue(home)
+    End If
+End Function
+
+' Arguments as values: each range becomes an array, what was left out stays left out.
+Private Function Gathered(ByVal name As String, ByVal arguments As Variant, ByRef sent() As Variant, ByRef problem As String) As Boolean
+    Dim i As Long, values As Variant
+    ReDim sent(LBound(arguments) To UBound(arguments))
+    For i = LBound(arguments) To UBound(arguments)
+        If IsObject(arguments(i)) Then
+            If Not MoleHost.RangeRead(arguments(i), values, problem) Then
+                problem = name & ", argument " & CStr(i - LBound(arguments) + 1) & ": " & problem
+                Exit Function
+            End If
+            sent(i) = values
+        Else
+            sent(i) = arguments(i)
+        End If
+    Next i
+    Gathered = True
+End Function
