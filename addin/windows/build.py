@@ -15,6 +15,7 @@ import tomllib
 from pathlib import Path
 
 from generate import functions_module, table_module
+from lint import complaints
 from xlam.package import write_package
 from xlam.project import Module, vba_project
 
@@ -56,10 +57,16 @@ def modules(texts: dict[str, str]) -> list[Module]:
 
 
 def build(target: Path, texts: dict[str, str] | None = None) -> None:
-    """Write the add-in."""
+    """Write the add-in; stops where Excel's compiler would.
+
+    texts : VBA by file name, default `sources()`
+    """
+    texts = sources() if texts is None else texts
+    if found := complaints(texts):
+        raise SystemExit("\n".join(["the VBA does not compile:", *found]))
     images = {path.stem: path.read_bytes() for path in sorted((HERE / "ribbon" / "images").glob("*.png"))}
     ribbon = (HERE / "ribbon" / "customUI14.xml").read_text(encoding="utf-8")
-    vba = vba_project(modules(texts or sources()), name="moletally", description=DESCRIPTION)
+    vba = vba_project(modules(texts), name="moletally", description=DESCRIPTION)
     write_package(target, vba=vba, ribbon=ribbon, images=images, settings=list(settings().items()),
                   title=TITLE, description=DESCRIPTION)  # fmt: skip
 

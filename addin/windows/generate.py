@@ -19,24 +19,23 @@ def functions_module() -> str:
 
 def _wrapper(function: Function) -> list[str]:
     names = [_variable(a) for a in function.arguments]
-    if function.arguments[-1].repeats:
-        fixed, rest = names[:-1], names[-1]
-        declared = ", ".join([*(f"ByVal {n} As Variant" for n in fixed), f"ParamArray {rest}() As Variant"])
-        body = [
-            "    Dim all() As Variant, i As Long",
-            f"    ReDim all(0 To UBound({rest}) + {len(fixed)})",
-            *(f"    all({i}) = {n}" for i, n in enumerate(fixed)),
-            f"    For i = 0 To UBound({rest})",
-            f"        If IsObject({rest}(i)) Then Set all(i + {len(fixed)}) = {rest}(i)"
-            f" Else all(i + {len(fixed)}) = {rest}(i)",
-            "    Next i",
-            f'    {function.name} = MoleCalls.Answered("{function.name}", all)',
-        ]
-    else:
-        optional = ", ".join(f"Optional ByVal {n} As Variant" for n in names[1:])
-        declared = f"ByVal {names[0]} As Variant" + (f", {optional}" if optional else "")
-        body = [f'    {function.name} = MoleCalls.Answered("{function.name}", Array({", ".join(names)}))']
-    return [f"Public Function {function.name}({declared}) As Variant", *body, "End Function"]
+    rest = names.pop() if function.arguments[-1].repeats else ""
+    declared = [f"ByVal {names[0]} As Variant"]
+    declared += [f"{'' if rest else 'Optional '}ByVal {n} As Variant" for n in names[1:]]
+    count = str(len(names) - 1)
+    body = [f"    MoleCalls.Place sent, {i}, {n}" for i, n in enumerate(names)]
+    if rest:
+        declared.append(f"ParamArray {rest}() As Variant")
+        count = f"UBound({rest}) + {len(names)}"
+        body += [f"    For i = 0 To UBound({rest})", f"        MoleCalls.Place sent, i + {len(names)}, {rest}(i)", "    Next i"]
+    return [
+        f"Public Function {function.name}({', '.join(declared)}) As Variant",
+        f"    Dim sent() As Variant{', i As Long' if rest else ''}",
+        f"    ReDim sent(0 To {count})",
+        *body,
+        f'    {function.name} = MoleCalls.Answered("{function.name}", sent)',
+        "End Function",
+    ]
 
 
 def _variable(argument: Argument) -> str:

@@ -3,6 +3,17 @@ Attribute VB_Name = "MoleCalls"
 Option Explicit
 Option Private Module
 
+' Puts an argument in its place; one that was left out is marked, as it is neither empty nor 0.
+Public Sub Place(ByRef sent() As Variant, ByVal i As Long, Optional ByRef value As Variant)
+    If IsMissing(value) Then
+        sent(i) = MoleReasons.LeftOut()
+    ElseIf IsObject(value) Then
+        Set sent(i) = value
+    Else
+        sent(i) = value
+    End If
+End Sub
+
 Public Function Answered(ByVal name As String, ByVal arguments As Variant) As Variant
     Dim home As String, sent() As Variant, problem As String, result As Variant
     home = MoleHost.Home()

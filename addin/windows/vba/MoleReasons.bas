@@ -12,6 +12,11 @@ Public Function Marked(ByVal code As String, ByVal reason As String) As String
     Marked = Chr(MARK_CODE) & code & Chr(MARK_CODE) & reason
 End Function
 
+' What stands for an argument that was left out.
+Public Function LeftOut() As String
+    LeftOut = Chr(MARK_CODE) & "left out"
+End Function
+
 ' What the cells show for a result; the reasons of its errors are kept under the formula's cell.
 Public Function Shown(ByVal home As String, ByVal result As Variant) As Variant
     Dim i As Long, j As Long

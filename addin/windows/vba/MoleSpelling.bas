@@ -13,11 +13,9 @@ Public Function OwnSpelling(ByVal formula As String) As String
             after = AfterQuoted(formula, at)
             OwnSpelling = OwnSpelling & Mid(formula, at, after - at)
         ElseIf IsStart(formula, at) Then
-            after = AfterOwner(formula, at)
-            If Not IsOwnCall(formula, after) Then
-                after = AfterWord(formula, at)
-                OwnSpelling = OwnSpelling & Mid(formula, at, after - at)
-            End If
+            If IsOwnCall(formula, AfterOwner(formula, at)) Then at = AfterOwner(formula, at)
+            after = AfterWord(formula, at)
+            OwnSpelling = OwnSpelling & Mid(formula, at, after - at)
         Else
             OwnSpelling = OwnSpelling & letter
             after = at + 1

@@ -6,7 +6,7 @@ What Excel hands over as a VARIANT, and what pywin32 makes of it:
     text             str                      formatted as    Decimal of 4 decimals: the range is read again,
     TRUE, FALSE      bool                     a currency      exactly, by Value2
     date             pywintypes' datetime     error           int, the COM error code of Excel
-    array            nested tuples            left out        the default of the argument
+    array            nested tuples            left out        the default of the argument, or LEFT_OUT
 
 Back goes a rectangle of numbers, texts and booleans. pywin32 can't send a true error (every VT_ERROR leaves
 as "missing argument"), so an error travels as the text MARK code MARK reason, and the add-in's VBA makes the
@@ -17,12 +17,13 @@ import datetime as dt
 from decimal import Decimal
 from typing import Any, Final
 
-from moletally.sheet.cells import Argument, Block, Cell, ExcelError
+from moletally.sheet.cells import OMITTED, Argument, Block, Cell, ExcelError
 from moletally.sheet.outcome import Outcome
 
-__all__ = ["MARK", "argument", "marked", "variants"]
+__all__ = ["LEFT_OUT", "MARK", "argument", "exact", "has_currency", "marked", "variants"]
 
 MARK: Final = "\x01"  # no cell can hold it
+LEFT_OUT: Final = MARK + "left out"  # what the add-in's VBA sends for an argument that was left out
 ERROR_BASE: Final = -2146828288  # 0x800A0000: Excel's errors as COM codes
 ERRORS: Final = {
     2000: "#NULL!", 2007: "#DIV/0!", 2015: "#VALUE!", 2023: "#REF!", 2029: "#NAME?", 2036: "#NUM!",
@@ -36,6 +37,8 @@ def argument(value: Any, *, is_range: bool) -> Argument:
     if isinstance(value, tuple | list):
         rows = value if value and isinstance(value[0], tuple | list) else [value]
         return tuple(tuple(_cell(v) for v in row) for row in rows)
+    if value == LEFT_OUT:
+        return OMITTED
     return ((_cell(value),),) if is_range else _cell(value)
 
 
