@@ -1,0 +1,93 @@
+"""Windows Python under Wine, with our wheel in it: made once, kept in the folder that --windows names."""
+
+import os
+import shutil
+import signal
+import subprocess
+import uuid
+import zipfile
+from dataclasses import dataclass
+from pathlib import Path
+
+import pytest
+
+HERE = Path(__file__).parent
+ROOT = HERE.parents[1]
+
+
+def pytest_addoption(parser):
+    parser.addoption("--windows", default=str(ROOT / ".windows"), help="folder for Wine and Windows Python (1.2 GB)")
+
+
+@dataclass(frozen=True)
+class Windows:
+    """A Windows Python with our wheel; `folder` as setup_windows_python.sh makes it."""
+
+    folder: Path
+
+    @property
+    def prefix(self) -> Path:
+        return self.folder / "prefix"
+
+    @property
+    def executable(self) -> str:
+        return self.path(self.folder / "py" / "python.exe")
+
+    @staticmethod
+    def path(file: Path) -> str:
+        """A file of this machine as Windows names it."""
+        return "Z:" + str(file).replace("/", "\\")
+
+    def python(self, *args, env=None, timeout=120):
+        """Run Windows Python and wait."""
+        return self._run("winpy", args, env, timeout)
+
+    def wine(self, *args, env=None, timeout=120):
+        """Run any Windows program and wait."""
+        return self._run("wine", args, env, timeout)
+
+    def _run(self, program, args, env, timeout):
+        return subprocess.run(
+            [str(self.folder / program), *map(str, args)], capture_output=True, text=True, timeout=timeout,
+            env={**os.environ, **(env or {})}, check=False, encoding="utf-8", errors="replace",
+        )  # fmt: skip
+
+    def start(self, *args, env=None):
+        """Start Windows Python and go on; ended by `stop`."""
+        return subprocess.Popen(
+            [str(self.folder / "winpy"), *map(str, args)], stdout=subprocess.PIPE, stderr=subprocess.STDOUT,
+            start_new_session=True, env={**os.environ, **(env or {})},
+        )  # fmt: skip
+
+
+def stop(process):
+    if process.poll() is None:
+        os.killpg(process.pid, signal.SIGTERM)
+    process.wait(20)
+    process.stdout.close()
+
+
+@pytest.fixture(scope="session")
+def windows(request, tmp_path_factory) -> Windows:
+    folder = Path(request.config.getoption("--windows")).resolve()
+    subprocess.run([str(HERE / "setup_windows_python.sh"), str(folder)], check=True)
+    wheels = tmp_path_factory.mktemp("wheel")
+    subprocess.run(["uv", "build", "--quiet", "--wheel", "--out-dir", str(wheels), str(ROOT)], check=True)
+    packages = folder / "py" / "Lib" / "site-packages"
+    for old in packages.glob("moletally*"):
+        shutil.rmtree(old)
+    (wheel,) = wheels.glob("*.whl")
+    with zipfile.ZipFile(wheel) as archive:
+        archive.extractall(packages)
+    return Windows(folder)
+
+
+@pytest.fixture
+def server(windows):
+    """A server of its own, ready for a client; gives its class id. It ends when its last client lets go."""
+    class_id = "{" + str(uuid.uuid4()) + "}"
+    process = windows.start("-P", "-m", "moletally.hosts.windows.serve", class_id, "1")
+    first = process.stdout.readline().decode()
+    assert "server running" in first, first + process.stdout.read().decode()
+    yield class_id
+    stop(process)

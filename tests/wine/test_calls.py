@@ -1,0 +1,169 @@
+"""Every worksheet function, called by independent COM clients, answers as it does without Excel."""
+
+import datetime as dt
+import json
+import math
+import re
+from pathlib import Path
+
+import pytest
+import vbscript
+from moletally.hosts.windows.values import MARK
+from recorded import BOOKS, answer, as_wire, calls_of
+
+from moletally.sheet.cells import OMITTED, ExcelError
+from moletally.sheet.functions import FUNCTIONS
+
+MODULE = "moletally.hosts.windows.worksheet"
+R = (("Reaction", "Rate", "k", "k unit"), ("A -> B", "k*A^0.5", 0.4, "mol^0.5/(L^0.5 min)"))
+F = (("Species", "Feed [mol/L]"), ("A", 2.0), ("B", 0.0))
+V = (("Residence time", 3.0, "min"),)
+
+
+def with_rate(law, k=0.4):
+    return (R[0], ("A -> B", law, k, "1/min"))
+
+
+# name, arguments and the error that has to come: what to mend, no trustworthy answer, undefined, an error passed on
+FAILING = [
+    ("MOLE_CSTR", [with_rate("k*Q"), F, V], "#VALUE!"),
+    ("MOLE_CSTR", [with_rate("k*A", None), F, V], "#VALUE!"),
+    ("MOLE_CSTR", [R, F, (("Residence time", 3.0, "mol"),)], "#VALUE!"),
+    ("MOLE_CSTR", [R, F, OMITTED], "#VALUE!"),
+    ("MOLE_CSTR", [R, F, ((None,),)], "#VALUE!"),
+    ("MOLE_CSTR", [R, F, ""], "#VALUE!"),
+    ("MOLE_CSTR", [R, F, True], "#VALUE!"),
+    ("MOLE_CSTR", [R, (F[0], ("A", dt.datetime(2024, 2, 29)), F[2]), V], "#VALUE!"),
+    ("MOLE_PFR", [R, F, V, "B/(A - A)"], "#N/A"),
+    ("MOLE_PFR", [R, (F[0], ("A", ExcelError("#DIV/0!")), F[2]), V], "#DIV/0!"),
+    ("MOLE_PROFILE", [R, F, V, 0.0], "#VALUE!"),
+    ("MOLE_RATES", [R, OMITTED], "#VALUE!"),
+    ("MOLE_CSTR", [(R[0][:3], ("A -> B", "k/A", 3.0)), (("Species", "Feed"), *F[1:]), 2.0], "#NUM!"),
+]
+
+
+def close(got, expected):
+    """The same cells; numbers to 1e-9: another numpy, another C library."""
+    if isinstance(expected, float) and isinstance(got, int | float):
+        return math.isclose(got, expected, rel_tol=1e-9, abs_tol=1e-12)
+    if isinstance(expected, str):
+        return re.sub(r"[^ -~]", "?", got) == re.sub(r"[^ -~]", "?", expected)
+    return got == ("" if expected is None else expected)
+
+
+def rectangle(value):
+    """A result as CallUDF gives it: one row comes flat, one cell bare."""
+    if not isinstance(value, list):
+        return [[value]]
+    return value if isinstance(value[0], list) else [value]
+
+
+def without_reasons(value):
+    return [[c.split(MARK)[1] if isinstance(c, str) and c.startswith(MARK) else c for c in row] for row in rectangle(value)]
+
+
+def run_script(windows, server, calls, tmp_path):
+    """The values that VBScript got for the calls."""
+    file = tmp_path / "calls.vbs"
+    file.write_text(vbscript.script(MODULE, calls), encoding="ascii")
+    done = windows.wine("cscript.exe", "//nologo", windows.path(file), server, timeout=300)
+    values = vbscript.parsed(done.stdout)
+    assert len(values) == len(calls), done.stdout[-2000:] + done.stderr[-2000:]
+    return values
+
+
+def run_client(windows, server, script, calls, tmp_path):
+    """The values that a client in Windows Python got for the calls."""
+    asked, told = tmp_path / "asked.json", tmp_path / "told.json"
+    asked.write_text(json.dumps(calls), encoding="utf-8")
+    client = windows.path(Path(__file__).parent / "client" / script)
+    done = windows.python(client, server, windows.path(asked), windows.path(told), timeout=300)
+    assert done.returncode == 0, (done.stdout + done.stderr)[-3000:]
+    results = json.loads(told.read_text(encoding="utf-8"))
+    assert all(state == "ok" for state, _ in results), results
+    return [value for _, value in results]
+
+
+def test_the_templates_use_every_function_but_those_listed():
+    used = {name for book in BOOKS for name, _, _ in calls_of(book)}
+    assert set(FUNCTIONS) - used <= {"MOLE_RATES"}
+
+
+@pytest.mark.parametrize("book", BOOKS, ids=lambda b: b.stem)
+def test_vbscript_gets_the_numbers_of_a_recalculation(book, windows, server, tmp_path):
+    made = calls_of(book)
+    calls = [(name, [as_wire(a) for a in arguments]) for name, arguments, _ in made]
+    got = run_script(windows, server, calls, tmp_path)
+    for (name, arguments, _), value in zip(made, got, strict=True):
+        expected = answer(name, arguments)
+        shown = without_reasons(value)
+        assert len(shown) == len(expected), name
+        assert all(close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)), (
+            name,
+            shown,
+            expected,
+        )
+
+
+@pytest.mark.parametrize("book", BOOKS, ids=lambda b: b.stem)
+def test_range_objects_give_the_numbers_of_a_recalculation(book, windows, server, tmp_path):
+    made = calls_of(book)
+    calls = [(name, [as_wire(a, "range") for a in arguments]) for name, arguments, _ in made]
+    got = run_client(windows, server, "ranges.py", calls, tmp_path)
+    for (name, arguments, _), value in zip(made, got, strict=True):
+        expected = answer(name, arguments)
+        shown = without_reasons(value)
+        assert all(close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)), name
+
+
+def test_each_failing_case_gives_its_error_and_its_reason(windows, server, tmp_path):
+    calls = [(name, [as_wire(a) for a in arguments]) for name, arguments, _ in FAILING]
+    got = run_client(windows, server, "calls.py", calls, tmp_path)
+    for (name, arguments, code), value in zip(FAILING, got, strict=True):
+        cell = rectangle(value)[0][0]
+        _, shown, reason = cell.split(MARK)
+        assert shown == code, (name, arguments, cell)
+        assert len(reason) > 20
+
+
+def test_failing_cases_from_vbscript(windows, server, tmp_path):
+    sendable = [f for f in FAILING if "ExcelError" not in repr(f)]
+    calls = [(name, [as_wire(a) for a in arguments]) for name, arguments, _ in sendable]
+    got = run_script(windows, server, calls, tmp_path)
+    assert [rectangle(v)[0][0].split(MARK)[1] for v in got] == [code for _, _, code in sendable]
+
+
+def test_rates_by_every_client(windows, server, tmp_path):
+    arguments = [R, F]
+    for value in (
+        *run_client(windows, server, "ranges.py", [("MOLE_RATES", [as_wire(a, "range") for a in arguments])], tmp_path),
+    ):
+        expected = answer("MOLE_RATES", arguments)
+        assert all(close(g, e) for gs, es in zip(value, expected, strict=True) for g, e in zip(gs, es, strict=True))
+
+
+def test_a_currency_cell_is_not_cut_to_four_decimals(windows, server, tmp_path):
+    """Range.Value gives a cell formatted as currency with four decimals; the cell holds more."""
+    k = 0.00003217
+    reactions = {"range": [["Reaction", "Rate", "k"], ["A -> B", "k*A", {"currency": k}]]}
+    feed = {"range": [["Species", "Feed"], ["A", 2.0], ["B", 0.0]]}
+    (value,) = run_client(windows, server, "ranges.py", [("MOLE_CSTR", [reactions, feed, 1000.0])], tmp_path)
+    assert value[0][0] == pytest.approx(2.0 / (1 + k * 1000.0), rel=1e-12)  # first-order tank, closed form
+
+
+def test_several_ranges_in_one_argument_are_refused(windows, server, tmp_path):
+    feed = {"range": [["Species", "Feed", "areas=2"], ["A", 2.0], ["B", 0.0]]}
+    (value,) = run_client(windows, server, "ranges.py", [("MOLE_CSTR", [as_wire(R, "range"), feed, 1.0])], tmp_path)
+    assert value.split(MARK)[1:] == ["#VALUE!", "MOLE_CSTR, feed: this is several ranges; give one range"]
+
+
+def test_left_out_blank_and_empty_text_are_told_apart(windows, server, tmp_path):
+    """A feed left out, a blank cell, "" and 0 where the feed belongs: four reasons or the same as without Excel."""
+    kinds = [OMITTED, ((None,),), "", 0.0]
+    calls = [("MOLE_CSTR", [as_wire(R), as_wire(k, "range" if isinstance(k, tuple) else "block"), 3.0]) for k in kinds]
+    got = run_client(windows, server, "ranges.py", calls, tmp_path)
+    from moletally.sheet.functions import call
+
+    for kind, value in zip(kinds, got, strict=True):
+        problem = call("MOLE_CSTR", [R, kind, 3.0]).problems[0]
+        assert value.split(MARK)[1:] == [problem.code, problem.reason]
