@@ -21,7 +21,7 @@ from xlam.project import Module, vba_project
 
 import moletally
 
-__all__ = ["ADDIN", "build", "modules", "sources"]
+__all__ = ["ADDIN", "build", "modules", "settings", "sources", "write"]
 
 HERE = Path(__file__).parent
 ADDIN = "moletally.xlam"
@@ -64,6 +64,11 @@ def build(target: Path, texts: dict[str, str] | None = None) -> None:
     texts = sources() if texts is None else texts
     if found := complaints(texts):
         raise SystemExit("\n".join(["the VBA does not compile:", *found]))
+    write(target, texts)
+
+
+def write(target: Path, texts: dict[str, str]) -> None:
+    """Put the modules into an add-in file as they are."""
     images = {path.stem: path.read_bytes() for path in sorted((HERE / "ribbon" / "images").glob("*.png"))}
     ribbon = (HERE / "ribbon" / "customUI14.xml").read_text(encoding="utf-8")
     vba = vba_project(modules(texts), name="moletally", description=DESCRIPTION)

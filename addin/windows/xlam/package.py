@@ -41,8 +41,10 @@ def write_package(path: Path, *, vba: bytes, ribbon: str, images: Mapping[str, b
             "rId2": (f"{OFFICE}/styles", "styles.xml"),
             "rId3": ("http://schemas.microsoft.com/office/2006/relationships/vbaProject", "vbaProject.bin"),
             "rId4": (f"{OFFICE}/theme", "theme/theme1.xml"),
+            "rId5": (f"{OFFICE}/sharedStrings", "sharedStrings.xml"),
         }),
         "xl/worksheets/sheet1.xml": _sheet(settings),
+        "xl/sharedStrings.xml": _texts(settings),
         "xl/styles.xml": _styles(),
         "xl/theme/theme1.xml": theme_xml,
         "xl/vbaProject.bin": vba,
@@ -69,6 +71,7 @@ def _content_types() -> str:
     overrides = {
         "/xl/workbook.xml": "application/vnd.ms-excel.addin.macroEnabled.main+xml",
         "/xl/worksheets/sheet1.xml": TYPES + "worksheet+xml",
+        "/xl/sharedStrings.xml": TYPES + "sharedStrings+xml",
         "/xl/styles.xml": TYPES + "styles+xml",
         "/xl/theme/theme1.xml": "application/vnd.openxmlformats-officedocument.theme+xml",
         "/docProps/core.xml": "application/vnd.openxmlformats-package.core-properties+xml",
@@ -85,13 +88,18 @@ def _relations(targets: Mapping[str, tuple[str, str]]) -> str:
 
 
 def _sheet(settings: Sequence[tuple[str, str]]) -> str:
-    def cell(place: str, text: str) -> str:
-        return f'<c r="{place}" t="inlineStr"><is><t>{escape(text)}</t></is></c>'
-
+    """Two columns of text: what belongs together."""
     rows = "".join(
-        f'<row r="{i}">{cell(f"A{i}", key)}{cell(f"B{i}", value)}</row>' for i, (key, value) in enumerate(settings, 1)
+        f'<row r="{i + 1}"><c r="A{i + 1}" t="s"><v>{2 * i}</v></c><c r="B{i + 1}" t="s"><v>{2 * i + 1}</v></c></row>'
+        for i in range(len(settings))
     )
     return f'{HEAD}<worksheet xmlns="{MAIN}"><sheetPr codeName="Settings"/><sheetData>{rows}</sheetData></worksheet>'
+
+
+def _texts(settings: Sequence[tuple[str, str]]) -> str:
+    count = 2 * len(settings)
+    inside = "".join(f"<si><t>{escape(text)}</t></si>" for row in settings for text in row)
+    return f'{HEAD}<sst xmlns="{MAIN}" count="{count}" uniqueCount="{count}">{inside}</sst>'
 
 
 def _styles() -> str:

@@ -32,7 +32,7 @@ Public Function IsConnected() As Boolean
 End Function
 
 Public Function Started(ByVal library As String, ByVal startCommand As String, ByRef problem As String) As Boolean
-    commands = commands & startCommand & "/"
+    commands = commands & startCommand & "|"
     connected = (NextStep() = "s")
     If Not connected Then problem = "the DLL says no"
     Started = connected
