@@ -1,4 +1,4 @@
-"""The command line: new, recalc, audit, functions.
+"""The command line: new, recalc, audit, excel, functions.
 
 Exit codes: 0 all fine, 1 some cell has a problem or is stale, 2 the book or the call can't be used.
 """
@@ -112,6 +112,50 @@ def audit(book: Path) -> None:
             worst |= level == "stop"
             click.echo(f"    {level:5}  {where}: {what}".replace("\n", "\n        "))
     click.get_current_context().exit(1 if worst else 0)
+
+
+@main.group()
+def excel() -> None:
+    """Install the add-in for Excel on Windows, look at it, take it away."""
+
+
+@excel.command()
+@click.option("--with-excel", is_flag=True,
+              help="Let your own Excel make the macro file instead of taking the prebuilt one.")  # fmt: skip
+def install(with_excel: bool) -> None:
+    """Place the add-in where Excel finds it, and pin this Python. Needs no admin rights."""
+    from moletally.hosts.windows.command import InstallError, installed
+
+    try:
+        lines = installed(with_excel)
+    except InstallError as error:
+        raise _Failed(str(error)) from None
+    click.echo("\n".join(lines))
+
+
+@excel.command()
+def uninstall() -> None:
+    """Take the add-in away without trace."""
+    from moletally.hosts.windows.command import InstallError, uninstalled
+
+    try:
+        lines = uninstalled()
+    except InstallError as error:
+        raise _Failed(str(error)) from None
+    click.echo("\n".join(lines))
+
+
+@excel.command()
+def status() -> None:
+    """Check each link between a cell and its answer; exit code 1 if one is broken."""
+    from moletally.hosts.windows.command import InstallError
+    from moletally.hosts.windows.command import status as show_status
+
+    try:
+        holds = show_status(click.echo)
+    except InstallError as error:
+        raise _Failed(str(error)) from None
+    click.get_current_context().exit(0 if holds else 1)
 
 
 @main.command()

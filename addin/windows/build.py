@@ -78,7 +78,9 @@ def write(target: Path, texts: dict[str, str]) -> None:
 
 def main() -> None:
     """Read the command line and build or check."""
-    parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
+    parser = argparse.ArgumentParser(
+        description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter
+    )
     parser.add_argument("--to", type=Path, default=HERE, help="folder to write into")
     parser.add_argument("--check", action="store_true", help="compare instead of writing")
     options = parser.parse_args()

@@ -27,7 +27,11 @@ def _wrapper(function: Function) -> list[str]:
     if rest:
         declared.append(f"ParamArray {rest}() As Variant")
         count = f"UBound({rest}) + {len(names)}"
-        body += [f"    For i = 0 To UBound({rest})", f"        MoleCalls.Place sent, i + {len(names)}, {rest}(i)", "    Next i"]
+        body += [
+            f"    For i = 0 To UBound({rest})",
+            f"        MoleCalls.Place sent, i + {len(names)}, {rest}(i)",
+            "    Next i",
+        ]
     return [
         f"Public Function {function.name}({', '.join(declared)}) As Variant",
         f"    Dim sent() As Variant{', i As Long' if rest else ''}",
@@ -68,7 +72,10 @@ def table_module() -> str:
 
 
 def _choice(name: str, values: dict[str, str]) -> list[str]:
-    lines = [f"Public Function {name}(ByVal functionName As String) As Variant", "    Select Case functionName"]
+    lines = [
+        f"Public Function {name}(ByVal functionName As String) As Variant",
+        "    Select Case functionName",
+    ]
     for key, value in values.items():
         lines += [f"        Case {_text(key)}", f"            {name} = {value}"]
     return [*lines, "    End Select", "End Function", ""]

@@ -14,26 +14,25 @@ __all__ = ["complaints"]
 
 LONGEST_LINE = 1023
 MOST_CONTINUATIONS = 24
-KEYWORDS = set(
-    """and as boolean byref byval call case class collection compare const currency date declare dim do double each
+WORDS = """and as boolean byref byval call case class collection compare const currency date declare dim do double each
     else elseif empty end error event exit explicit false for function get goto if implements in integer is let lib
     like long longptr loop mod module new next not nothing null object on option optional or paramarray preserve
     private property ptrsafe public redim resume select set single static stop string sub then to true until variant
-    wend while with withevents xor alias step attribute vb_name open close input output line""".split()
-)
-KNOWN = set(
-    """abs activecell activeworkbook application array ascw cbool cdbl chr clng cstr cverr dir environ eof err format
+    wend while with withevents xor alias step attribute vb_name open close input output line"""
+FUNCTIONS = """abs activecell activeworkbook application array ascw cbool cdbl chr clng cstr cverr dir environ eof err format
     freefile getattr instr instrrev isarray isempty iserror ismissing isobject lbound left len mid msgbox now
     replace right split strcomp thisworkbook trim typename ubound ucase val vartype workbook worksheet range
-    iribboncontrol xlcalculation vba7 win64""".split()
-)
+    iribboncontrol xlcalculation vba7 win64"""
+KEYWORDS, KNOWN = set(WORDS.split()), set(FUNCTIONS.split())  # of the language; of VBA and Excel
 CONSTANT = re.compile(r"(xl|vb)[A-Z]\w*$")
 NAME = re.compile(r"[A-Za-z]\w*")
 PROCEDURE = re.compile(
     r"(?:(Public|Private)\s+)?(?:Declare\s+PtrSafe\s+)?(Sub|Function)\s+(\w+)(?:\s+Lib\s+\S+(?:\s+Alias\s+\S+)?)?\s*\((.*)\)",
     re.IGNORECASE,
 )
-DECLARATION = re.compile(r"^(?:Dim|Static|Private|Public|ReDim(?:\s+Preserve)?)\s+(?:WithEvents\s+|Const\s+)?(.*)$", re.IGNORECASE)
+DECLARATION = re.compile(
+    r"^(?:Dim|Static|Private|Public|ReDim(?:\s+Preserve)?)\s+(?:WithEvents\s+|Const\s+)?(.*)$", re.IGNORECASE
+)
 LABEL = re.compile(r"^(\w+):$")
 
 
@@ -120,7 +119,10 @@ def _module(name: str, text: str, found: list[str]) -> ModuleText:
 
 def _procedure(head: re.Match[str], *, declared_only: bool) -> Procedure:
     arguments = [a.strip() for a in _split(head[4]) if a.strip()]
-    names = {NAME.findall(re.sub(r"^(Optional\s+)?(ByVal\s+|ByRef\s+|ParamArray\s+)?", "", a))[0].lower() for a in arguments}
+    names = {
+        NAME.findall(re.sub(r"^(Optional\s+)?(ByVal\s+|ByRef\s+|ParamArray\s+)?", "", a))[0].lower()
+        for a in arguments
+    }
     if declared_only:
         names = set()
     optional = sum(a.startswith(("Optional", "ParamArray")) for a in arguments)
@@ -146,9 +148,11 @@ def _line(line: str, here: Procedure, module: ModuleText, project: dict[str, Mod
             owner = re.search(r"(?<![\w.)])(\w+)\.$", before)
             if owner and owner[1].lower() in project and owner[1].lower() not in here.locals:
                 yield from _member(project[owner[1].lower()], name, before[: owner.start()], after)
-        elif key in KEYWORDS or key in KNOWN or CONSTANT.match(name) or after.lstrip().startswith(":="):
-            continue
-        elif key in here.locals or key in module.top or key in labels or key in project:
+        elif (
+            CONSTANT.match(name)
+            or after.lstrip().startswith(":=")
+            or any(key in names for names in (KEYWORDS, KNOWN, here.locals, module.top, labels, project))
+        ):
             continue
         elif key in module.procedures:
             yield from _count(module.procedures[key], before, after)

@@ -18,7 +18,9 @@ PYTHON = os.environ.get("OFFICE_PYTHON", "/usr/bin/python3")  # the one that can
 
 def run_basic(file, calls, env=None, timeout=120):
     """Results of Basic functions, each called with texts or floats."""
-    assert shutil.which("soffice"), "these tests need LibreOffice: apt-get install libreoffice-calc python3-uno"
+    assert shutil.which("soffice"), (
+        "these tests need LibreOffice: apt-get install libreoffice-calc python3-uno"
+    )
     done = subprocess.run(
         [PYTHON, str(HERE / "run_basic.py"), str(file)], input=json.dumps(calls), capture_output=True, text=True,
         timeout=timeout, env={**os.environ, **(env or {})}, check=False,
@@ -32,7 +34,9 @@ def compiles(texts, scratch):
     probes = {}
     for name, text in texts.items():
         stem = Path(name).stem
-        probes[name] = f'{text.rstrip()}\n\nPublic Function Probe{stem}() As String\n    Probe{stem} = "yes"\nEnd Function\n'
+        probes[name] = (
+            f'{text.rstrip()}\n\nPublic Function Probe{stem}() As String\n    Probe{stem} = "yes"\nEnd Function\n'
+        )
     file = scratch / "probes.xlam"
     addin.write(file, probes)
     calls = [[f"{Path(name).stem}.Probe{Path(name).stem}", []] for name in probes]

@@ -66,7 +66,9 @@ def main(path):
             provider = loaded(desktop, path).getScriptProvider()
             results = []
             for name, arguments in calls:
-                script = provider.getScript(f"vnd.sun.star.script:moletally.{name}?language=Basic&location=document")
+                script = provider.getScript(
+                    f"vnd.sun.star.script:moletally.{name}?language=Basic&location=document"
+                )
                 results.append(script.invoke(tuple(arguments), (), ())[0])
             print(json.dumps(results))
         finally:

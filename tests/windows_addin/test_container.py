@@ -9,7 +9,6 @@ import sys
 import zipfile
 from pathlib import Path
 
-import build as addin
 import generate
 import olefile
 import openpyxl
@@ -23,6 +22,8 @@ from xlam.compound import compound_file
 from xlam.compression import compress, decompress
 from xlam.project import Module, stored_source
 
+import build as addin
+
 TEXTS = addin.sources()
 
 
@@ -31,7 +32,9 @@ def vba_bytes():
         return package.read("xl/vbaProject.bin")
 
 
-@given(st.lists(st.sampled_from([b"Function ", b"End ", b"x", b"\r\n", b"    "]), max_size=2500).map(b"".join))
+@given(
+    st.lists(st.sampled_from([b"Function ", b"End ", b"x", b"\r\n", b"    "]), max_size=2500).map(b"".join)
+)
 def test_texts_survive_compression(text):
     assert decompress(compress(text)) == text
 
@@ -109,11 +112,15 @@ def test_another_reader_finds_every_module_unchanged():
         "import json, sys, warnings\nwarnings.simplefilter('ignore')\nfrom oletools.olevba import VBA_Parser\n"
         "print(json.dumps({n: c for _, _, n, c in VBA_Parser(sys.argv[1]).extract_macros()}))"
     )
-    done = subprocess.run([sys.executable, "-c", script, str(ADDIN)], capture_output=True, text=True, check=True)
+    done = subprocess.run(
+        [sys.executable, "-c", script, str(ADDIN)], capture_output=True, text=True, check=True
+    )
     read = {Path(name).stem: code for name, code in json.loads(done.stdout).items()}
     stored = {m.name: stored_source(m).decode() for m in addin.modules(TEXTS)}
     assert {n: c.split() for n, c in read.items()} == {n: c.split() for n, c in stored.items()}
-    assert {n: c.rstrip().splitlines() for n, c in read.items()} == {n: c.rstrip().splitlines() for n, c in stored.items()}
+    assert {n: c.rstrip().splitlines() for n, c in read.items()} == {
+        n: c.rstrip().splitlines() for n, c in stored.items()
+    }
 
 
 def test_the_project_is_source_alone_and_names_every_module():
@@ -133,7 +140,9 @@ def test_a_letter_that_the_code_page_lacks_is_refused():
 
 
 def test_the_package_opens_elsewhere(tmp_path):
-    done = subprocess.run([sys.executable, "-m", "openxml_audit", str(ADDIN)], capture_output=True, text=True, check=False)
+    done = subprocess.run(
+        [sys.executable, "-m", "openxml_audit", str(ADDIN)], capture_output=True, text=True, check=False
+    )
     assert "no findings" in done.stdout, done.stdout
     with zipfile.ZipFile(ADDIN) as package, zipfile.ZipFile(tmp_path / "as_book.xlsm", "w") as book:
         for name in package.namelist():  # openpyxl opens no add-ins
@@ -166,7 +175,10 @@ def test_a_help_text_that_excel_would_cut_stops_the_build(monkeypatch):
 
 def types_of_ribbon():
     """Elements of the ribbon's namespace as the Open XML SDK's schema data describe them (in openxml-audit)."""
-    file = Path(openxml_audit.__file__).parent / "data/openxml/schemas/schemas_microsoft_com_office_2009_07_customui.json"
+    file = (
+        Path(openxml_audit.__file__).parent
+        / "data/openxml/schemas/schemas_microsoft_com_office_2009_07_customui.json"
+    )
     return {t["Name"]: t for t in json.loads(file.read_text(encoding="utf-8"))["Types"]}
 
 
@@ -211,7 +223,10 @@ def test_every_command_of_the_ribbon_has_its_macro_and_its_picture():
     with zipfile.ZipFile(ADDIN) as package:
         relations = package.read("customUI/_rels/customUI14.xml.rels").decode()
         for button in buttons:
-            assert re.search(rf"Public Sub {button.get('onAction')}\(ByVal control As IRibbonControl\)", TEXTS["MoleRibbon.bas"])
+            assert re.search(
+                rf"Public Sub {button.get('onAction')}\(ByVal control As IRibbonControl\)",
+                TEXTS["MoleRibbon.bas"],
+            )
             assert f'Id="{button.get("image")}"' in relations
             assert package.read(f"customUI/images/{button.get('image')}.png").startswith(b"\x89PNG")
     assert len({b.get("id") for b in buttons}) == len(buttons) == 6

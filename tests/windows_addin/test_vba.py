@@ -4,14 +4,14 @@ Errors are numbered as Excel numbers them: 2015 #VALUE!, 2036 #NUM!, 2042 #N/A (
 CVErr and XlCVError).
 """
 
-import build as addin
 import lint
 import pytest
-from moletally.hosts.windows.values import ERRORS, LEFT_OUT
 from office import ADDIN, WITH_STAND_INS, compiles, run_basic
 
+import build as addin
 import moletally
 from moletally.hosts.headless.spelling import plain
+from moletally.hosts.windows.values import ERRORS, LEFT_OUT
 from moletally.sheet.functions import FUNCTIONS
 
 SETTINGS = f"moletally = {moletally.__version__}\nxlwings = {addin.settings()['xlwings']}\npython = {{python}}\ndll64 = {{python}}\n"
@@ -170,7 +170,13 @@ def test_spellings_are_read_as_everywhere_else(stand_in):
 def test_links_of_another_place_are_recognised(stand_in):
     file, env = stand_in
     own = r"C:\Users\me\XLSTART\moletally.xlam"
-    links = [r"D:\old\moletally.xlam", r"d:\OLD\MOLETALLY.XLAM", "https://host/x/moletally.xlam", own.upper(), r"D:\old\prices.xlsx"]
+    links = [
+        r"D:\old\moletally.xlam",
+        r"d:\OLD\MOLETALLY.XLAM",
+        "https://host/x/moletally.xlam",
+        own.upper(),
+        r"D:\old\prices.xlsx",
+    ]
     calls = [["MoleAdopt.IsOldLink", [link, "moletally.xlam", own]] for link in links]
     assert run_basic(file, calls, env) == [True, True, True, False, False]
 

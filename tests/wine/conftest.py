@@ -16,7 +16,9 @@ ROOT = HERE.parents[1]
 
 
 def pytest_addoption(parser):
-    parser.addoption("--windows", default=str(ROOT / ".windows"), help="folder for Wine and Windows Python (1.2 GB)")
+    parser.addoption(
+        "--windows", default=str(ROOT / ".windows"), help="folder for Wine and Windows Python (1.2 GB)"
+    )
 
 
 @dataclass(frozen=True)

@@ -8,9 +8,9 @@ from pathlib import Path
 
 import pytest
 import vbscript
-from moletally.hosts.windows.values import MARK
 from recorded import BOOKS, answer, as_wire, calls_of
 
+from moletally.hosts.windows.values import MARK
 from moletally.sheet.cells import OMITTED, ExcelError
 from moletally.sheet.functions import FUNCTIONS
 
@@ -59,7 +59,10 @@ def rectangle(value):
 
 
 def without_reasons(value):
-    return [[c.split(MARK)[1] if isinstance(c, str) and c.startswith(MARK) else c for c in row] for row in rectangle(value)]
+    return [
+        [c.split(MARK)[1] if isinstance(c, str) and c.startswith(MARK) else c for c in row]
+        for row in rectangle(value)
+    ]
 
 
 def run_script(windows, server, calls, tmp_path):
@@ -98,7 +101,9 @@ def test_vbscript_gets_the_numbers_of_a_recalculation(book, windows, server, tmp
         expected = answer(name, arguments)
         shown = without_reasons(value)
         assert len(shown) == len(expected), name
-        assert all(close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)), (
+        assert all(
+            close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)
+        ), (
             name,
             shown,
             expected,
@@ -113,7 +118,9 @@ def test_range_objects_give_the_numbers_of_a_recalculation(book, windows, server
     for (name, arguments, _), value in zip(made, got, strict=True):
         expected = answer(name, arguments)
         shown = without_reasons(value)
-        assert all(close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)), name
+        assert all(
+            close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)
+        ), name
 
 
 def test_each_failing_case_gives_its_error_and_its_reason(windows, server, tmp_path):
@@ -136,10 +143,14 @@ def test_failing_cases_from_vbscript(windows, server, tmp_path):
 def test_rates_by_every_client(windows, server, tmp_path):
     arguments = [R, F]
     for value in (
-        *run_client(windows, server, "ranges.py", [("MOLE_RATES", [as_wire(a, "range") for a in arguments])], tmp_path),
+        *run_client(
+            windows, server, "ranges.py", [("MOLE_RATES", [as_wire(a, "range") for a in arguments])], tmp_path
+        ),
     ):
         expected = answer("MOLE_RATES", arguments)
-        assert all(close(g, e) for gs, es in zip(value, expected, strict=True) for g, e in zip(gs, es, strict=True))
+        assert all(
+            close(g, e) for gs, es in zip(value, expected, strict=True) for g, e in zip(gs, es, strict=True)
+        )
 
 
 def test_a_currency_cell_is_not_cut_to_four_decimals(windows, server, tmp_path):
@@ -153,14 +164,19 @@ def test_a_currency_cell_is_not_cut_to_four_decimals(windows, server, tmp_path):
 
 def test_several_ranges_in_one_argument_are_refused(windows, server, tmp_path):
     feed = {"range": [["Species", "Feed", "areas=2"], ["A", 2.0], ["B", 0.0]]}
-    (value,) = run_client(windows, server, "ranges.py", [("MOLE_CSTR", [as_wire(R, "range"), feed, 1.0])], tmp_path)
+    (value,) = run_client(
+        windows, server, "ranges.py", [("MOLE_CSTR", [as_wire(R, "range"), feed, 1.0])], tmp_path
+    )
     assert value.split(MARK)[1:] == ["#VALUE!", "MOLE_CSTR, feed: this is several ranges; give one range"]
 
 
 def test_left_out_blank_and_empty_text_are_told_apart(windows, server, tmp_path):
     """A feed left out, a blank cell, "" and 0 where the feed belongs: four reasons or the same as without Excel."""
     kinds = [OMITTED, ((None,),), "", 0.0]
-    calls = [("MOLE_CSTR", [as_wire(R), as_wire(k, "range" if isinstance(k, tuple) else "block"), 3.0]) for k in kinds]
+    calls = [
+        ("MOLE_CSTR", [as_wire(R), as_wire(k, "range" if isinstance(k, tuple) else "block"), 3.0])
+        for k in kinds
+    ]
     got = run_client(windows, server, "ranges.py", calls, tmp_path)
     from moletally.sheet.functions import call
 

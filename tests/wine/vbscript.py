@@ -93,7 +93,11 @@ def script(module: str, calls) -> str:
             if isinstance(argument, dict) and "block" in argument:
                 rows = argument["block"]
                 lines.append(f"Dim t{n}_{k}({len(rows) - 1}, {len(rows[0]) - 1})")
-                lines += [f"t{n}_{k}({i}, {j}) = {_literal(c)}" for i, row in enumerate(rows) for j, c in enumerate(row)]
+                lines += [
+                    f"t{n}_{k}({i}, {j}) = {_literal(c)}"
+                    for i, row in enumerate(rows)
+                    for j, c in enumerate(row)
+                ]
                 names.append(f"t{n}_{k}")
             elif argument == {"left out": True}:
                 names.append('Chr(1) & "left out"')  # as the add-in's VBA says it

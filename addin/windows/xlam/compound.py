@@ -133,6 +133,8 @@ def _file(sectors: Sectors, directory: int, mini: int, mini_sectors: int) -> byt
     places = [first + i if i < count else FREE for i in range(FATS_IN_HEADER)]
     header = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1" + bytes(16)
     header += struct.pack("<HHHHH6x", 0x3E, 3, 0xFFFE, 9, 6)
-    header += struct.pack("<IIIIIIIIII", 0, count, directory, 0, MINI_LIMIT, mini, mini_sectors, END, 0, places[0])
+    header += struct.pack(
+        "<IIIIIIIIII", 0, count, directory, 0, MINI_LIMIT, mini, mini_sectors, END, 0, places[0]
+    )
     header += b"".join(struct.pack("<I", n) for n in places[1:])
     return header + b"".join(sectors.blocks) + tables

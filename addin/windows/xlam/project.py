@@ -134,4 +134,7 @@ def _encrypted(identity: str, data: bytes, seed: int) -> str:
 
 
 def _name_map(modules: list[Module]) -> bytes:
-    return b"".join(m.name.encode("ascii") + b"\0" + m.name.encode("utf-16le") + b"\0\0" for m in modules) + b"\0\0"
+    return (
+        b"".join(m.name.encode("ascii") + b"\0" + m.name.encode("utf-16le") + b"\0\0" for m in modules)
+        + b"\0\0"
+    )

@@ -21,7 +21,9 @@ class Make:
 
     @staticmethod
     def date(text):
-        return rawcom.Date((dt.datetime.fromisoformat(text) - dt.datetime(1899, 12, 30)) / dt.timedelta(days=1))
+        return rawcom.Date(
+            (dt.datetime.fromisoformat(text) - dt.datetime(1899, 12, 30)) / dt.timedelta(days=1)
+        )
 
     @staticmethod
     def block(rows):

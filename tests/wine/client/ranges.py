@@ -62,7 +62,7 @@ def served(ob):
 class Object:
     """An object with fixed properties."""
 
-    _public_methods_ = []
+    _public_methods_ = ()
 
     def __init__(self, kind, **properties):
         self.kind = kind
@@ -72,7 +72,15 @@ class Object:
 
 def sheet():
     application = served(Object("_Application", Hwnd=0, Version="16.0", Visible=True))
-    book = served(Object("_Workbook", Name="Book1.xlsx", FullName="C:\\x\\Book1.xlsx", Application=application, Path="C:\\x"))
+    book = served(
+        Object(
+            "_Workbook",
+            Name="Book1.xlsx",
+            FullName="C:\\x\\Book1.xlsx",
+            Application=application,
+            Path="C:\\x",
+        )
+    )
     return served(Object("_Worksheet", Name="Design", Parent=book, Application=application, Index=1))
 
 
@@ -134,14 +142,18 @@ class Make:
 
     @staticmethod
     def range(rows):
-        areas = rows[0].pop() if isinstance(rows[0][-1], str) and rows[0][-1].startswith("areas=") else "areas=1"
+        areas = (
+            rows[0].pop() if isinstance(rows[0][-1], str) and rows[0][-1].startswith("areas=") else "areas=1"
+        )
         return served(Range(rows, int(areas[6:])))
 
 
 if __name__ == "__main__":
     class_id, asked, told = sys.argv[1:]
     server = win32com.client.Dispatch(
-        pythoncom.CoCreateInstance(pywintypes.IID(class_id), None, pythoncom.CLSCTX_LOCAL_SERVER, pythoncom.IID_IDispatch)
+        pythoncom.CoCreateInstance(
+            pywintypes.IID(class_id), None, pythoncom.CLSCTX_LOCAL_SERVER, pythoncom.IID_IDispatch
+        )
     )
     with open(asked, encoding="utf-8") as f:
         calls = json.load(f)

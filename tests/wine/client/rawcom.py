@@ -2,13 +2,41 @@
 
 Runs in Windows Python. Written for the measurements that came before this project.
 """
+
 import ctypes
 import struct
-from ctypes import POINTER, byref, c_double, c_int64, c_long, c_short, c_uint, c_uint16, c_uint64, c_ulong, c_void_p, c_wchar_p
+from ctypes import (
+    POINTER,
+    byref,
+    c_long,
+    c_uint,
+    c_uint16,
+    c_uint64,
+    c_ulong,
+    c_void_p,
+    c_wchar_p,
+)
 
 ole32, oleaut = ctypes.WinDLL("ole32"), ctypes.WinDLL("oleaut32")
-VT = {0: "EMPTY", 1: "NULL", 2: "I2", 3: "I4", 4: "R4", 5: "R8", 6: "CY", 7: "DATE", 8: "BSTR", 9: "DISPATCH",
-      10: "ERROR", 11: "BOOL", 12: "VARIANT", 14: "DECIMAL", 20: "I8", 21: "UI8", 0x200C: "ARRAY|VARIANT"}
+VT = {
+    0: "EMPTY",
+    1: "NULL",
+    2: "I2",
+    3: "I4",
+    4: "R4",
+    5: "R8",
+    6: "CY",
+    7: "DATE",
+    8: "BSTR",
+    9: "DISPATCH",
+    10: "ERROR",
+    11: "BOOL",
+    12: "VARIANT",
+    14: "DECIMAL",
+    20: "I8",
+    21: "UI8",
+    0x200C: "ARRAY|VARIANT",
+}
 
 
 class GUID(ctypes.Structure):
@@ -16,7 +44,14 @@ class GUID(ctypes.Structure):
 
 
 class VARIANT(ctypes.Structure):
-    _fields_ = [("vt", c_uint16), ("r1", c_uint16), ("r2", c_uint16), ("r3", c_uint16), ("val", c_uint64), ("val2", c_uint64)]
+    _fields_ = [
+        ("vt", c_uint16),
+        ("r1", c_uint16),
+        ("r2", c_uint16),
+        ("r3", c_uint16),
+        ("val", c_uint64),
+        ("val2", c_uint64),
+    ]
 
 
 class BOUND(ctypes.Structure):
@@ -24,8 +59,14 @@ class BOUND(ctypes.Structure):
 
 
 class SAFEARRAY(ctypes.Structure):
-    _fields_ = [("cDims", c_uint16), ("fFeatures", c_uint16), ("cbElements", c_ulong), ("cLocks", c_ulong),
-                ("pvData", c_void_p), ("b", BOUND * 4)]
+    _fields_ = [
+        ("cDims", c_uint16),
+        ("fFeatures", c_uint16),
+        ("cbElements", c_ulong),
+        ("cLocks", c_ulong),
+        ("pvData", c_void_p),
+        ("b", BOUND * 4),
+    ]
 
 
 class DISPPARAMS(ctypes.Structure):
@@ -33,8 +74,17 @@ class DISPPARAMS(ctypes.Structure):
 
 
 class EXCEPINFO(ctypes.Structure):
-    _fields_ = [("wCode", c_uint16), ("r", c_uint16), ("source", c_void_p), ("desc", c_void_p), ("help", c_void_p),
-                ("ctx", c_ulong), ("pv", c_void_p), ("fn", c_void_p), ("scode", c_long)]
+    _fields_ = [
+        ("wCode", c_uint16),
+        ("r", c_uint16),
+        ("source", c_void_p),
+        ("desc", c_void_p),
+        ("help", c_void_p),
+        ("ctx", c_ulong),
+        ("pv", c_void_p),
+        ("fn", c_void_p),
+        ("scode", c_long),
+    ]
 
 
 oleaut.SysAllocString.restype = c_void_p
@@ -51,8 +101,8 @@ class Err:
 
     def __repr__(self):
         if self.scode >> 16 == 0x800A:
-            return "CVErr(%d)" % (self.scode & 0xFFFF)
-        return "ERROR 0x%08X" % self.scode
+            return f"CVErr({self.scode & 0xFFFF})"
+        return f"ERROR 0x{self.scode:08X}"
 
 
 class Date(float):
@@ -80,7 +130,7 @@ def put(v, x):
     elif isinstance(x, Date):
         v.vt, v.val = 7, struct.unpack("<Q", struct.pack("<d", x))[0]
     elif isinstance(x, Cy):
-        v.vt, v.val = 6, int(round(x * 10000)) & (2**64 - 1)
+        v.vt, v.val = 6, round(x * 10000) & (2**64 - 1)
     elif isinstance(x, int):
         v.vt, v.val = 3, x & 0xFFFFFFFF
     elif isinstance(x, float):
@@ -89,8 +139,10 @@ def put(v, x):
         v.vt, v.val = 8, oleaut.SysAllocString(x)
     elif isinstance(x, (list, tuple)):
         # rows of plain values: a 2-D range; anything else: the 1-D argument list
-        two = bool(x) and all(isinstance(r, (list, tuple)) and not any(isinstance(y, (list, tuple)) for y in r) for r in x)
-        lb = 1 if two else 0                     # Range.Value is 1-based, VBA's Array() 0-based
+        two = bool(x) and all(
+            isinstance(r, (list, tuple)) and not any(isinstance(y, (list, tuple)) for y in r) for r in x
+        )
+        lb = 1 if two else 0  # Range.Value is 1-based, VBA's Array() 0-based
         bounds = (BOUND * 2)(BOUND(len(x), lb), BOUND(len(x[0]) if two else 0, lb))
         sa = oleaut.SafeArrayCreate(12, 2 if two else 1, bounds)
         data = ctypes.cast(sa.contents.pvData, POINTER(VARIANT))
@@ -98,7 +150,7 @@ def put(v, x):
             n = len(x)
             for i, row in enumerate(x):
                 for j, y in enumerate(row):
-                    put(data[j * n + i], y)      # column-major
+                    put(data[j * n + i], y)  # column-major
         else:
             for i, y in enumerate(x):
                 put(data[i], y)
@@ -142,14 +194,7 @@ def get(v):
             return [get(data[i]) for i in range(dims[0])]
         n, m = dims
         return [[get(data[j * n + i]) for j in range(m)] for i in range(n)]
-    return "VT %s 0x%x" % (VT.get(vt, vt), v.val)
-
-
-def kind(v):
-    if v.vt == 0x200C:
-        sa = ctypes.cast(v.val, POINTER(SAFEARRAY)).contents
-        return "VARIANT(%s)" % ", ".join("%d to %d" % (sa.b[k].lb, sa.b[k].lb + sa.b[k].n - 1) for k in reversed(range(sa.cDims)))
-    return VT.get(v.vt, hex(v.vt))
+    return f"VT {VT.get(vt, vt)} 0x{v.val:x}"
 
 
 class ComError(Exception):
@@ -183,9 +228,10 @@ class Dispatch:
         if name not in self.ids:
             d, n = c_long(), c_wchar_p(name)
             hr = method(self.p, 5, POINTER(GUID), POINTER(c_wchar_p), c_uint, c_ulong, POINTER(c_long))(
-                self.p, byref(IID_NULL), byref(n), 1, 0, byref(d))
+                self.p, byref(IID_NULL), byref(n), 1, 0, byref(d)
+            )
             if hr < 0:
-                raise ComError("GetIDsOfNames %s 0x%08x" % (name, hr & 0xFFFFFFFF))
+                raise ComError(f"GetIDsOfNames {name} 0x{hr & 0xFFFFFFFF:08x}")
             self.ids[name] = d.value
         return self.ids[name]
 
@@ -195,14 +241,26 @@ class Dispatch:
             put(a[k], x)
         dp = DISPPARAMS(a, None, len(args), 0)
         r, e, bad = VARIANT(), EXCEPINFO(), c_uint()
-        hr = method(self.p, 6, c_long, POINTER(GUID), c_ulong, c_uint16, POINTER(DISPPARAMS), POINTER(VARIANT),
-                    POINTER(EXCEPINFO), POINTER(c_uint))(self.p, self.id(name), byref(IID_NULL), 0, flags, byref(dp),
-                                                          byref(r), byref(e), byref(bad))
+        hr = method(
+            self.p,
+            6,
+            c_long,
+            POINTER(GUID),
+            c_ulong,
+            c_uint16,
+            POINTER(DISPPARAMS),
+            POINTER(VARIANT),
+            POINTER(EXCEPINFO),
+            POINTER(c_uint),
+        )(self.p, self.id(name), byref(IID_NULL), 0, flags, byref(dp), byref(r), byref(e), byref(bad))
         for k in range(len(args)):
             oleaut.VariantClear(byref(a[k]))
         if hr & 0xFFFFFFFF == 0x80020009:
-            raise ComError("0x%08X" % (e.scode & 0xFFFFFFFF), ctypes.wstring_at(e.source) if e.source else None,
-                           ctypes.wstring_at(e.desc) if e.desc else None)
+            raise ComError(
+                "0x%08X" % (e.scode & 0xFFFFFFFF),
+                ctypes.wstring_at(e.source) if e.source else None,
+                ctypes.wstring_at(e.desc) if e.desc else None,
+            )
         if hr < 0:
             raise ComError("hr 0x%08X" % (hr & 0xFFFFFFFF), None, None)
         return r

@@ -1,12 +1,20 @@
 """Cells as JSON, for both sides of the tests: Linux writes what Windows calls with, and reads what came back.
 
-    number, text, true, null        themselves
-    {"error": "#N/A"}               a true error          {"date": "2024-02-29T00:00:00"}
-    {"currency": 2.5}               a Currency            {"left out": true}
-    {"block": [[...]]}              an array              {"range": [[...]]}   the same as a Range object
+number, text, true, null        themselves
+{"error": "#N/A"}               a true error          {"date": "2024-02-29T00:00:00"}
+{"currency": 2.5}               a Currency            {"left out": true}
+{"block": [[...]]}              an array              {"range": [[...]]}   the same as a Range object
 """
 
-CODES = {"#NULL!": 2000, "#DIV/0!": 2007, "#VALUE!": 2015, "#REF!": 2023, "#NAME?": 2029, "#NUM!": 2036, "#N/A": 2042}
+CODES = {
+    "#NULL!": 2000,
+    "#DIV/0!": 2007,
+    "#VALUE!": 2015,
+    "#REF!": 2023,
+    "#NAME?": 2029,
+    "#NUM!": 2036,
+    "#N/A": 2042,
+}
 
 
 def decoded(cell, make):

@@ -9,17 +9,13 @@ import os
 import sys
 import threading
 import time
-from pathlib import Path
 
-__all__ = ["log_file", "main"]
+from moletally.hosts.windows.places import places
+
+__all__ = ["main"]
 
 START_WITHIN = 30.0  # s; Excel waits for the start
 NEEDED = ("numpy", "pythoncom", "win32api", "xlwings.com_server", "moletally.hosts.windows.worksheet")
-
-
-def log_file() -> Path:
-    """The log of the last start, per user."""
-    return Path(os.environ.get("LOCALAPPDATA") or Path.home(), "moletally", "server.log")
 
 
 def main(class_id: str) -> int:
@@ -48,9 +44,10 @@ def main(class_id: str) -> int:
 
 def note(text: str, *, fresh: bool = False) -> None:
     """A line in the log; a log that can't be written is no reason not to serve."""
+    file = places().log
     try:
-        log_file().parent.mkdir(parents=True, exist_ok=True)
-        with log_file().open("w" if fresh else "a", encoding="utf-8") as log:
+        file.parent.mkdir(parents=True, exist_ok=True)
+        with file.open("w" if fresh else "a", encoding="utf-8") as log:
             log.write(f"{time.strftime('%Y-%m-%d %H:%M:%S')} {text}\n")
     except OSError:
         pass

@@ -85,7 +85,9 @@ def _plain(block: Block, reasons: dict[tuple[int, int], str]) -> list[list[float
         if cell is None:
             return ""
         if isinstance(cell, ExcelError):
-            return marked(cell.code, reasons.get(at, f"an input of this formula holds {cell.code}: mend it there"))
+            return marked(
+                cell.code, reasons.get(at, f"an input of this formula holds {cell.code}: mend it there")
+            )
         if isinstance(cell, bool | str):
             return cell
         return cell.isoformat() if isinstance(cell, dt.date) else float(cell)

@@ -70,10 +70,11 @@ def _worksheet_function(function: Function) -> Callable[..., Outcome | str]:
     kinds = inspect.Parameter
     answer.__name__ = function.name
     answer.__doc__ = function.summary
-    answer.__signature__ = inspect.Signature(  # type: ignore[attr-defined]
+    parameters = [
         kinds(a.name, kinds.VAR_POSITIONAL if a.repeats else kinds.POSITIONAL_OR_KEYWORD)
         for a in function.arguments
-    )
+    ]
+    answer.__signature__ = inspect.Signature(parameters)  # type: ignore[attr-defined]
     served: Any = answer
     for a in function.arguments:
         served = xw.arg(a.name, Cells, doc=a.help)(served)
