@@ -11,11 +11,19 @@ from moletally.sheet.functions import FUNCTIONS
 PINNED = Path(__file__).with_name("public_surface.txt")
 
 
+def commands(group, above=""):
+    for name, command in sorted(group.commands.items()):
+        if hasattr(command, "commands"):
+            yield from commands(command, f"{above}{name} ")
+        else:
+            yield above + name, command
+
+
 def surface() -> str:
     lines = ["worksheet functions"]
     lines += [f"  {f.signature}" for f in FUNCTIONS.values()]
     lines.append("command line")
-    for name, command in sorted(main.commands.items()):
+    for name, command in commands(main):
         words = [
             " ".join(p.opts) if p.param_type_name == "option" else (p.metavar or p.name.upper())
             for p in command.params
