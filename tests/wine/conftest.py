@@ -1,9 +1,11 @@
 """Windows Python under Wine, with our wheel in it: made once, kept in the folder that --windows names."""
 
+import json
 import os
 import shutil
 import signal
 import subprocess
+import tempfile
 import uuid
 import zipfile
 from dataclasses import dataclass
@@ -42,23 +44,28 @@ class Windows:
 
     def python(self, *args, env=None, timeout=120):
         """Run Windows Python and wait."""
-        return self._run("winpy", args, env, timeout)
+        with tempfile.TemporaryDirectory() as scratch:
+            file = Path(scratch, "environment.json")
+            file.write_text(json.dumps(env or {}), encoding="utf-8")
+            return self._run(
+                "winpy", [self.path(HERE / "client" / "launch.py"), self.path(file), *args], timeout
+            )
 
-    def wine(self, *args, env=None, timeout=120):
+    def wine(self, *args, timeout=120):
         """Run any Windows program and wait."""
-        return self._run("wine", args, env, timeout)
+        return self._run("wine", args, timeout)
 
-    def _run(self, program, args, env, timeout):
+    def _run(self, program, args, timeout):
         return subprocess.run(
             [str(self.folder / program), *map(str, args)], capture_output=True, text=True, timeout=timeout,
-            env={**os.environ, **(env or {})}, check=False, encoding="utf-8", errors="replace",
+            check=False, encoding="utf-8", errors="replace",
         )  # fmt: skip
 
-    def start(self, *args, env=None):
+    def start(self, *args):
         """Start Windows Python and go on; ended by `stop`."""
         return subprocess.Popen(
             [str(self.folder / "winpy"), *map(str, args)], stdout=subprocess.PIPE, stderr=subprocess.STDOUT,
-            start_new_session=True, env={**os.environ, **(env or {})},
+            start_new_session=True,
         )  # fmt: skip
 
 

@@ -12,6 +12,7 @@ __all__ = ["VESSELS", "solve"]
 VESSELS: dict[str, Callable[[Batch], Outlets]] = {"CSTR": cstr, "PFR": pfr}
 
 REMEMBERED_CASES = 50_000  # about 50 MB at 20 species; one large case table must not evict a whole book
+ENTRY = 3  # cases: what an answer costs besides its cases, so that many single ones keep to that size too
 
 
 class _Memory:
@@ -31,14 +32,14 @@ class _Memory:
     def put(self, key: tuple[object, ...], batch: Batch, outlets: Outlets) -> None:
         # The batch is kept with its answer: its network's identity is part of the key.
         self._answers[key] = (batch, outlets)
-        self._room -= len(batch)
+        self._room -= len(batch) + ENTRY
         while self._room < 0 and len(self._answers) > 1:
             _, (old, _) = self._answers.popitem(last=False)
-            self._room += len(old)
+            self._room += len(old) + ENTRY
 
     def clear(self) -> None:
         for batch, _ in self._answers.values():
-            self._room += len(batch)
+            self._room += len(batch) + ENTRY
         self._answers.clear()
 
 

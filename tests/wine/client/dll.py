@@ -69,7 +69,7 @@ class Client:
         feed = [["Species", "Feed"], ["A", 2.0], ["B", 0.0]]
         wrong, memory, begun = 0, 0, time.monotonic()
         for n in range(count):
-            if n == count // 4:
+            if n == count * 3 // 4:  # the memory of answers is full by then
                 memory = self.memory()
             tau = 0.001 * n
             got = self.server.call("CallUDF", MODULE, "MOLE_CSTR", [reactions, feed, tau])
