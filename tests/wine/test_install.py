@@ -196,11 +196,3 @@ def test_letters_outside_the_code_page_do_not_stop_it(windows, registry, tmp_pat
     assert code == 0, said
     assert user.addin.exists()
     assert user.excel("status")[0] == 0
-
-
-def test_the_command_recalculates_on_windows_too(windows, tmp_path):
-    """The whole wheel works there: not only the cells."""
-    book = tmp_path / "design.xlsx"
-    assert windows.python("-m", "moletally", "new", "amination", windows.path(book)).returncode == 0
-    done = windows.python("-m", "moletally", "recalc", windows.path(book))
-    assert done.returncode == 0, done.stdout + done.stderr

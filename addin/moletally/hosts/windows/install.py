@@ -38,13 +38,13 @@ def install(places: Places) -> list[str]:
 
 
 def _prepare(places: Places) -> str:
-    """Looks for what is in the way; the folder that has to be made, or what an earlier install remembers."""
+    """Looks for what is in the way; "yes" if the start-up folder has to be made, now or at an earlier install."""
     if places.addin.exists() and not is_ours(places.addin):
         raise InstallError(f"{places.addin} is another file of that name: move it away and run this again")
     before = settings.read(places)
     if before is not None:
         return before.made
-    return "" if places.startup.is_dir() else str(places.startup)
+    return "" if places.startup.is_dir() else "yes"
 
 
 def place_addin(places: Places, source: Path) -> None:
@@ -79,7 +79,7 @@ def uninstall(places: Places) -> list[str]:
         if file.is_file():
             file.unlink()
             done.append(f"removed {file}")
-    made = [Path(before.made)] if before is not None and before.made else []
+    made = [places.startup] if before is not None and before.made else []
     for folder in (places.data, *made):
         if folder.is_dir() and not any(folder.iterdir()):
             folder.rmdir()

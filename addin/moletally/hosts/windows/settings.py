@@ -19,7 +19,7 @@ class InstallError(Exception):
 
 @dataclass(frozen=True, slots=True)
 class Settings:
-    """The lines of excel.conf: versions, full paths, and the folders that install had to make."""
+    """The lines of excel.conf: versions, full paths, and whether install made the start-up folder."""
 
     moletally: str
     xlwings: str
