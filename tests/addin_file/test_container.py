@@ -17,7 +17,6 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from lxml import etree
-from office import ADDIN
 from xlam.compound import compound_file
 from xlam.compression import compress, decompress
 from xlam.project import Module, stored_source
@@ -25,6 +24,7 @@ from xlam.project import Module, stored_source
 import build as addin
 
 TEXTS = addin.sources()
+ADDIN = Path(addin.__file__).with_name(addin.ADDIN)
 
 
 def vba_bytes():

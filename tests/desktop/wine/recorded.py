@@ -11,7 +11,7 @@ from moletally.sheet.functions import call
 
 __all__ = ["BOOKS", "answer", "as_wire", "calls_of"]
 
-BOOKS = sorted((Path(__file__).parents[2] / "workbook_templates").glob("*.xlsx"))
+BOOKS = sorted((Path(__file__).parents[3] / "workbook_templates").glob("*.xlsx"))
 
 
 @cache

@@ -80,7 +80,7 @@ def test_installed_looked_at_and_taken_away_without_trace(user, registry):
     code, said = user.excel("install")
     assert code == 0, said
     assert (
-        user.addin.read_bytes() == (Path(__file__).parents[2] / "addin/windows/moletally.xlam").read_bytes()
+        user.addin.read_bytes() == (Path(__file__).parents[3] / "addin/windows/moletally.xlam").read_bytes()
     )
     settings = user.settings.read_text()
     assert f"python = {user.windows.executable}" in settings.replace("z:", "Z:")
