@@ -34,11 +34,12 @@ A cell gets a true Excel error, never text posing as a number and never a guess.
 | `#VALUE!` | The input can't be used. | Read the reason: it names the table, row, column and header, and says what to mend. |
 | `#NUM!` | There is no trustworthy answer. | See the table below; the reason in words is the same. |
 | `#N/A` | The quantity is undefined (0/0), such as a conversion of a species that is not fed. | Ask for another quantity, or feed the species. |
+| `#N/A` in Excel, in a cell that never had a value | There is no Python behind the cells. | Read the message, or run `moletally excel status`. |
 | `#SPILL!` | The cells a result needs are not empty. | Clear them. |
 | any other | An error in an input range is passed on. | Mend it where it arises. |
 
 The reason stands in the first row of `MOLE_AUDIT("CSTR", …the same arguments)`, in the report of
-`moletally recalc BOOK.xlsx` and in its `--json` output.
+`moletally recalc BOOK.xlsx` and in its `--json` output; in Excel, *Reason* on the moletally tab shows it.
 
 ## Why there is no trustworthy answer (`#NUM!`)
 """

@@ -15,16 +15,27 @@ End Sub
 
 ' What a cell shows while there is no service: its last value, or #N/A if it never had one.
 Public Function LastValue(ByVal home As String) As Variant
-    LastValue = CVErr(xlErrNA)
-    On Error GoTo NeverHad
-    LastValue = ShownValue(Application.Caller)
-    If Not IsError(LastValue) Then Exit Function
-NeverHad:
-    On Error Resume Next
-    noValue.Add home, home
-    MoleReasons.Forget home
-    LastValue = MoleReasons.Shown(home, MoleReasons.Marked("#N/A", "there is no Python behind the cells: " & MoleTransport.WhyAside()))
+    Dim value As Variant
+    If HasValue(value) Then
+        LastValue = value
+    Else
+        NoteWithout home
+        LastValue = MoleReasons.Shown(home, MoleReasons.Marked("#N/A", "there is no Python behind the cells: " & MoleTransport.WhyAside()))
+    End If
 End Function
+
+' True and the value if the calling cell shows one that can be kept.
+Private Function HasValue(ByRef value As Variant) As Boolean
+    On Error GoTo Unknown
+    value = ShownValue(Application.Caller)
+    HasValue = Not IsError(value)
+Unknown:
+End Function
+
+Private Sub NoteWithout(ByVal home As String)
+    On Error Resume Next ' it is noted already
+    noValue.Add home, home
+End Sub
 
 ' After a calculation: tells once what is wrong, and lets the sheets with our cells rest. Books without our
 ' cells are not bothered.
@@ -33,7 +44,7 @@ Public Sub Tell()
     RestSheets
     If resting.Count = 0 Then Exit Sub
     untold = False
-    MsgBox MoleTransport.WhyAside() & vbLf & vbLf & "The cells of moletally keep their last values until then." & vbLf & _
+    MsgBox MoleTransport.WhyAside() & vbLf & vbLf & "Sheets with cells of moletally keep their values until then: they are not calculated." & vbLf & _
         "When it is mended, choose Recalculate on the moletally tab.", vbExclamation, "moletally"
 End Sub
 
@@ -101,7 +112,7 @@ Private Function ShownValue(ByVal caller As Range) As Variant
     ShownValue = cells.Value2
     If IsEmpty(cells.Cells(1, 1).Value2) Then
         ShownValue = CVErr(xlErrNA)
-    ElseIf Not IsArray(ShownValue) Then
-        If ShownValue = 0 And Val(cells.Text) <> 0 Then ShownValue = CVErr(xlErrNA)
+    ElseIf VarType(ShownValue) = vbDouble Then
+        If ShownValue = 0 And cells.Text Like "*[1-9]*" Then ShownValue = CVErr(xlErrNA)
     End If
 End Function

@@ -68,7 +68,7 @@ Private Sub WriteRows(ByVal bookName As String)
         Next i
     Next j
     Set sheet = Application.Workbooks.Add(xlWBATWorksheet).Worksheets(1)
-    sheet.Range("A1").Value = "Audit of " & bookName & " by moletally " & MoleSettings.MOLETALLY & ", " & Format(Now, "yyyy-mm-dd hh:nn")
+    sheet.Range("A1").Value = "Audit of " & bookName & " by moletally " & MoleSettings.OWN_VERSION & ", " & Format(Now, "yyyy-mm-dd hh:nn")
     sheet.Range("A3").Resize(rows.Count + 1, 5).NumberFormat = "@"
     sheet.Range("A3").Resize(rows.Count + 1, 5).Value = block
     sheet.Range("A1,A3:E3").Font.Bold = True

@@ -38,6 +38,18 @@ Private Function ValuesInPlace(ByVal book As Workbook, ByVal target As String) A
         place.Value2 = source.Value2
         ValuesInPlace = ValuesInPlace + 1
     Next cell
+    DropLinks copy
     copy.Close SaveChanges:=True
     Application.EnableEvents = True
 End Function
+
+' The copy shall not ask for an add-in that its reader does not have.
+Private Sub DropLinks(ByVal copy As Workbook)
+    Dim links As Variant, link As Variant
+    links = copy.LinkSources(xlExcelLinks)
+    If IsEmpty(links) Then Exit Sub
+    On Error Resume Next ' a link that stays does no harm to the values
+    For Each link In links
+        If InStr(1, link, ThisWorkbook.Name, vbTextCompare) > 0 Then copy.BreakLink link, xlLinkTypeExcelLinks
+    Next link
+End Sub

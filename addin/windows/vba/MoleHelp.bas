@@ -7,13 +7,31 @@ Private isDescribed As Boolean
 
 ' Tells Excel the descriptions, once. Excel takes them only while a visible book is active.
 Public Sub Describe()
-    Dim name As Variant
     If isDescribed Or ActiveWorkbook Is Nothing Then Exit Sub
+    If Not IsTaken() Then DescribeShown
+    isDescribed = True
+End Sub
+
+Private Function IsTaken() As Boolean
+    Dim name As Variant
+    On Error GoTo Refused
     For Each name In MoleTable.Names()
         Application.MacroOptions Macro:="'" & ThisWorkbook.Name & "'!" & name, Description:=MoleTable.Summary(name), _
             Category:=MoleTable.CATEGORY, ArgumentDescriptions:=MoleTable.ArgumentHelp(name)
     Next name
-    isDescribed = True
+    IsTaken = True
+Refused:
+End Function
+
+' Excel may refuse descriptions for a hidden add-in: shown for a moment, it takes them.
+Private Sub DescribeShown()
+    Dim taken As Boolean
+    Application.ScreenUpdating = False
+    ThisWorkbook.IsAddin = False
+    taken = IsTaken()
+    ThisWorkbook.IsAddin = True
+    ThisWorkbook.Saved = True
+    Application.ScreenUpdating = True
 End Sub
 
 ' A new workbook with the functions, their arguments and what they give.
@@ -23,7 +41,7 @@ Public Sub WriteSheet()
     sheet.Columns("A").ColumnWidth = 16
     sheet.Columns("B").ColumnWidth = 110
     sheet.Columns("B").WrapText = True
-    sheet.Range("A1").Value = "Worksheet functions of moletally " & MoleSettings.MOLETALLY
+    sheet.Range("A1").Value = "Worksheet functions of moletally " & MoleSettings.OWN_VERSION
     row = 3
     For Each name In MoleTable.Names()
         sheet.Cells(row, 1).Value = MoleTable.Signature(name)

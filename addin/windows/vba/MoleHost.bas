@@ -30,6 +30,7 @@ Public Function RangeRead(ByVal source As Object, ByRef values As Variant, ByRef
 End Function
 
 Public Sub ShowStatus(ByVal text As String)
+    On Error Resume Next ' a text that Excel does not want now is no reason for an error in a cell
     If text = "" Then Application.StatusBar = False Else Application.StatusBar = text
 End Sub
 

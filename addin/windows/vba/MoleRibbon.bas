@@ -16,6 +16,10 @@ End Sub
 Public Sub MoleReason(ByVal control As IRibbonControl)
     Dim cell As Range, home As Range, reason As String
     If Not HasBook() Then Exit Sub
+    If ActiveCell Is Nothing Then
+        MsgBox "Select a cell first.", vbInformation, "moletally"
+        Exit Sub
+    End If
     Set cell = ActiveCell
     Set home = MoleBook.HomeOf(cell)
     If InStr(1, home.Formula, MoleBook.STEM, vbTextCompare) = 0 Then
@@ -38,7 +42,7 @@ End Sub
 
 Public Sub MoleStatus(ByVal control As IRibbonControl)
     Dim result As Variant, text As String, i As Long
-    text = "Macro file: moletally " & MoleSettings.MOLETALLY & ", " & ThisWorkbook.FullName & vbLf
+    text = "Macro file: moletally " & MoleSettings.OWN_VERSION & ", " & ThisWorkbook.FullName & vbLf
     If MoleTransport.Sent("about", Array(), result) Then
         For i = LBound(result, 1) To UBound(result, 1)
             text = text & result(i, LBound(result, 2)) & ": " & result(i, UBound(result, 2)) & vbLf
@@ -56,6 +60,10 @@ End Sub
 ' The calculation is done again, so that the reasons belong to what the cell shows.
 Private Function ReasonOf(ByVal cell As Range, ByVal home As Range) As String
     Dim key As String
+    If MoleTransport.IsAside() Then
+        ReasonOf = MoleTransport.WhyAside()
+        Exit Function
+    End If
     key = home.Address(External:=True)
     MoleReasons.Forget key
     home.Dirty

@@ -4,8 +4,8 @@ Attribute VB_Name = "MoleSettings"
 Option Explicit
 Option Private Module
 
-Public Const MOLETALLY As String = "{moletally}"
-Public Const XLWINGS As String = "{xlwings}"
+Public Const OWN_VERSION As String = "{moletally}"
+Public Const DLL_VERSION As String = "{xlwings}"
 Private Const MEND As String = " Run: moletally excel install"
 Private Const LONGEST As Long = 2000 ' characters; the DLL has room for 2048
 
@@ -17,10 +17,10 @@ Public Function Broken() As String
     isRead = False
     If Not FileThere(SettingsFile()) Then
         Broken = "moletally is not installed for you on this computer: " & SettingsFile() & " is missing." & MEND
-    ElseIf Setting("moletally") <> MOLETALLY Then
-        Broken = "This macro file is moletally " & MOLETALLY & ", the Python part is " & Setting("moletally") & "." & MEND
-    ElseIf Setting("xlwings") <> XLWINGS Then
-        Broken = "This macro file was made for xlwings " & XLWINGS & ", installed is " & Setting("xlwings") & "." & MEND
+    ElseIf Setting("moletally") <> OWN_VERSION Then
+        Broken = "This macro file is moletally " & OWN_VERSION & ", the Python part is " & Setting("moletally") & "." & MEND
+    ElseIf Setting("xlwings") <> DLL_VERSION Then
+        Broken = "This macro file was made for xlwings " & DLL_VERSION & ", installed is " & Setting("xlwings") & "." & MEND
     ElseIf Not FileThere(PythonFile()) Then
         Broken = "Python is missing: " & PythonFile() & " does not exist. Install Python and moletally again, then run: moletally excel install"
     ElseIf Not FileThere(LibraryFile()) Then

@@ -8,11 +8,13 @@ from pathlib import Path
 
 import build as addin
 
-__all__ = ["ADDIN", "WITH_STAND_INS", "compiles", "run_basic"]
+__all__ = ["ADDIN", "ON_SHEETS", "WITH_STAND_INS", "compiles", "run_basic"]
 
 HERE = Path(__file__).parent
 ADDIN = Path(addin.__file__).with_name(addin.ADDIN)
-WITH_STAND_INS = {path.name: path.read_text(encoding="utf-8") for path in (HERE / "basic").glob("*.bas")}
+BASIC = {path.name: path.read_text(encoding="utf-8") for path in (HERE / "basic").glob("*.bas")}
+ON_SHEETS = {"MoleSheets.bas": BASIC.pop("MoleSheets.bas")}  # beside the add-in's own modules
+WITH_STAND_INS = BASIC  # in place of those that need Excel or Python
 PYTHON = os.environ.get("OFFICE_PYTHON", "/usr/bin/python3")  # the one that can import LibreOffice's uno
 
 

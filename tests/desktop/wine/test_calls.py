@@ -4,16 +4,21 @@ import datetime as dt
 import json
 import math
 import re
+import uuid
 from pathlib import Path
 
 import pytest
 import vbscript
+from conftest import stop
+from office import WITH_STAND_INS, run_basic
 from recorded import BOOKS, answer, as_wire, calls_of
 
-from moletally.hosts.windows.values import MARK
+import build as addin
+from moletally.hosts.windows.values import ERRORS, MARK
 from moletally.sheet.cells import OMITTED, ExcelError
 from moletally.sheet.functions import FUNCTIONS
 
+HERE = Path(__file__).parent
 MODULE = "moletally.hosts.windows.worksheet"
 R = (("Reaction", "Rate", "k", "k unit"), ("A -> B", "k*A^0.5", 0.4, "mol^0.5/(L^0.5 min)"))
 F = (("Species", "Feed [mol/L]"), ("A", 2.0), ("B", 0.0))
@@ -65,11 +70,11 @@ def without_reasons(value):
     ]
 
 
-def run_script(windows, server, calls, tmp_path):
-    """The values that VBScript got for the calls."""
+def run_script(windows, server, calls, tmp_path, ranges=""):
+    """The values that VBScript got for the calls; ranges : class id of the program that gives Range objects."""
     file = tmp_path / "calls.vbs"
     file.write_text(vbscript.script(MODULE, calls), encoding="ascii")
-    done = windows.wine("cscript.exe", "//nologo", windows.path(file), server, timeout=300)
+    done = windows.wine("cscript.exe", "//nologo", windows.path(file), server, ranges, timeout=300)
     values = vbscript.parsed(done.stdout)
     assert len(values) == len(calls), done.stdout[-2000:] + done.stderr[-2000:]
     return values
@@ -79,8 +84,8 @@ def run_client(windows, server, script, calls, tmp_path):
     """The values that a client in Windows Python got for the calls."""
     asked, told = tmp_path / "asked.json", tmp_path / "told.json"
     asked.write_text(json.dumps(calls), encoding="utf-8")
-    client = windows.path(Path(__file__).parent / "client" / script)
-    done = windows.python(client, server, windows.path(asked), windows.path(told), timeout=300)
+    client, *mode = (windows.path(HERE / "client" / script), *(["call"] if script == "ranges.py" else []))
+    done = windows.python(client, *mode, server, windows.path(asked), windows.path(told), timeout=300)
     assert done.returncode == 0, (done.stdout + done.stderr)[-3000:]
     results = json.loads(told.read_text(encoding="utf-8"))
     assert all(state == "ok" for state, _ in results), results
@@ -140,17 +145,43 @@ def test_failing_cases_from_vbscript(windows, server, tmp_path):
     assert [rectangle(v)[0][0].split(MARK)[1] for v in got] == [code for _, _, code in sendable]
 
 
-def test_rates_by_every_client(windows, server, tmp_path):
-    arguments = [R, F]
-    for value in (
-        *run_client(
-            windows, server, "ranges.py", [("MOLE_RATES", [as_wire(a, "range") for a in arguments])], tmp_path
-        ),
-    ):
-        expected = answer("MOLE_RATES", arguments)
+def test_vbscript_hands_over_range_objects(windows, server, tmp_path):
+    """As Excel does to the add-in's VBA: the objects live in one program, a second passes them to the server."""
+    made = calls_of(BOOKS[-1])
+    calls = [(name, [as_wire(a, "range") for a in arguments]) for name, arguments, _ in made]
+    blocks = [a for _, arguments in calls for a in arguments if isinstance(a, dict) and "range" in a]
+    (tmp_path / "blocks.json").write_text(json.dumps(blocks), encoding="utf-8")
+    class_id = "{" + str(uuid.uuid4()) + "}"
+    giver = windows.start(
+        windows.path(HERE / "client" / "ranges.py"), "serve", class_id, windows.path(tmp_path / "blocks.json")
+    )
+    try:
+        assert b"served" in giver.stdout.readline()
+        got = run_script(windows, server, calls, tmp_path, class_id)
+    finally:
+        stop(giver)
+    for (name, arguments, _), value in zip(made, got, strict=True):
+        expected = answer(name, arguments)
+        shown = without_reasons(value)
         assert all(
-            close(g, e) for gs, es in zip(value, expected, strict=True) for g, e in zip(gs, es, strict=True)
-        )
+            close(g, e) for gs, es in zip(shown, expected, strict=True) for g, e in zip(gs, es, strict=True)
+        ), name
+
+
+def test_what_came_over_com_is_a_true_error_in_a_cell(windows, server, tmp_path):
+    """From Python through COM and VBScript into the add-in's VBA, which LibreOffice runs: number and reason."""
+    calls = [
+        (name, [as_wire(a) for a in arguments])
+        for name, arguments, _ in FAILING
+        if "ExcelError" not in repr(arguments)
+    ]
+    came = [rectangle(value)[0][0] for value in run_script(windows, server, calls, tmp_path)]
+    addin.write(tmp_path / "standin.xlam", addin.sources() | WITH_STAND_INS)
+    shown = run_basic(tmp_path / "standin.xlam", [["MoleScenarios.AsShown", [text]] for text in came])
+    for text, result in zip(came, shown, strict=True):
+        _, code, reason = text.split(MARK)
+        number = next(n for n, c in ERRORS.items() if c == code)
+        assert result.split("\n") == [f"error {number}", reason]
 
 
 def test_a_currency_cell_is_not_cut_to_four_decimals(windows, server, tmp_path):

@@ -85,8 +85,14 @@ def _literal(cell) -> str:
 
 
 def script(module: str, calls) -> str:
-    """The text of a script that makes the calls in turn; a call is (name, arguments)."""
+    """The text of a script that makes the calls in turn; a call is (name, arguments).
+
+    Its arguments: the class id of the server; where ranges are asked for, that of the program that gives them.
+    """
     lines = [HEAD]
+    if any("range" in a for _, arguments in calls for a in arguments if isinstance(a, dict)):
+        lines.append('Dim ranges\nSet ranges = GetObject("new:" & WScript.Arguments(1))')
+    given = 0
     for n, (name, arguments) in enumerate(calls):
         names = []
         for k, argument in enumerate(arguments):
@@ -99,6 +105,9 @@ def script(module: str, calls) -> str:
                     for j, c in enumerate(row)
                 ]
                 names.append(f"t{n}_{k}")
+            elif isinstance(argument, dict) and "range" in argument:
+                names.append(f"ranges.Item({given})")
+                given += 1
             elif argument == {"left out": True}:
                 names.append('Chr(1) & "left out"')  # as the add-in's VBA says it
             else:

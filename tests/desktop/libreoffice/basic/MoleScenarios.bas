@@ -52,3 +52,7 @@ Public Function Reason() As String
     MoleHost.CallFrom "[Book]S!$A$1"
     Reason = Cell(MOLE_CSTR(1)) & vbLf & MoleReasons.ReasonAt("[Book]S!$A$1", 0, 0)
 End Function
+
+Public Function AsShown(ByVal result As String) As String
+    AsShown = Cell(MoleReasons.Shown("[Book]S!$C$3", result)) & vbLf & MoleReasons.ReasonAt("[Book]S!$C$3", 0, 0)
+End Function

@@ -1,8 +1,10 @@
-"""Calls functions with Range objects: ranges.py CLASS_ID CALLS.json RESULTS.json
+"""Range objects without Excel: the least of its object model that xlwings needs.
 
-The objects are the least of Excel's Range that xlwings needs, served from this process. What makes one pass
-for a Range is its type information: xlwings compares the IID of the object's type with Excel's Range. Written
-on the model of measurements made before this project.
+    ranges.py call CLASS_ID CALLS.json RESULTS.json     calls functions with them from here
+    ranges.py serve CLASS_ID BLOCKS.json                gives them to another program: server.Item(number)
+
+What makes one pass for a Range is its type information: xlwings compares the IID of the object's type with
+Excel's Range. Written on the model of measurements made before this project.
 """
 
 import datetime as dt
@@ -14,7 +16,9 @@ import tempfile
 
 import pythoncom
 import pywintypes
+import win32api
 import win32com.client
+import win32event
 from calls import MODULE
 from win32com.client import VARIANT
 from win32com.server import policy, util
@@ -148,8 +152,19 @@ class Make:
         return served(Range(rows, int(areas[6:])))
 
 
-if __name__ == "__main__":
-    class_id, asked, told = sys.argv[1:]
+class Ranges:
+    """Ranges by number, for a program that can make none."""
+
+    _public_methods_ = ("Item",)
+
+    def __init__(self, blocks):
+        self.blocks = blocks
+
+    def Item(self, number):  # noqa: N802
+        return decoded(self.blocks[int(number)], Make)
+
+
+def call(class_id, asked, told):
     server = win32com.client.Dispatch(
         pythoncom.CoCreateInstance(
             pywintypes.IID(class_id), None, pythoncom.CLSCTX_LOCAL_SERVER, pythoncom.IID_IDispatch
@@ -165,3 +180,29 @@ if __name__ == "__main__":
             results.append(["failed", str(error)])
     with open(told, "w", encoding="utf-8") as f:
         json.dump(results, f)
+
+
+def serve(class_id, file):
+    """Serve until the last object is let go."""
+    with open(file, encoding="utf-8") as f:
+        blocks = json.load(f)
+    own = pywintypes.IID(class_id)
+
+    class Given(policy.DefaultPolicy):
+        def _CreateInstance_(self, asked, iid):  # noqa: N802
+            return util.wrap(Ranges(blocks), iid)
+
+    policy.DefaultPolicy = Given
+    flags = pythoncom.REGCLS_MULTIPLEUSE
+    number = pythoncom.CoRegisterClassObject(
+        own, pythoncom.MakePyFactory(own), pythoncom.CLSCTX_LOCAL_SERVER, flags
+    )
+    pythoncom.EnableQuitMessage(win32api.GetCurrentThreadId())
+    print("ranges are served", flush=True)
+    while not pythoncom.PumpWaitingMessages():
+        win32event.MsgWaitForMultipleObjects((), 0, win32event.INFINITE, win32event.QS_ALLEVENTS)
+    pythoncom.CoRevokeClassObject(number)
+
+
+if __name__ == "__main__":
+    {"call": call, "serve": serve}[sys.argv[1]](*sys.argv[2:])
