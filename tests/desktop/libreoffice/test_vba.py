@@ -201,6 +201,6 @@ def test_ranges_are_read_with_the_modules_that_excel_runs(tmp_path):
     )
     assert ranges.split("\n") == [
         "2x2 String moletally", "4x2 String moletally", "3x2 String xlwings", "1x1 Double 0.00003217",
-        "1x1 Boolean True", "1x1 Empty ", "1x1 Empty ", "this is several ranges; give one range",
+        "1x1 String text", "1x1 Empty ", "1x1 Empty ", "this is several ranges; give one range",
     ]  # fmt: skip
     assert own.split("\n") == ['$E$1 ="MOLE_CSTR("&A1', '$G$3 =LEN("mole_pfr(2)")', ""]

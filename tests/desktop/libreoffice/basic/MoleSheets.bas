@@ -17,7 +17,7 @@ End Function
 
 Public Function Ranges() As String
     Sheet().Range("A4").Value = 0.00003217
-    Sheet().Range("B4").Value = True
+    Sheet().Range("B4").Value = "text"
     Ranges = ReadAs("A1:B2") & vbLf & ReadAs("A:C") & vbLf & ReadAs("2:9") & vbLf & ReadAs("A4") & vbLf & ReadAs("B4") & vbLf & _
         ReadAs("B3") & vbLf & ReadAs("Z99") & vbLf & ReadAs("A1:A2,B1:B2")
 End Function
