@@ -39,7 +39,7 @@ Private Sub AddHome(ByVal cell As Range, ByRef own As Collection)
     Dim first As Range
     Set first = HomeOf(cell)
     On Error Resume Next ' the key is there: another cell of the same array
-    own.Add first, first.Address(External:=True)
+    own.Add first, first.Worksheet.Name & "!" & first.Address
 End Sub
 
 ' The cell that holds the formula behind a cell: itself, or the first cell of its array or spill.

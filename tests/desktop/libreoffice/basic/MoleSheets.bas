@@ -21,13 +21,3 @@ Public Function Ranges() As String
     Ranges = ReadAs("A1:B2") & vbLf & ReadAs("A:C") & vbLf & ReadAs("2:9") & vbLf & ReadAs("A4") & vbLf & ReadAs("B4") & vbLf & _
         ReadAs("B3") & vbLf & ReadAs("Z99") & vbLf & ReadAs("A1:A2,B1:B2")
 End Function
-
-Public Function OwnCells() As String
-    Dim cell As Variant
-    Sheet().Range("E1").Formula = "=""MOLE_CSTR(""&A1"
-    Sheet().Range("E2").Formula = "=1+1"
-    Sheet().Range("G3").Formula = "=LEN(""mole_pfr(2)"")"
-    For Each cell In MoleBook.OwnCells(ThisWorkbook)
-        OwnCells = OwnCells & cell.Address & " " & MoleBook.FormulaOf(cell) & vbLf
-    Next cell
-End Function
