@@ -13,6 +13,8 @@ FREE, END, FAT = 0xFFFFFFFF, 0xFFFFFFFE, 0xFFFFFFFD
 STORAGE, STREAM, ROOT = 1, 2, 5
 RED, BLACK = 0, 1
 FATS_IN_HEADER = 109
+LONGEST_NAME = 31  # UTF-16 units
+SEPARATORS = set("/\\:!")
 
 
 @dataclass(slots=True)
@@ -54,7 +56,14 @@ class Sectors:
 
 
 def compound_file(tree: Tree) -> bytes:
-    """The bytes of a compound file that holds the tree."""
+    """The bytes of a compound file that holds the tree.
+
+    Raises
+    ------
+    ValueError
+        If a name is longer than the format's 31 letters or holds one of its separators, if two names differ in
+        capitals alone, or if all of it is larger than about 7 MB.
+    """
     entries = [Entry("Root Entry", ROOT)]
     _add(entries, 0, tree)
     sectors = Sectors()
@@ -71,6 +80,7 @@ def compound_file(tree: Tree) -> bytes:
 def _add(entries: list[Entry], parent: int, tree: Tree) -> None:
     """Add the entries of a storage, and below it as a red-black tree."""
     numbers: list[int] = []
+    _check_names(tree)
     for name in sorted(tree, key=_order):
         node = tree[name]
         numbers.append(len(entries))
@@ -81,6 +91,18 @@ def _add(entries: list[Entry], parent: int, tree: Tree) -> None:
             _add(entries, numbers[-1], node)
     deepest = (len(numbers) + 1).bit_length() - 1  # levels that are full; what lies below is red
     entries[parent].child = _subtree(entries, numbers, 0, deepest)
+
+
+def _check_names(tree: Tree) -> None:
+    seen: set[str] = set()
+    for name in tree:
+        if not name or len(name.encode("utf-16le")) > 2 * LONGEST_NAME or SEPARATORS & set(name):
+            raise ValueError(
+                f"{name!r}: a name in a compound file has 1 to {LONGEST_NAME} letters, none of / \\ : !"
+            )
+        if name.upper() in seen:
+            raise ValueError(f"{name!r} is there twice: capitals make no difference")
+        seen.add(name.upper())
 
 
 def _order(name: str) -> tuple[int, str]:

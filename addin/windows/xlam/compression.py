@@ -22,16 +22,20 @@ def decompress(container: bytes) -> bytes:
     Raises
     ------
     ValueError
-        If it isn't one.
+        If it isn't one, or only a part of one.
     """
     if container[:1] != b"\x01":
         raise ValueError("no compressed container: it has to begin with 01")
     plain, at = bytearray(), 1
     while at < len(container):
+        if at + 3 > len(container):
+            raise ValueError(f"the chunk at {at} is cut off")
         (header,) = struct.unpack_from("<H", container, at)
         if header & 0x7000 != SIGNATURE:
             raise ValueError(f"no chunk at {at}")
         end = at + (header & 0x0FFF) + 3
+        if end > len(container):
+            raise ValueError(f"the chunk at {at} is cut off")
         body = container[at + 2 : end]
         plain += _plain(body) if header & PACKED else body
         at = end
@@ -99,9 +103,11 @@ def _plain(body: bytes) -> bytes:
             if at >= len(body):
                 break
             if flags >> bit & 1:
-                (token,) = struct.unpack_from("<H", body, at)
+                token = int.from_bytes(body[at : at + 2], "little")
                 bits = _offset_bits(len(out))
                 start = len(out) - (token >> (16 - bits)) - 1
+                if start < 0 or at + 2 > len(body):
+                    raise ValueError("a copy of what is not there")
                 for k in range((token & (0xFFFF >> bits)) + 3):
                     out.append(out[start + k])
                 at += 2

@@ -5,7 +5,7 @@ import struct
 import uuid
 from dataclasses import dataclass
 
-from xlam.compound import compound_file
+from xlam.compound import Tree, compound_file
 from xlam.compression import compress
 
 __all__ = ["Module", "stored_source", "vba_project"]
@@ -60,13 +60,22 @@ def _document_attributes(name: str, base: str) -> str:
 
 
 def vba_project(modules: list[Module], name: str, description: str) -> bytes:
-    """The bytes of vbaProject.bin."""
+    """The bytes of vbaProject.bin.
+
+    Raises
+    ------
+    ValueError
+        If two modules share a name, whatever their capitals, or one has a name or a text that can't be stored.
+    """
+    names = [m.name.lower() for m in modules]
+    if twice := {m.name for m in modules if names.count(m.name.lower()) > 1}:
+        raise ValueError(f"modules of the same name: {', '.join(sorted(twice))}")
     modules = sorted(modules, key=lambda m: m.kind != "document")
-    streams = {m.name: compress(stored_source(m)) for m in modules}
+    streams: Tree = {m.name: compress(stored_source(m)) for m in modules}
     streams["dir"] = compress(_directory(modules, name, description))
     streams["_VBA_PROJECT"] = b"\xcc\x61\xff\xff\x00\x00\x00"  # no compiled code: 2.3.4.1
     return compound_file(
-        {"VBA": dict(streams), "PROJECT": _project_text(modules, name), "PROJECTwm": _name_map(modules)}
+        {"VBA": streams, "PROJECT": _project_text(modules, name), "PROJECTwm": _name_map(modules)}
     )
 
 
