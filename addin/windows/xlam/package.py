@@ -60,9 +60,9 @@ def write_package(path: Path, *, vba: bytes, ribbon: str, images: Mapping[str, b
     with zipfile.ZipFile(path, "w") as package:
         for name, data in parts.items():
             entry = zipfile.ZipInfo(name, STAMP)
-            entry.compress_type = zipfile.ZIP_DEFLATED
+            entry.compress_type = zipfile.ZIP_STORED  # the bytes must not depend on whose zlib it is
             entry.create_system = 0
-            package.writestr(entry, data, compresslevel=9)
+            package.writestr(entry, data)
 
 
 def _content_types() -> str:

