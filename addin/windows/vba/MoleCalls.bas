@@ -16,17 +16,20 @@ End Sub
 
 Public Function Answered(ByVal name As String, ByVal arguments As Variant) As Variant
     Dim home As String, sent() As Variant, problem As String, result As Variant
+    On Error GoTo Failed
     home = MoleHost.Home()
     If Not Gathered(name, arguments, sent, problem) Then
-        Answered = MoleReasons.Shown(home, MoleReasons.Marked("#VALUE!", problem))
-        Exit Function
-    End If
-    If MoleTransport.Sent(name, sent, result) Then
+        result = MoleReasons.Marked("#VALUE!", problem)
+    ElseIf MoleTransport.Sent(name, sent, result) Then
         MoleAudit.Note home, name, sent
-        Answered = MoleReasons.Shown(home, result)
     Else
         Answered = MoleAside.LastValue(home)
+        Exit Function
     End If
+    Answered = MoleReasons.Shown(home, result)
+    Exit Function
+Failed:
+    Answered = MoleReasons.Shown(home, MoleReasons.Marked("#VALUE!", name & " could not be asked: " & Err.Description))
 End Function
 
 ' Arguments as values: each range becomes an array, what was left out stays left out.
