@@ -74,10 +74,7 @@ Private Sub Repair(ByVal book As Workbook, ByVal links As Collection, ByVal cell
     mode = Application.Calculation
     Application.Calculation = xlCalculationManual
     For Each link In links
-        On Error Resume Next
-        book.ChangeLink link, ThisWorkbook.FullName, xlLinkTypeExcelLinks
-        If Err.Number <> 0 Then failed = failed + 1
-        On Error GoTo 0
+        If Not IsChanged(book, link) Then failed = failed + 1
     Next link
     For Each cell In cells
         If Not Entered(cell) Then failed = failed + 1
@@ -87,6 +84,13 @@ Private Sub Repair(ByVal book As Workbook, ByVal links As Collection, ByVal cell
         MsgBox CStr(failed) & " formulas or links could not be changed; the audit of the book shows which cells do not answer.", vbExclamation, "moletally"
     End If
 End Sub
+
+Private Function IsChanged(ByVal book As Workbook, ByVal link As String) As Boolean
+    On Error GoTo Refused
+    book.ChangeLink link, ThisWorkbook.FullName, xlLinkTypeExcelLinks
+    IsChanged = True
+Refused:
+End Function
 
 ' Enters a formula again in our spelling: a dynamic array stays one, a fixed array keeps its range.
 Private Function Entered(ByVal cell As Object) As Boolean

@@ -4,7 +4,7 @@ Option Explicit
 Option Private Module
 
 Public Sub HandOver(ByVal book As Workbook)
-    Dim target As Variant, stem As String
+    Dim target As Variant, stem As String, copy As Workbook, count As Long
     If book.Path = "" Then
         MsgBox "Save the book first: the copy is made from its file.", vbInformation, "moletally"
         Exit Sub
@@ -18,18 +18,23 @@ Public Sub HandOver(ByVal book As Workbook)
     End If
     On Error GoTo Failed
     book.SaveCopyAs target
-    MsgBox CStr(ValuesInPlace(book, CStr(target))) & " formulas hold their values in " & target & ".", vbInformation, "moletally"
+    Application.EnableEvents = False ' the copy is not to be adopted
+    Set copy = Application.Workbooks.Open(target, UpdateLinks:=0)
+    count = ValuesInPlace(book, copy)
+    DropLinks copy
+    copy.Close SaveChanges:=True
+    Application.EnableEvents = True
+    MsgBox CStr(count) & " formulas hold their values in " & target & ".", vbInformation, "moletally"
     Exit Sub
 Failed:
     Application.EnableEvents = True
     MsgBox "The copy could not be made: " & Err.Description, vbExclamation, "moletally"
+    If Not copy Is Nothing Then copy.Close SaveChanges:=False
 End Sub
 
 ' The values are those that the live book shows, so that no calculation in the copy can change them.
-Private Function ValuesInPlace(ByVal book As Workbook, ByVal target As String) As Long
-    Dim copy As Workbook, cell As Variant, source As Range, place As Range
-    Application.EnableEvents = False
-    Set copy = Application.Workbooks.Open(target, UpdateLinks:=0)
+Private Function ValuesInPlace(ByVal book As Workbook, ByVal copy As Workbook) As Long
+    Dim cell As Variant, source As Range, place As Range
     For Each cell In MoleBook.OwnCells(book)
         Set source = cell
         If MoleBook.IsFixedArray(cell) Then Set source = cell.CurrentArray Else Set source = MoleBook.SpillOf(cell)
@@ -38,9 +43,6 @@ Private Function ValuesInPlace(ByVal book As Workbook, ByVal target As String) A
         place.Value2 = source.Value2
         ValuesInPlace = ValuesInPlace + 1
     Next cell
-    DropLinks copy
-    copy.Close SaveChanges:=True
-    Application.EnableEvents = True
 End Function
 
 ' The copy shall not ask for an add-in that its reader does not have.
