@@ -8,18 +8,22 @@ import zipfile
 from dataclasses import dataclass
 from pathlib import Path
 
-import moletally
 from moletally.hosts.windows import registry, settings
-from moletally.hosts.windows.install import is_ours
+from moletally.hosts.windows.install import is_marked, title
+from moletally.hosts.windows.own_excel import TITLE
 from moletally.hosts.windows.places import Places, packaged_addin
+from moletally.hosts.windows.policies import rules
 from moletally.hosts.windows.settings import Settings
 
 __all__ = ["Link", "chain"]
 
 INSTALL = "run: moletally excel install"
 REINSTALL = "run: pip install --force-reinstall moletally, then: moletally excel install"
+CLOSE = "to have it looked at, close all Excel windows and run this again"
+NOT_TRIED = "not tried: no Python that starts is pinned"
 START_WITHIN = 30  # s
-NEEDED = ("numpy", "scipy", "pandas", "pythoncom", "win32api", "xlwings", "moletally")
+VERSIONED = ("moletally", "xlwings")  # what belongs together
+NEEDED = ("numpy", "scipy", "pandas", "pythoncom", "win32api", *VERSIONED)
 PROBE = f"""
 import importlib, json
 found = {{}}
@@ -35,16 +39,16 @@ print(json.dumps(found))
 
 @dataclass(frozen=True, slots=True)
 class Link:
-    """A link of the chain: `mend` is empty if it holds."""
+    """A link of the chain.
+
+    state : True if it holds, False if it is broken, None if that can't be told
+    mend : what to do if it does not hold; "" where another link has to be mended first
+    """
 
     name: str
+    state: bool | None
     found: str
     mend: str = ""
-
-    @property
-    def holds(self) -> bool:
-        """True if there is nothing to mend."""
-        return not self.mend
 
 
 def chain(places: Places) -> list[Link]:
@@ -55,50 +59,71 @@ def chain(places: Places) -> list[Link]:
         _excel(),
         _addin(places),
         _settings(places, found),
-        _versions(places, found),
-        _trust(),
+        _versions(places, found, imports),
+        _trust(places),
         _python(found, imports),
         *_packages(imports),
-        _dll(found),
+        *_dlls(found),
         _kernel(imports),
     ]
 
 
 def _excel() -> Link:
-    there = registry.excel_is_registered()
-    return Link("Excel", "registered" if there else "not found", "" if there else "install Excel for Windows")
+    if registry.excel_is_registered():
+        return Link("Excel", True, "registered")
+    return Link("Excel", False, "not found",
+                "install Excel for Windows; without it: moletally recalc BOOK.xlsx")  # fmt: skip
 
 
 def _addin(places: Places) -> Link:
     name = "macro file"
     if not places.addin.is_file():
-        return Link(name, f"{places.addin} is missing", INSTALL)
+        return Link(name, False, f"{places.addin} is missing", INSTALL)
     if registry.is_disabled():
-        return Link(name, "Excel has disabled it after a crash",
+        return Link(name, False, "Excel has disabled it after a crash",
                     "in Excel: File, Options, Add-ins, Manage: Disabled Items, Go, choose moletally, Enable")  # fmt: skip
-    if not is_ours(places.addin):
-        return Link(name, f"{places.addin} is another file", "move it away, then " + INSTALL)
-    if Path(f"{places.addin}:Zone.Identifier").is_file():
-        return Link(name, "marked as coming from the internet: Excel blocks its macros", INSTALL)
-    same = places.addin.read_bytes() == packaged_addin().read_bytes()
-    return Link(name, f"{places.addin}{'' if same else ', made by your own Excel or another version'}")
+    try:
+        called = title(places.addin)
+        same = places.addin.read_bytes() == packaged_addin().read_bytes()
+    except PermissionError:
+        return Link(name, None, f"{places.addin} is held, most likely by Excel", CLOSE)
+    if not called.startswith("moletally"):
+        return Link(name, False, f"{places.addin} is another file", "move it away, then " + INSTALL)
+    if is_marked(places.addin):
+        return Link(name, False, "marked as coming from the internet: Excel blocks its macros", INSTALL)
+    if called == TITLE:
+        return Link(name, True, f"{places.addin}, made by your own Excel")
+    if not same:
+        return Link(name, False, f"{places.addin} is not the file that came with this installation", INSTALL)
+    return Link(name, True, str(places.addin))
 
 
 def _settings(places: Places, found: Settings | None) -> Link:
     if found is None:
-        return Link("settings", f"{places.settings} is missing", INSTALL)
-    return Link("settings", str(places.settings))
+        return Link("settings", False, f"{places.settings} is missing", INSTALL)
+    if doubts := settings.unreadable(places):
+        return Link("settings", None, "; ".join(doubts),
+                    "if Excel says that moletally is not installed, use an account with plain letters")  # fmt: skip
+    return Link("settings", True, str(places.settings))
 
 
-def _versions(places: Places, found: Settings | None) -> Link:
-    """The macro file, the settings and this installation have to be of one version."""
-    wanted = _wanted(places.addin)
-    have = {"moletally": found.moletally, "xlwings": found.xlwings} if found else {}
-    if not wanted or not have:
-        return Link("versions", "can't be compared", INSTALL)
-    shown = ", ".join(f"{k}: macro file {wanted.get(k, '?')}, installed {have[k]}" for k in have)
-    fits = wanted == have and have["moletally"] == moletally.__version__
-    return Link("versions", shown, "" if fits else INSTALL)
+def _versions(places: Places, found: Settings | None, imports: dict[str, str]) -> Link:
+    """The macro file, the settings and the pinned Python have to be of one version."""
+    try:
+        wanted = _wanted(places.addin)
+    except PermissionError:
+        return Link("versions", None, "the macro file is held, most likely by Excel", CLOSE)
+    if not wanted or found is None:
+        return Link("versions", None, "can't be compared: nothing is installed")
+    if not imports:
+        return Link("versions", None, "can't be compared: the pinned Python does not start")
+    noted = {"moletally": found.moletally, "xlwings": found.xlwings}
+    parts = [[source.get(name, "none") for source in (wanted, noted, imports)] for name in VERSIONED]
+    if all(len(set(part)) == 1 for part in parts):
+        return Link("versions", True, ", ".join(f"{n} {p[0]}" for n, p in zip(VERSIONED, parts, strict=True)))
+    shown = (f"{n}: macro file {p[0]}, settings {p[1]}, Python {p[2].removeprefix('! ')}"
+             for n, p in zip(VERSIONED, parts, strict=True))  # fmt: skip
+    return Link("versions", False, "; ".join(shown), INSTALL if parts[1][0] == parts[1][2] else REINSTALL)
 
 
 def _wanted(addin: Path) -> dict[str, str]:
@@ -106,33 +131,42 @@ def _wanted(addin: Path) -> dict[str, str]:
     try:
         with zipfile.ZipFile(addin) as package:
             texts = re.findall(r"<t[^>]*>([^<]*)</t>", package.read("xl/sharedStrings.xml").decode())
-    except (OSError, KeyError, zipfile.BadZipFile):
+    except (FileNotFoundError, KeyError, zipfile.BadZipFile):
         return {}
     return dict(zip(texts[::2], texts[1::2], strict=False))
 
 
-def _trust() -> Link:
-    policies = registry.forbidden()
-    if policies:
-        return Link("macros", "; ".join(policies), "ask IT to allow macros from Excel's start-up folder")
-    return Link("macros", "no policy forbids them")
+def _trust(places: Places) -> Link:
+    """Macros of the start-up folder have to be allowed, by Excel's list of trusted folders and by IT."""
+    found = rules()
+    for stops in (True, None):
+        if against := [rule for rule in found if rule.stops is stops]:
+            mends = dict.fromkeys(rule.mend for rule in against)
+            return Link(
+                "macros", False if stops else None, "; ".join(r.text for r in against), "; ".join(mends)
+            )
+    if missing := registry.untrusting(places.startup):
+        versions = " and ".join(missing)
+        return Link("macros", False, f"Excel {versions} does not trust {places.startup}", INSTALL)
+    return Link(
+        "macros", True, "; ".join(["Excel trusts its start-up folder", *(rule.text for rule in found)])
+    )
 
 
 def _python(found: Settings | None, imports: dict[str, str]) -> Link:
     if found is None:
-        return Link("Python", "none is pinned", INSTALL)
-    if not Path(found.python).is_file():
+        return Link("Python", False, "none is pinned", INSTALL)
+    pinned = Path(found.python)
+    if not pinned.is_file():
         return Link(
-            "Python", f"{found.python} is missing", "install Python and moletally again, then " + INSTALL
+            "Python", False, f"{pinned} is missing", "install Python and moletally again, then " + INSTALL
         )
     if not imports:
-        return Link("Python", f"{found.python} does not start", REINSTALL)
-    other = (
-        ""
-        if Path(found.python) == Path(sys.executable)
-        else f", not the one that runs this: {sys.executable}"
+        return Link("Python", False, f"{pinned} does not start", REINSTALL)
+    same = pinned.samefile(sys.executable)
+    return Link(
+        "Python", True, f"{pinned}{'' if same else f', not the one that runs this: {sys.executable}'}"
     )
-    return Link("Python", found.python + other)
 
 
 def _packages(imports: dict[str, str]) -> list[Link]:
@@ -141,39 +175,49 @@ def _packages(imports: dict[str, str]) -> list[Link]:
         "xlwings": ("xlwings",),
         "libraries": ("numpy", "scipy", "pandas"),
     }
+    if not imports:
+        return [Link(name, None, NOT_TRIED) for name in names]
     links = []
     for name, parts in names.items():
-        states = [f"{part} {imports.get(part, '! not tried')}" for part in parts]
-        broken = any("! " in state for state in states)
-        links.append(Link(name, ", ".join(s.replace("! ", "can't be imported: ") for s in states),
-                          REINSTALL if broken else ""))  # fmt: skip
+        states = [f"{part} {imports[part]}" for part in parts]
+        holds = not any(imports[part].startswith("! ") for part in parts)
+        shown = ", ".join(state.replace("! ", "can't be imported: ") for state in states)
+        links.append(Link(name, holds, shown, "" if holds else REINSTALL))
     return links
 
 
-def _dll(found: Settings | None) -> Link:
+def _dlls(found: Settings | None) -> list[Link]:
     if found is None:
-        return Link("DLL", "none is pinned", INSTALL)
-    if not Path(found.dll64).is_file():
-        return Link("DLL", f"{found.dll64} is missing", REINSTALL)
-    if f"-{found.xlwings}.dll" not in found.dll64:
-        return Link("DLL", f"{found.dll64} is not of xlwings {found.xlwings}", INSTALL)
-    without = "" if found.dll32 else "; none for a 32-bit Excel"
-    return Link("DLL", found.dll64 + without)
+        return [Link("DLL", None, "none is pinned")]
+    return [
+        _dll(found, found.dll64, "DLL"),
+        *([_dll(found, found.dll32, "DLL for a 32-bit Excel")] if found.dll32 else []),
+    ]
+
+
+def _dll(found: Settings, file: str, name: str) -> Link:
+    if not Path(file).is_file():
+        return Link(name, False, f"{file} is missing", REINSTALL)
+    if not file.lower().endswith(f"-{found.xlwings}.dll"):
+        return Link(name, False, f"{file} is not of xlwings {found.xlwings}", INSTALL)
+    return Link(name, True, file)
 
 
 def _kernel(imports: dict[str, str]) -> Link:
-    version = imports.get("numpy", "! not tried")
-    broken = version.startswith("! ")
-    return Link("kernel", "none" if broken else f"numpy {version}", REINSTALL if broken else "")
+    if not imports:
+        return Link("kernel", None, NOT_TRIED)
+    version = imports["numpy"]
+    holds = not version.startswith("! ")
+    return Link("kernel", holds, f"numpy {version}" if holds else "none", "" if holds else REINSTALL)
 
 
 def _imports(python: str) -> dict[str, str]:
     """Version or trouble of each package in the pinned Python; empty if it does not start."""
     try:
         done = subprocess.run(
-            [python, "-P", "-c", PROBE], capture_output=True, text=True, timeout=START_WITHIN, check=False
+            [python, "-P", "-c", PROBE], capture_output=True, timeout=START_WITHIN, check=False
         )
         found: dict[str, str] = json.loads(done.stdout)
-    except (OSError, subprocess.TimeoutExpired, json.JSONDecodeError):
+    except (OSError, subprocess.TimeoutExpired, ValueError):
         return {}
     return found

@@ -2,13 +2,18 @@
 
 import re
 import sys
+import tempfile
 from pathlib import Path
+from typing import Any
 
-from moletally.hosts.windows.install import InstallError
+from moletally.hosts.windows.settings import InstallError
 
-__all__ = ["code", "make", "module_files"]
+__all__ = ["TITLE", "code", "filled", "make", "module_files"]
 
+TITLE = "moletally - made by your own Excel"
 ADDIN_FORMAT = 55  # xlOpenXMLAddIn
+ONE_SHEET = -4167  # xlWBATWorksheet
+DOCUMENT = 100  # vbext_ct_Document: the modules of the workbook and of its sheets
 TRUST = (
     "Excel does not let programs write macros. To allow it for this once: File, Options, Trust Center, "
     'Trust Center Settings, Macro Settings, tick "Trust access to the VBA project object model", and run this '
@@ -36,7 +41,7 @@ def filled(text: str, versions: dict[str, str]) -> str:
     return text
 
 
-def make(folder: Path, target: Path, versions: dict[str, str], title: str) -> None:
+def make(folder: Path, target: Path, versions: dict[str, str]) -> None:
     """Let Excel import the modules and save them as an add-in. The ribbon can't be made this way.
 
     Raises
@@ -46,38 +51,59 @@ def make(folder: Path, target: Path, versions: dict[str, str], title: str) -> No
     """
     if sys.platform != "win32":
         raise InstallError("this needs Excel for Windows")
-    import tempfile
-
     import pywintypes
     import win32com.client
 
-    files, workbook = module_files(folder)
     try:
         excel = win32com.client.DispatchEx("Excel.Application")
     except pywintypes.com_error as error:
         raise InstallError(f"Excel does not start: {error}") from None
     try:
-        book = excel.Workbooks.Add()
+        excel.DisplayAlerts = False  # or Excel, unseen, would wait for an answer when it is told to end
+        book = excel.Workbooks.Add(ONE_SHEET)
         try:
             components = book.VBProject.VBComponents
         except pywintypes.com_error:
             raise InstallError(TRUST) from None
-        with tempfile.TemporaryDirectory() as scratch:
-            for file in files:
-                copy = Path(scratch, file.name)
-                copy.write_text(
-                    filled(file.read_text(encoding="utf-8"), versions), encoding="ascii", newline="\r\n"
-                )
-                components.Import(str(copy))
-        own = components.Item(book.CodeName or "ThisWorkbook").CodeModule
-        own.AddFromString(code(workbook.read_text(encoding="utf-8")))
-        sheet = book.Worksheets(1)
-        sheet.Name = "Settings"
-        for row, pair in enumerate(versions.items(), 1):
-            sheet.Range(f"A{row}:B{row}").NumberFormat = "@"
-            sheet.Range(f"A{row}:B{row}").Value = (pair,)
-        book.BuiltinDocumentProperties("Title").Value = title
+        _import(folder, versions, book, components)
+        _name(book, versions)
         book.SaveAs(str(target), ADDIN_FORMAT)
         book.Close(False)
+    except pywintypes.com_error as error:
+        raise InstallError(f"Excel could not make the macro file: {error}") from None
     finally:
         excel.Quit()
+
+
+def _import(folder: Path, versions: dict[str, str], book: Any, components: Any) -> None:
+    files, workbook = module_files(folder)
+    with tempfile.TemporaryDirectory() as scratch:
+        for file in files:
+            copy = Path(scratch, file.name)
+            text = filled(file.read_text(encoding="utf-8"), versions)
+            copy.write_text(text, encoding="ascii", newline="\r\n")
+            components.Import(str(copy))
+    own = _workbook_module(book, components).CodeModule
+    if (
+        own.CountOfLines
+    ):  # Excel's own "Option Explicit", where a user has asked for it: a second one is an error
+        own.DeleteLines(1, own.CountOfLines)
+    own.AddFromString(code(workbook.read_text(encoding="utf-8")).replace("\n", "\r\n"))
+
+
+def _workbook_module(book: Any, components: Any) -> Any:
+    """The workbook's own module: its name is another one in each language of Excel, and may not be told yet."""
+    sheets = {sheet.CodeName for sheet in book.Worksheets}
+    documents = [c for c in components if c.Type == DOCUMENT and c.Name not in sheets]
+    return next((c for c in documents if c.Name == book.CodeName), documents[0])
+
+
+def _name(book: Any, versions: dict[str, str]) -> None:
+    """The sheet with what belongs together, and the title by which the file is known as ours."""
+    sheet = book.Worksheets(1)
+    sheet.Name = "Settings"
+    for row, pair in enumerate(versions.items(), 1):
+        cells = sheet.Range(f"A{row}:B{row}")
+        cells.NumberFormat = "@"  # text: 0.10 must not become 0.1
+        cells.Value = (pair,)
+    book.BuiltinDocumentProperties("Title").Value = TITLE

@@ -8,7 +8,7 @@ from pathlib import Path
 import moletally
 from moletally.hosts.windows.places import Places
 
-__all__ = ["InstallError", "Settings", "found_here", "read", "write"]
+__all__ = ["InstallError", "Settings", "found_here", "read", "unreadable", "write"]
 
 ENCODING = "mbcs" if sys.platform == "win32" else "ascii"  # VBA and the DLL read the code page of Windows
 
@@ -19,7 +19,7 @@ class InstallError(Exception):
 
 @dataclass(frozen=True, slots=True)
 class Settings:
-    """The lines of excel.conf: versions, full paths, and whether install made the start-up folder."""
+    """The lines of excel.conf: versions, full paths, and how many folders install made for the macro file."""
 
     moletally: str
     xlwings: str
@@ -52,6 +52,17 @@ def write(places: Places, settings: Settings) -> None:
     unfinished.replace(places.settings)
 
 
+def unreadable(places: Places) -> list[str]:
+    """Why Excel's macro language may not find the file; empty if nothing speaks against it."""
+    try:
+        str(places.settings).encode(ENCODING)
+    except UnicodeEncodeError:
+        return [
+            f"{places.settings} has letters outside the code page of this Windows, which macros may not find"
+        ]
+    return []
+
+
 def found_here(made: str) -> Settings:
     """The settings for the Python that runs this.
 
@@ -70,8 +81,14 @@ def found_here(made: str) -> Settings:
             f"xlwings64-{version}.dll is missing: run pip install --force-reinstall xlwings=={version}"
         )
     dll32 = _dll(f"xlwings32-{version}.dll")
-    return Settings(moletally.__version__, version, _ansi(Path(sys.executable)), _ansi(dll64),
+    return Settings(moletally.__version__, version, _ansi(_python()), _ansi(dll64),
                     _ansi(dll32) if dll32 else "", made)  # fmt: skip
+
+
+def _python() -> Path:
+    """This Python, with a window for its words: pythonw.exe keeps them to itself."""
+    here = Path(sys.executable)
+    return here.with_name("python.exe") if here.name.lower() == "pythonw.exe" else here
 
 
 def _dll(name: str) -> Path | None:
