@@ -20,7 +20,7 @@ WORDS = """and as boolean byref byval call case class collection compare const c
     private property ptrsafe public redim resume select set single static stop string sub then to true until variant
     wend while with withevents xor alias step attribute vb_name open close input output line"""
 FUNCTIONS = """abs activecell activeworkbook application array ascw cbool cdbl chr clng cstr cverr dir environ eof err
-    format freefile getattr instr instrrev isarray isempty iserror ismissing isobject lbound left len mid msgbox now
+    format freefile getattr instr instrrev isarray isempty iserror ismissing isobject kill lbound left len mid msgbox now
     replace right split strcomp thisworkbook trim typename ubound ucase val vartype workbook worksheet range
     iribboncontrol xlcalculation vba7 win64"""
 KEYWORDS, KNOWN = set(WORDS.split()), set(FUNCTIONS.split())  # of the language; of VBA and Excel

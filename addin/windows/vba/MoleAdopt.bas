@@ -8,6 +8,7 @@ Private asked As Collection
 
 Public Sub Adopt(ByVal book As Workbook)
     Dim links As Collection, cells As Collection
+    If MoleTransport.IsAside() Then Exit Sub ' a formula that is entered again would lose its value
     If book.IsAddin Or book.ReadOnly Or WasAsked(book) Then Exit Sub
     Set links = OldLinks(book)
     Set cells = CellsToEnter(book)
@@ -97,6 +98,7 @@ Private Function Entered(ByVal cell As Object) As Boolean
     Dim formula As String
     formula = MoleSpelling.OwnSpelling(MoleBook.FormulaOf(cell))
     On Error GoTo Refused
+    If cell.NumberFormat = "@" Then cell.NumberFormat = "General" ' or the formula would become a text
     If MoleBook.IsFixedArray(cell) Then
         cell.CurrentArray.FormulaArray = formula
     Else

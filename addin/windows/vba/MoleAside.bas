@@ -3,20 +3,22 @@ Attribute VB_Name = "MoleAside"
 Option Explicit
 Option Private Module
 
-Private untold As Boolean
+Private untold As Boolean      ' a cell asked in vain since the last calculation
+Private isTold As Boolean      ' the user knows
 Private noValue As Collection  ' cells that had no value to keep, by address
 Private resting As Collection  ' sheets whose calculation is off
 
-' Called when the service is found missing, in the middle of a calculation: the rest waits until it is over.
+' Called when the service is found missing, maybe in the middle of a calculation: the rest waits until it is over.
 Public Sub Begin()
-    untold = True
     Set noValue = New Collection
+    isTold = False
 End Sub
 
-' What a cell shows while there is no service: its last value, or #N/A if it never had one.
+' What a cell shows while there is no service: its last answer, or #N/A if none is known for its formula.
 Public Function LastValue(ByVal home As String) As Variant
     Dim value As Variant
-    If HasValue(value) Then
+    untold = True
+    If MoleKept.IsKept(home, MoleHost.Formula(), value) Then
         LastValue = value
     Else
         NoteWithout home
@@ -24,44 +26,35 @@ Public Function LastValue(ByVal home As String) As Variant
     End If
 End Function
 
-' True and the value if the calling cell shows one that can be kept.
-Private Function HasValue(ByRef value As Variant) As Boolean
-    On Error GoTo Unknown
-    value = ShownValue(Application.Caller)
-    HasValue = Not IsError(value)
-Unknown:
-End Function
-
 Private Sub NoteWithout(ByVal home As String)
     On Error Resume Next ' it is noted already
     noValue.Add home, home
 End Sub
 
-' After a calculation: tells once what is wrong, and lets the sheets with our cells rest. Books without our
-' cells are not bothered.
+' After a calculation that asked in vain: tells once what is wrong, and lets the sheets with our cells rest.
 Public Sub Tell()
     If Not untold Then Exit Sub
-    RestSheets
-    If resting.Count = 0 Then Exit Sub
     untold = False
+    RestSheets
+    If isTold Then Exit Sub
+    isTold = True
     MsgBox MoleTransport.WhyAside() & vbLf & vbLf & "Sheets with cells of moletally keep their values until then: they are not calculated." & vbLf & _
         "When it is mended, choose Recalculate on the moletally tab.", vbExclamation, "moletally"
 End Sub
 
-' Wakes the sheets and tries again.
+' Tries again and wakes the sheets; they calculate at once, so everything else has to be forgotten before.
 Public Sub Finish()
-    Dim sheet As Object
-    If Not resting Is Nothing Then
-        On Error Resume Next ' a book may have been closed meanwhile
-        For Each sheet In resting
-            sheet.EnableCalculation = True
-        Next sheet
-        On Error GoTo 0
-    End If
+    Dim sleeping As Collection, sheet As Object
+    MoleTransport.TryAgain
+    Set sleeping = resting
     Set resting = Nothing
     Set noValue = Nothing
     untold = False
-    MoleTransport.TryAgain
+    If sleeping Is Nothing Then Exit Sub
+    On Error Resume Next ' a book may have been closed meanwhile
+    For Each sheet In sleeping
+        sheet.EnableCalculation = True
+    Next sheet
 End Sub
 
 ' False if the user would rather not store #N/A over values of this book.
@@ -70,7 +63,7 @@ Public Function MaySave(ByVal book As Workbook) As Boolean
     MaySave = True
     If noValue Is Nothing Then Exit Function
     For Each home In noValue
-        If InStr(1, home, "[" & book.Name & "]", vbTextCompare) > 0 Then count = count + 1
+        If InStr(1, home, "[" & Replace(book.Name, "'", "''") & "]", vbTextCompare) > 0 Then count = count + 1
     Next home
     If count = 0 Then Exit Function
     MaySave = (MsgBox(CStr(count) & " cells of moletally show #N/A because there is no Python behind them. " & _
@@ -80,6 +73,7 @@ End Function
 
 Private Sub RestSheets()
     Dim book As Workbook
+    If resting Is Nothing Then Set resting = New Collection
     For Each book In Application.Workbooks
         RestBook book
     Next book
@@ -88,13 +82,12 @@ End Sub
 ' A book that is opened while there is no service rests too.
 Public Sub Opened(ByVal book As Workbook)
     If Not MoleTransport.IsAside() Then Exit Sub
-    RestBook book
+    If MoleBook.OwnCells(book).Count > 0 Then untold = True
     Tell
 End Sub
 
 Private Sub RestBook(ByVal book As Workbook)
     Dim cell As Variant, sheet As Object
-    If resting Is Nothing Then Set resting = New Collection
     For Each cell In MoleBook.OwnCells(book)
         Set sheet = cell.Worksheet
         If sheet.EnableCalculation Then
@@ -103,16 +96,3 @@ Private Sub RestBook(ByVal book As Workbook)
         End If
     Next cell
 End Sub
-
-' What the calling cells show now. Excel gives 0 where it sees a circle in the question: then the text tells.
-Private Function ShownValue(ByVal caller As Range) As Variant
-    Dim cells As Range
-    Set cells = caller
-    If caller.Count = 1 Then Set cells = MoleBook.SpillOf(caller)
-    ShownValue = cells.Value2
-    If IsEmpty(cells.Cells(1, 1).Value2) Then
-        ShownValue = CVErr(xlErrNA)
-    ElseIf VarType(ShownValue) = vbDouble Then
-        If ShownValue = 0 And cells.Text Like "*[1-9]*" Then ShownValue = CVErr(xlErrNA)
-    End If
-End Function

@@ -3,59 +3,72 @@ Attribute VB_Name = "MoleAudit"
 Option Explicit
 Option Private Module
 
-Private isOn As Boolean
+Private auditedHome As String ' "" while nothing is audited
 Private rows As Collection
 
-' Called with every call from a cell; does something only while a book is audited.
+' Called with every call from a cell; does something only for the cell that is audited.
 Public Sub Note(ByVal home As String, ByVal name As String, ByVal arguments As Variant)
     Dim asked() As Variant, i As Long, findings As Variant
-    If Not isOn Or name = "MOLE_AUDIT" Then Exit Sub
+    If auditedHome = "" Or home <> auditedHome Or name = "MOLE_AUDIT" Then Exit Sub
     ReDim asked(0 To UBound(arguments) - LBound(arguments) + 1)
     asked(0) = Mid(name, Len(MoleBook.STEM) + 1)
     For i = LBound(arguments) To UBound(arguments)
         asked(i - LBound(arguments) + 1) = arguments(i)
     Next i
-    If MoleTransport.Sent("MOLE_AUDIT", asked, findings) Then AddRows home, name, findings
+    If Not MoleTransport.Sent("MOLE_AUDIT", asked, findings) Then Exit Sub
+    If IsArray(findings) Then
+        AddRows home, name, findings
+    Else
+        rows.Add Array(home, name, "stop", "", MoleReasons.Unmarked(CStr(findings)))
+    End If
 End Sub
 
 ' Writes the findings for all our cells of a book into a new workbook.
 Public Sub AuditBook(ByVal book As Workbook)
-    Dim cell As Variant, cells As Collection
-    Set cells = MoleBook.OwnCells(book)
-    If cells.Count = 0 Then
-        MsgBox "There is no formula of moletally in " & book.Name & ".", vbInformation, "moletally"
+    Dim cell As Variant, own As Collection, problem As String
+    Set own = MoleBook.OwnCells(book)
+    If own.Count = 0 Then problem = "There is no formula of moletally in " & book.Name & "."
+    If MoleTransport.IsAside() Then problem = MoleTransport.WhyAside()
+    If problem <> "" Then
+        MsgBox problem, vbInformation, "moletally"
         Exit Sub
     End If
     Set rows = New Collection
-    isOn = True
     On Error GoTo Done
-    For Each cell In cells
-        MoleHost.ShowStatus "moletally audits " & cell.Address(False, False)
-        cell.Dirty
-        cell.Calculate
+    For Each cell In own
+        AuditCell cell
     Next cell
 Done:
-    isOn = False
+    problem = Err.Description
+    auditedHome = ""
     MoleHost.ShowStatus ""
-    If Err.Number <> 0 Then
-        MsgBox "The audit stopped: " & Err.Description, vbExclamation, "moletally"
-    Else
-        WriteRows book.Name
+    If problem <> "" Then MsgBox "The audit stopped, the list is not complete: " & problem, vbExclamation, "moletally"
+    If rows.Count > 0 Then WriteRows book.Name
+End Sub
+
+' A cell that asked nothing gets a row too: the list has to name every cell.
+Private Sub AuditCell(ByVal cell As Range)
+    Dim before As Long
+    before = rows.Count
+    auditedHome = cell.Address(External:=True)
+    MoleHost.ShowStatus "moletally audits " & cell.Address(False, False)
+    MoleBook.WholeOf(cell).Calculate
+    If rows.Count = before Then
+        rows.Add Array(auditedHome, "", "note", "", "no call was made, as in a branch of IF that is not taken; or the arguments can't be read: see Reason")
     End If
 End Sub
 
 Private Sub AddRows(ByVal home As String, ByVal name As String, ByVal findings As Variant)
     Dim i As Long, j As Long
-    On Error GoTo OneRow
+    If MoleReasons.Dimensions(findings) = 1 Then
+        i = LBound(findings)
+        rows.Add Array(home, name, findings(i), findings(i + 1), findings(i + 2))
+        Exit Sub
+    End If
     j = LBound(findings, 2)
-    On Error GoTo 0
     For i = LBound(findings, 1) To UBound(findings, 1)
         rows.Add Array(home, name, findings(i, j), findings(i, j + 1), findings(i, j + 2))
     Next i
-    Exit Sub
-OneRow:
-    i = LBound(findings)
-    rows.Add Array(home, name, findings(i), findings(i + 1), findings(i + 2))
 End Sub
 
 Private Sub WriteRows(ByVal bookName As String)

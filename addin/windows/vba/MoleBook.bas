@@ -20,6 +20,7 @@ Private Sub AddCells(ByVal sheet As Worksheet, ByRef own As Collection)
     On Error Resume Next ' none, or a protected sheet
     Set formulas = sheet.UsedRange.SpecialCells(xlCellTypeFormulas)
     On Error GoTo 0
+    If formulas Is Nothing And sheet.ProtectContents Then Set formulas = sheet.UsedRange
     If formulas Is Nothing Then Exit Sub
     For Each area In formulas.Areas
         texts = area.Formula
@@ -37,10 +38,24 @@ End Sub
 
 Private Sub AddHome(ByVal cell As Range, ByRef own As Collection)
     Dim first As Range
+    If Not cell.HasFormula Then Exit Sub
     Set first = HomeOf(cell)
     On Error Resume Next ' the key is there: another cell of the same array
     own.Add first, first.Worksheet.Name & "!" & first.Address
 End Sub
+
+' The cells that are calculated together with a formula's first cell.
+Public Function WholeOf(ByVal cell As Object) As Range
+    If IsFixedArray(cell) Then Set WholeOf = cell.CurrentArray Else Set WholeOf = cell
+End Function
+
+' True if a sheet with our cells is protected.
+Public Function IsProtected(ByVal own As Collection) As Boolean
+    Dim cell As Variant
+    For Each cell In own
+        If cell.Worksheet.ProtectContents Then IsProtected = True
+    Next cell
+End Function
 
 ' The cell that holds the formula behind a cell: itself, or the first cell of its array or spill.
 Public Function HomeOf(ByVal cell As Object) As Range

@@ -26,7 +26,9 @@ Public Function Answered(ByVal name As String, ByVal arguments As Variant) As Va
         Answered = MoleAside.LastValue(home)
         Exit Function
     End If
-    Answered = MoleReasons.Shown(home, result)
+    result = MoleReasons.Shown(home, result)
+    MoleKept.Keep home, MoleHost.Formula(), result
+    Answered = result
     Exit Function
 Failed:
     Answered = MoleReasons.Shown(home, MoleReasons.Marked("#VALUE!", name & " could not be asked: " & Err.Description))

@@ -8,6 +8,11 @@ Public Function Home() As String
     If TypeName(Application.Caller) = "Range" Then Home = Application.Caller.Cells(1, 1).Address(External:=True)
 End Function
 
+' The calling cell's formula; "" if no cell calls.
+Public Function Formula() As String
+    If TypeName(Application.Caller) = "Range" Then Formula = Application.Caller.Cells(1, 1).Formula
+End Function
+
 ' The values of a range. False with the reason if it isn't one range.
 Public Function RangeRead(ByVal source As Object, ByRef values As Variant, ByRef problem As String) As Boolean
     Dim inside As Range, one(1 To 1, 1 To 1) As Variant

@@ -12,6 +12,12 @@ Public Function Marked(ByVal code As String, ByVal reason As String) As String
     Marked = Chr(MARK_CODE) & code & Chr(MARK_CODE) & reason
 End Function
 
+' The reason alone of a marked text; another text as it is.
+Public Function Unmarked(ByVal text As String) As String
+    Unmarked = text
+    If IsMarked(text) Then Unmarked = Mid(text, InStr(2, text, Chr(MARK_CODE)) + 1)
+End Function
+
 ' What stands for an argument that was left out.
 Public Function LeftOut() As String
     LeftOut = Chr(MARK_CODE) & "left out"
@@ -114,7 +120,7 @@ Private Function Place(ByVal row As Long, ByVal column As Long) As String
     Place = "R" & CStr(row) & "C" & CStr(column)
 End Function
 
-Private Function Dimensions(ByVal value As Variant) As Long
+Public Function Dimensions(ByVal value As Variant) As Long
     Dim bound As Long
     If Not IsArray(value) Then Exit Function
     Dimensions = 1

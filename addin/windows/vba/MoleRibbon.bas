@@ -3,11 +3,16 @@ Attribute VB_Name = "MoleRibbon"
 Option Explicit
 
 Public Sub MoleRecalculate(ByVal control As IRibbonControl)
-    Dim cell As Variant
+    Dim cell As Variant, done As String
     If Not HasBook() Then Exit Sub
     MoleAside.Finish
     For Each cell In MoleBook.OwnCells(ActiveWorkbook)
-        cell.Dirty
+        ' Range.Dirty works on the active sheet alone; a sheet that is woken is calculated as a whole.
+        If InStr(done, vbLf & cell.Worksheet.Name & vbLf) = 0 Then
+            done = done & vbLf & cell.Worksheet.Name & vbLf
+            cell.Worksheet.EnableCalculation = False
+            cell.Worksheet.EnableCalculation = True
+        End If
     Next cell
     Application.Calculate
     MoleAside.Tell
@@ -44,9 +49,13 @@ Public Sub MoleStatus(ByVal control As IRibbonControl)
     Dim result As Variant, text As String, i As Long
     text = "Macro file: moletally " & MoleSettings.OWN_VERSION & ", " & ThisWorkbook.FullName & vbLf
     If MoleTransport.Sent("about", Array(), result) Then
-        For i = LBound(result, 1) To UBound(result, 1)
-            text = text & result(i, LBound(result, 2)) & ": " & result(i, UBound(result, 2)) & vbLf
-        Next i
+        If Not IsArray(result) Then
+            text = text & MoleReasons.Unmarked(CStr(result))
+        Else
+            For i = LBound(result, 1) To UBound(result, 1)
+                text = text & result(i, LBound(result, 2)) & ": " & result(i, UBound(result, 2)) & vbLf
+            Next i
+        End If
     Else
         text = text & "Python does not answer: " & MoleTransport.WhyAside()
     End If
@@ -66,8 +75,7 @@ Private Function ReasonOf(ByVal cell As Range, ByVal home As Range) As String
     End If
     key = home.Address(External:=True)
     MoleReasons.Forget key
-    home.Dirty
-    home.Calculate
+    MoleBook.WholeOf(home).Calculate
     If IsError(cell.Value) Then ReasonOf = MoleReasons.ReasonAt(key, cell.Row - home.Row, cell.Column - home.Column)
     If ReasonOf = "" Then ReasonOf = MoleReasons.AllReasons(key)
 End Function

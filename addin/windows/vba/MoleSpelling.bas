@@ -66,7 +66,7 @@ Private Function IsOwnCall(ByVal formula As String, ByVal at As Long) As Boolean
 End Function
 
 ' The place behind a quoted text or sheet name that begins at `at`; a doubled quote belongs to it.
-Private Function AfterQuoted(ByVal formula As String, ByVal at As Long) As Long
+Public Function AfterQuoted(ByVal formula As String, ByVal at As Long) As Long
     Dim quote As String
     quote = Mid(formula, at, 1)
     at = at + 1

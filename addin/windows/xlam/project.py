@@ -15,6 +15,7 @@ BASES = {  # the class of the object behind a document module
     "ThisWorkbook": "0{00020819-0000-0000-C000-000000000046}",
     "": "0{00020820-0000-0000-C000-000000000046}",
 }
+CLASS_BASE = "0{FCFB3D2A-A0FA-1068-A738-08002B3371B5}"  # of a class module, as Excel saves it
 REFERENCES = {
     "stdole": r"*\G{00020430-0000-0000-C000-000000000046}#2.0#0#C:\Windows\System32\stdole2.tlb#OLE Automation",
     "Office": r"*\G{2DF8D04C-5BFA-101B-BDE5-00AA0044DE52}#2.0#0#C:\Program Files\Common Files\Microsoft Shared"
@@ -43,8 +44,9 @@ def stored_source(module: Module) -> bytes:
     """
     text = HEADER.sub("", module.source.replace("\r\n", "\n"))
     if module.kind == "document":
-        base = BASES.get(module.name, BASES[""])
-        text = _document_attributes(module.name, base) + ATTRIBUTE.sub("", text)
+        text = _attributes(module.name, BASES.get(module.name, BASES[""]), "True") + ATTRIBUTE.sub("", text)
+    elif module.kind == "class":
+        text = _attributes(module.name, CLASS_BASE, "False") + ATTRIBUTE.sub("", text)
     if not text.startswith(f'Attribute VB_Name = "{module.name}"\n'):
         raise ValueError(f"{module.name}: the text does not begin with its name")
     for number, line in enumerate(text.split("\n"), 1):
@@ -53,9 +55,18 @@ def stored_source(module: Module) -> bytes:
     return text.rstrip("\n").replace("\n", "\r\n").encode("ascii") + b"\r\n"
 
 
-def _document_attributes(name: str, base: str) -> str:
-    values = {"Name": f'"{name}"', "Base": f'"{base}"', "GlobalNameSpace": "False", "Creatable": "False",
-              "PredeclaredId": "True", "Exposed": "True", "TemplateDerived": "False", "Customizable": "True"}  # fmt: skip
+def _attributes(name: str, base: str, document: str) -> str:
+    """What Excel writes before the code of a document ("True") or a class of our own ("False")."""
+    values = {
+        "Name": f'"{name}"',
+        "Base": f'"{base}"',
+        "GlobalNameSpace": "False",
+        "Creatable": "False",
+        "PredeclaredId": document,
+        "Exposed": document,
+        "TemplateDerived": "False",
+        "Customizable": document,
+    }
     return "".join(f"Attribute VB_{key} = {value}\n" for key, value in values.items())
 
 

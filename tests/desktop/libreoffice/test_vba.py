@@ -181,6 +181,29 @@ def test_links_of_another_place_are_recognised(stand_in):
     assert run_basic(file, calls, env) == [True, True, True, False, False]
 
 
+def test_a_last_answer_is_kept_for_its_own_formula_alone(stand_in):
+    """The newest, not for another formula in the cell, not for a cell that shows more than the call gave."""
+    assert scenario(stand_in, "Kept") == ["Double 3.5", "nothing", "nothing", "nothing"]
+
+
+@pytest.mark.parametrize(
+    "formula, bare",
+    [
+        ("=MOLE_CSTR(A1:B2,,C3)", True),
+        ("='C:\\x\\moletally.xlam'!MOLE_PFR(A1,INDEX(B1:B3,2),\"a)b\")", True),
+        ("=MOLE_CSTR(A1,MOLE_PFR(B1),'odd) sheet'!C3)", True),
+        ("=100*MOLE_CSTR(A1)", False),
+        ("=MOLE_CSTR(A1)/MOLE_CSTR(A2)", False),
+        ("=MOLE_CSTR(A1)*2", False),
+        ("=SUM(MOLE_CSTR(A1))", False),
+        ("=MOLE_CSTR", False),
+        ("", False),
+    ],
+)
+def test_what_is_one_call_and_nothing_else(stand_in, formula, bare):
+    assert scenario(stand_in, "Bare", formula) == [str(bare)]
+
+
 def test_left_out_is_said_alike_on_both_sides(stand_in):
     file, env = stand_in
     assert run_basic(file, [["MoleReasons.LeftOut", []]], env) == [LEFT_OUT]

@@ -24,3 +24,7 @@ End Sub
 Public Function StatusTexts_() As String
     StatusTexts_ = statusTexts
 End Function
+
+Public Function Formula() As String
+    Formula = "=MOLE_CSTR(A1)"
+End Function

@@ -56,3 +56,21 @@ End Function
 Public Function AsShown(ByVal result As String) As String
     AsShown = Cell(MoleReasons.Shown("[Book]S!$C$3", result)) & vbLf & MoleReasons.ReasonAt("[Book]S!$C$3", 0, 0)
 End Function
+
+Private Function KeptAs(ByVal home As String, ByVal formula As String) As String
+    Dim answer As Variant
+    KeptAs = "nothing"
+    If MoleKept.IsKept(home, formula, answer) Then KeptAs = Cell(answer)
+End Function
+
+Public Function Kept() As String
+    MoleKept.Keep "[B]S!$A$1", "=MOLE_CSTR(A1,B1)", 2.5
+    MoleKept.Keep "[B]S!$A$2", "=100*MOLE_CSTR(A1,B1)", 2.5
+    MoleKept.Keep "[B]S!$A$1", "=MOLE_CSTR(A1,B1)", 3.5
+    Kept = KeptAs("[B]S!$A$1", "=MOLE_CSTR(A1,B1)") & vbLf & KeptAs("[B]S!$A$1", "=MOLE_CSTR(A1,B2)") & vbLf & _
+        KeptAs("[B]S!$A$2", "=100*MOLE_CSTR(A1,B1)") & vbLf & KeptAs("[B]S!$A$3", "=MOLE_CSTR(A1,B1)")
+End Function
+
+Public Function Bare(ByVal formula As String) As String
+    Bare = CStr(MoleKept.IsBareCall(formula))
+End Function
