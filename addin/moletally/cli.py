@@ -5,7 +5,8 @@ Exit codes: 0 all fine, 1 some cell has a problem or is stale, 2 the book or the
 
 import json
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from pathlib import Path
 
 import click
@@ -124,38 +125,40 @@ def excel() -> None:
               help="Let your own Excel make the macro file instead of taking the prebuilt one.")  # fmt: skip
 def install(with_excel: bool) -> None:
     """Place the add-in where Excel finds it, and pin this Python. Needs no admin rights."""
-    from moletally.hosts.windows.command import InstallError, installed
+    from moletally.hosts.windows.command import installed
 
-    try:
-        lines = installed(with_excel)
-    except InstallError as error:
-        raise _Failed(str(error)) from None
-    click.echo("\n".join(lines))
+    with _reasons_told():
+        click.echo("\n".join(installed(with_excel)))
 
 
 @excel.command()
 def uninstall() -> None:
     """Take the add-in away without trace."""
-    from moletally.hosts.windows.command import InstallError, uninstalled
+    from moletally.hosts.windows.command import uninstalled
 
-    try:
-        lines = uninstalled()
-    except InstallError as error:
-        raise _Failed(str(error)) from None
-    click.echo("\n".join(lines))
+    with _reasons_told():
+        click.echo("\n".join(uninstalled()))
 
 
 @excel.command()
 def status() -> None:
     """Check each link between a cell and its answer; exit code 1 if one is broken."""
-    from moletally.hosts.windows.command import InstallError
     from moletally.hosts.windows.command import status as show_status
 
-    try:
+    with _reasons_told():
         holds = show_status(click.echo)
+    click.get_current_context().exit(0 if holds else 1)
+
+
+@contextmanager
+def _reasons_told() -> Iterator[None]:
+    """What can't be installed ends the command with its reason."""
+    from moletally.hosts.windows.command import InstallError
+
+    try:
+        yield
     except InstallError as error:
         raise _Failed(str(error)) from None
-    click.get_current_context().exit(0 if holds else 1)
 
 
 @main.command()

@@ -32,6 +32,12 @@ Public Function IsKept(ByVal home As String, ByVal formula As String, ByRef answ
 Unknown:
 End Function
 
+' Another book of the same name may come: what was kept for the cells of the first must not reach it.
+Public Sub ForgetAll()
+    Set formulas = Nothing
+    Set answers = Nothing
+End Sub
+
 Private Sub Forget(ByVal home As String)
     On Error Resume Next ' there was none
     formulas.Remove home

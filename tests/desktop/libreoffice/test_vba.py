@@ -182,8 +182,8 @@ def test_links_of_another_place_are_recognised(stand_in):
 
 
 def test_a_last_answer_is_kept_for_its_own_formula_alone(stand_in):
-    """The newest, not for another formula in the cell, not for a cell that shows more than the call gave."""
-    assert scenario(stand_in, "Kept") == ["Double 3.5", "nothing", "nothing", "nothing"]
+    """The newest, not for another formula in the cell, not for a cell that shows more than the call gave, not after a book closed."""
+    assert scenario(stand_in, "Kept") == ["Double 3.5", "nothing", "nothing", "nothing", "nothing"]
 
 
 @pytest.mark.parametrize(

@@ -69,6 +69,8 @@ Public Function Kept() As String
     MoleKept.Keep "[B]S!$A$1", "=MOLE_CSTR(A1,B1)", 3.5
     Kept = KeptAs("[B]S!$A$1", "=MOLE_CSTR(A1,B1)") & vbLf & KeptAs("[B]S!$A$1", "=MOLE_CSTR(A1,B2)") & vbLf & _
         KeptAs("[B]S!$A$2", "=100*MOLE_CSTR(A1,B1)") & vbLf & KeptAs("[B]S!$A$3", "=MOLE_CSTR(A1,B1)")
+    MoleKept.ForgetAll
+    Kept = Kept & vbLf & KeptAs("[B]S!$A$1", "=MOLE_CSTR(A1,B1)")
 End Function
 
 Public Function Bare(ByVal formula As String) As String
