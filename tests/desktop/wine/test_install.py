@@ -29,7 +29,7 @@ class User:
         self.settings = folder / "Local" / "moletally" / "excel.conf"
 
     def excel(self, *arguments):
-        done = self.windows.python("-m", "moletally", "excel", *arguments, env=self.env)
+        done = self.windows.python("-m", "moletally", "excel", *arguments, env=self.env, timeout=240)
         return done.returncode, done.stdout + done.stderr
 
     def files(self):

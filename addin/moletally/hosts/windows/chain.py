@@ -4,6 +4,7 @@ import json
 import re
 import subprocess
 import sys
+import tempfile
 import zipfile
 from dataclasses import dataclass
 from pathlib import Path
@@ -21,11 +22,11 @@ INSTALL = "run: moletally excel install"
 REINSTALL = "run: pip install --force-reinstall moletally, then: moletally excel install"
 CLOSE = "to have it looked at, close all Excel windows and run this again"
 NOT_TRIED = "not tried: no Python that starts is pinned"
-START_WITHIN = 30  # s
+START_WITHIN = 120  # s; the first import of everything compiles it, and a virus scanner reads along
 VERSIONED = ("moletally", "xlwings")  # what belongs together
 NEEDED = ("numpy", "scipy", "pandas", "pythoncom", "win32api", *VERSIONED)
 PROBE = f"""
-import importlib, json
+import importlib, json, sys
 found = {{}}
 for name in {NEEDED!r}:
     try:
@@ -33,7 +34,8 @@ for name in {NEEDED!r}:
         found[name] = str(getattr(module, "__version__", "there"))
     except Exception as error:
         found[name] = "! " + " ".join(str(error).split())
-print(json.dumps(found))
+with open(sys.argv[1], "w", encoding="utf-8") as answer:
+    json.dump(found, answer)
 """
 
 
@@ -212,12 +214,16 @@ def _kernel(imports: dict[str, str]) -> Link:
 
 
 def _imports(python: str) -> dict[str, str]:
-    """Version or trouble of each package in the pinned Python; empty if it does not start."""
-    try:
-        done = subprocess.run(
-            [python, "-P", "-c", PROBE], capture_output=True, timeout=START_WITHIN, check=False
-        )
-        found: dict[str, str] = json.loads(done.stdout)
-    except (OSError, subprocess.TimeoutExpired, ValueError):
-        return {}
+    """Version or trouble of each package in the pinned Python; empty if it does not start.
+
+    The answer comes in a file: a pipe would be waited for as long as any child of a Python that hangs lives.
+    """
+    with tempfile.TemporaryDirectory(ignore_cleanup_errors=True) as scratch:
+        answer = Path(scratch, "found.json")
+        try:
+            subprocess.run([python, "-P", "-c", PROBE, str(answer)], timeout=START_WITHIN, check=False,
+                           stdin=subprocess.DEVNULL, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)  # fmt: skip
+            found: dict[str, str] = json.loads(answer.read_text(encoding="utf-8"))
+        except (OSError, subprocess.TimeoutExpired, ValueError):
+            return {}
     return found
