@@ -10,7 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from moletally.chemistry.errors import InputError
-from moletally.kernel.rates import evaluate
+from moletally.kernel.evaluate import evaluate
 
 R = 8.31446261815324  # J/(mol K), exact
 

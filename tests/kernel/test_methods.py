@@ -7,9 +7,9 @@ import numpy as np
 import pytest
 from kernel_cases import network
 
-from moletally.kernel import explicit, rosenbrock
-from moletally.kernel.cutoff import Laws
-from moletally.kernel.flow import Flow
+from moletally.kernel.reference import explicit, rosenbrock
+from moletally.kernel.reference.cutoff import Laws
+from moletally.kernel.reference.flow import Flow
 from moletally.kernel.structure import structures
 
 ROUNDING = 2e-13  # the tables have 16 digits

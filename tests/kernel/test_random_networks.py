@@ -10,7 +10,7 @@ import pytest
 from kernel_random import draw, tank_error
 from scipy.integrate import solve_ivp
 
-from moletally.kernel.rates import evaluate
+from moletally.kernel.evaluate import evaluate
 from moletally.kernel.status import Status
 from moletally.kernel.tank import solve_tanks
 from moletally.kernel.tube import solve_tubes

@@ -7,8 +7,9 @@ import pytest
 from kernel_cases import case, network
 
 from moletally.kernel.arithmetic import DECIMALS, DIGITS
+from moletally.kernel.evaluate import derivatives, evaluate
 from moletally.kernel.program import Builder, Op
-from moletally.kernel.rates import Bound, derivatives, evaluate, tape_of
+from moletally.kernel.rates import Bound, tape_of
 from moletally.kernel.structure import everything
 
 LAWS = [

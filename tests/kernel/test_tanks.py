@@ -182,7 +182,6 @@ def test_of_three_states_the_one_that_the_start_reaches(start: tuple[float, floa
     assert result.c[0] == pytest.approx([6 - b, b], rel=1e-12)
     assert result.from_transient[0]
     assert not result.unique[0]
-    assert result.growth[0] == pytest.approx(-2, rel=1e-9)
 
 
 def test_a_start_on_the_unstable_state_is_refused() -> None:

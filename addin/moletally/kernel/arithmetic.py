@@ -155,11 +155,19 @@ def _decimal_slope(x: Decimal, y: Decimal, _: Decimal) -> Decimal:
     return y * _decimal_power(x if y == y.to_integral_value() else abs(x), y - 1) if y else y
 
 
-def _slopes(power: Callable[[Value, Value, Value], Value], table: Table, unit: Value) -> Slopes:
-    """For each Op the functions of (x, y, z) that give dz/dx and dz/dy of z = op(x, y); None is 1."""
+def _slopes(
+    power: Callable[[Value, Value, Value], Value],
+    exponent: Callable[[Value, Value], Value],
+    table: Table,
+    unit: Value,
+) -> Slopes:
+    """For each Op the functions of (x, y, z) that give dz/dx and dz/dy of z = op(x, y); None is 1.
+
+    power, exponent : dz/dx of x^y, and dz/dy of it, which is nothing where z is: 0^y stays 0
+    """
     half = unit / 2
     per_decade = unit / table[Op.LN](unit * 10, None)
-    div, ln = table[Op.DIV], table[Op.LN]
+    div = table[Op.DIV]
     first = {
         "ADD": None,
         "SUB": None,
@@ -180,13 +188,13 @@ def _slopes(power: Callable[[Value, Value, Value], Value], table: Table, unit: V
         "SUB": lambda x, y, z: -unit,
         "MUL": lambda x, y, z: x,
         "DIV": lambda x, y, z: -div(z, y),
-        "POW": lambda x, y, z: z * ln(x, None),
+        "POW": lambda x, y, z: exponent(x, z),
         "MIN": lambda x, y, z: (y < x) * unit,
         "MAX": lambda x, y, z: (y > x) * unit,
     }
     return tuple(first[op.name] for op in Op), tuple(second.get(op.name) for op in Op)
 
 
-FLOAT_SLOPES = _slopes(_float_slope, FLOATS, 1.0)
-ARRAY_SLOPES = _slopes(_array_slope, ARRAYS, 1.0)
-DECIMAL_SLOPES = _slopes(_decimal_slope, DECIMALS, Decimal(1))
+FLOAT_SLOPES = _slopes(_float_slope, lambda x, z: z * _ln(x) if z else 0.0, FLOATS, 1.0)
+ARRAY_SLOPES = _slopes(_array_slope, lambda x, z: np.where(np.equal(z, 0), 0.0, z * np.log(x)), ARRAYS, 1.0)
+DECIMAL_SLOPES = _slopes(_decimal_slope, lambda x, z: z * x.ln() if z else z, DECIMALS, Decimal(1))

@@ -19,7 +19,7 @@ from moletally.kernel.arithmetic import (
 )
 from moletally.kernel.program import NONE, Op, Program
 
-__all__ = ["Bound", "Floats", "Tape", "derivatives", "evaluate", "tape_of"]
+__all__ = ["Bound", "Floats", "Tape", "tape_of"]
 
 Floats = NDArray[np.float64]
 Edge = tuple[int, int, int, int, int, bool]  # result, argument, operands x and y, operation, second argument?
@@ -181,26 +181,3 @@ class Bound:
         for j, value in enumerate(values):
             r[:, j] = value
         return r
-
-
-def evaluate(program: Program, c: Floats, T: Floats, p: Floats) -> Floats:
-    """Rates of all reactions.
-
-    c : ndarray, shape (N, S) [mol/m3]; T : ndarray, shape (N,) [K]; p : ndarray, shape (N, P)
-    Returns r, shape (N, R) [mol/(m3 s)]; nan or inf where a law is undefined.
-    """
-    everything = tuple(range(program.n_species))
-    tape = tape_of(program, tuple(range(program.n_reactions)), everything)
-    return Bound.of(tape, T, p).rates(c, strict=True)
-
-
-def derivatives(program: Program, c: Floats, T: Floats, p: Floats) -> tuple[Floats, Floats, Floats, Floats]:
-    """Rates and their exact derivatives: r (N, R), dr/dc (N, R, S), dr/dT (N, R), dr/dp (N, R, P)."""
-    leaves = tuple(range(program.first_literal))
-    tape = tape_of(program, tuple(range(program.n_reactions)), leaves)
-    everything = np.concatenate([c, T[:, None], p], axis=1)
-    bound = Bound.of(tape, T, p)
-    # Temperature and parameters are leaves here: the prelude belongs to the path and must not be cut off.
-    r, jacobian = bound.slopes(everything)
-    species = program.n_species
-    return r, jacobian[:, :, :species], jacobian[:, :, species], jacobian[:, :, species + 1 :]

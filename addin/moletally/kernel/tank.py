@@ -1,31 +1,28 @@
 """Stirred tanks: 0 = feed - c + tau nu^T r(c), the state that a start-up reaches."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import STEADY_DEPTH, Laws
+from moletally.kernel.cases import How, Ints, TankAnswers, TankCases
+from moletally.kernel.engine import engine
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
-from moletally.kernel.settle import Settled, settle
-from moletally.kernel.stability import invaded
-from moletally.kernel.startup import start_up
+from moletally.kernel.refine import refine
 from moletally.kernel.status import Status
-from moletally.kernel.steady import NOTHING, Tanks, newton
-from moletally.kernel.structure import Structure, structures
+from moletally.kernel.structure import ZERO_ORDER, Structure, structures
 
 __all__ = ["TankResult", "solve_tanks"]
 
-FIRST_GUESSES = (1e-3, 1e-9)  # of the largest concentration, for species that are not fed
-BRIEFEST = 1e-50  # s: no residence time above it is brief
-BRIEF = 1e-100  # of the feed: a conversion that is exact to first order
-NOWHERE = 1.0  # mol/m3: the scale of a vessel into which nothing is fed, for want of another
+RELIABLE = 1e-10  # estimated relative error beyond which 50 digits are called for
+NEAR_ZERO = 1e-50  # of the largest concentration: where laws of order zero are cut
 
-Ints = NDArray[np.intp]
+Bools = NDArray[np.bool_]
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, slots=True)
 class TankResult:
     """The answer to N tanks.
 
@@ -37,31 +34,19 @@ class TankResult:
     residual : ndarray, shape (N,) - largest residual relative to the sum of its balance's terms
     iterations, work : ndarray, shape (N,) - of Newton's method; evaluations of the laws
     condition : ndarray, shape (N,) - relative change of an outlet per relative change of feed and rates
-    growth : ndarray, shape (N,) - largest real part of the eigenvalues of the dynamic balances [1/s]
+    root : ndarray, shape (N, S) - the outlets before what is used up was called zero
     """
 
     c: Floats
-    status: NDArray[np.int_]
-    unique: NDArray[np.bool_]
-    from_transient: NDArray[np.bool_]
-    exhausted: NDArray[np.bool_]
+    status: NDArray[np.int32]
+    unique: Bools
+    from_transient: Bools
+    exhausted: Bools
     residual: Floats
-    iterations: NDArray[np.int_]
-    work: NDArray[np.int_]
+    iterations: NDArray[np.int32]
+    work: NDArray[np.int32]
     condition: Floats
-    growth: Floats
-
-    @classmethod
-    def of_feed(cls, feed: Floats, tau: Floats) -> "TankResult":
-        """Tanks in which nothing happens."""
-        n = len(feed)
-        with np.errstate(all="ignore"):
-            back = -1.0 / tau
-        return cls(
-            feed.copy(), np.zeros(n, dtype=np.int_), np.ones(n, dtype=np.bool_), np.zeros(n, dtype=np.bool_),
-            np.zeros(feed.shape, dtype=np.bool_), np.zeros(n), np.zeros(n, dtype=np.int_),
-            np.zeros(n, dtype=np.int_), np.ones(n), back,
-        )  # fmt: skip
+    root: Floats
 
 
 def solve_tanks(
@@ -73,125 +58,177 @@ def solve_tanks(
     T : ndarray, shape (N,) [K]; p : ndarray, shape (N, P)
     start : ndarray, shape (N, S) - first contents of the vessels; None: full of feed
     """
-    result = TankResult.of_feed(feed, tau)
-    seeded = np.zeros(feed.shape, dtype=np.bool_) if start is None else (start > 0) & ~(feed > 0)
-    contents = feed if start is None else start
-    for structure, rows in structures(model, (feed > 0) | seeded, T, p):
+    cases = TankCases(feed, tau, T, p, start)
+    there = feed > 0
+    if start is not None:
+        there = there | (start > 0)
+    groups = list(structures(model, there, T, p))
+    if len(groups) == 1 and tau.min(initial=1.0) > 0:
+        return _result(groups[0][0].unique, _group(model, groups[0][0], cases))
+    n, species = feed.shape
+    answers, unique = TankAnswers.empty(n, species), np.ones(n, dtype=np.bool_)
+    answers.put(np.arange(n), _nothing_happens(feed))
+    for structure, rows in groups:
         running = rows[tau[rows] > 0]
-        if len(running) and tau[running].min() < BRIEFEST:
-            running = running[~_hardly_changed(structure, result, running, tau, T, p)]
         if len(running):
-            group = _Group(structure, result, running)
-            faded = group.solve(feed[running], tau[running], T[running], p[running], contents[running])
-            if len(faded):
-                _without_seeds(model, result, running[faded], feed, tau, T, p)
-    return result
+            unique[running] = structure.unique
+            answers.put(running, _group(model, structure, _at(cases, running)))
+    return _result(unique, answers)
 
 
-def _hardly_changed(
-    structure: Structure, result: TankResult, rows: Ints, tau: Floats, T: Floats, p: Floats
-) -> NDArray[np.bool_]:
-    """Answers tanks of so short a residence time that products of products would underflow."""
-    feed = result.c[np.ix_(rows, structure.present)]
-    largest = feed.max(axis=1, initial=0.0)
-    scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE)[:, None], feed.shape)
-    laws = Laws.of(structure, structure.edged, scale, T[rows], p[rows])
-    with np.errstate(all="ignore"):
-        extent = tau[rows, None] * laws.rates(feed)
-        brief = (np.abs(extent) < BRIEF * largest[:, None]).all(axis=1) & (largest > 0)
-        result.c[np.ix_(rows[brief], structure.present)] += structure.coefficients.gain(extent[brief])
-    return np.asarray(brief)
+def _result(unique: bool | Bools, a: TankAnswers) -> TankResult:
+    proven = unique if isinstance(unique, np.ndarray) else np.full(len(a.status), unique)
+    return TankResult(
+        a.c,
+        a.status,
+        proven,
+        a.from_start,
+        a.exhausted,
+        a.residual,
+        a.iterations,
+        a.work,
+        a.condition,
+        a.root,
+    )
 
 
-def _without_seeds(
-    model: Model, result: TankResult, rows: Ints, feed: Floats, tau: Floats, T: Floats, p: Floats
-) -> None:
-    """Tanks whose first contents were washed out before they could take hold: the feed alone is left.
+def _at(cases: TankCases, rows: Ints) -> TankCases:
+    start = None if cases.start is None else cases.start[rows]
+    return TankCases(cases.feed[rows], cases.tau[rows], cases.T[rows], cases.p[rows], start)
 
-    The start-up that follows begins full of feed; it was near that state already.
+
+def _nothing_happens(feed: Floats) -> TankAnswers:
+    n = len(feed)
+    none, nought = np.zeros(n, dtype=np.int32), np.zeros(n)
+    no = np.zeros(n, dtype=np.bool_)
+    return TankAnswers(
+        feed.copy(), none, no, no, np.zeros(feed.shape, dtype=np.bool_), nought, np.ones(n), nought, feed, none,
+        none,
+    )  # fmt: skip
+
+
+def _group(model: Model, structure: Structure, cases: TankCases) -> TankAnswers:
+    """Answers to tanks of one structure."""
+    if structure.unbounded:
+        return _failed(structure, cases, Status.UNBOUNDED_AT_ZERO)
+    if cases.start is not None:
+        cases = replace(cases, fed=_fed(structure, cases.feed))
+    answers = _judged(structure, cases, engine().tanks(structure, cases, How.FROM_FEED))
+    if answers.exhausted.any():
+        _again_without(structure, cases, answers)
+    if answers.faded.any():
+        # What was there at the start only was washed out before it could take hold: the feed alone is left.
+        rows = np.flatnonzero(answers.faded)
+        part = solve_tanks(model, cases.feed[rows], cases.tau[rows], cases.T[rows], cases.p[rows])
+        for name in set(TankAnswers.__slots__) & set(TankResult.__slots__):
+            getattr(answers, name)[rows] = getattr(part, name)
+        answers.from_start[rows] = part.from_transient
+    return answers
+
+
+def _failed(structure: Structure, cases: TankCases, status: Status) -> TankAnswers:
+    out = _nothing_happens(cases.feed)
+    out.c[:] = np.nan
+    out.status[:] = status
+    out.exhausted[:, structure.wanted] = True
+    return out
+
+
+def _fed(structure: Structure, feed: Floats) -> Bools:
+    """Species that the feed alone would bring about, shape (N, S)."""
+    fed = np.zeros(feed.shape, dtype=np.bool_)
+    here = feed[:, structure.present] > 0
+    for k, pattern in enumerate(map(tuple, here.tolist())):
+        fed[k, structure.present] = structure.reached(pattern)
+    return fed
+
+
+def _judged(structure: Structure, cases: TankCases, answers: TankAnswers) -> TankAnswers:
+    """Takes tanks whose doubles lost too many digits through 50 decimals, and checks them again."""
+    doubtful = ~(answers.error <= RELIABLE)
+    if not doubtful.any():
+        return answers
+    for k in np.flatnonzero(doubtful & ~answers.faded).tolist():
+        better = _in_decimals(structure, cases, k, answers.root[k])
+        if better is not None:
+            one = np.array([k])
+            case = replace(_at(cases, one), c=better[None], scale=_pick(cases.scale, one))
+            answers.put(one, _kept(answers, k, engine().tanks(structure, case, How.CHECK_ONLY)))
+    return answers
+
+
+def _kept(answers: TankAnswers, k: int, checked: TankAnswers) -> TankAnswers:
+    """A checked answer with the history of the one it replaces."""
+    one = slice(k, k + 1)
+    return replace(
+        checked,
+        from_start=answers.from_start[one],
+        iterations=answers.iterations[one],
+        work=answers.work[one],
+    )
+
+
+def _pick(values: Floats | None, rows: Ints) -> Floats | None:
+    return None if values is None else values[rows]
+
+
+def _in_decimals(structure: Structure, cases: TankCases, k: int, root: Floats) -> Floats | None:
+    here = structure.present
+    c, feed = root[here], cases.feed[k][here]
+    if (c[structure.starved] < NEAR_ZERO * max(cases.feed[k].max(), root.max())).any() or not (c > 0).all():
+        return None
+    better = refine(structure.tape, structure.nu, c, feed, float(cases.tau[k]), float(cases.T[k]), cases.p[k])
+    if better is None:
+        return None
+    out = np.zeros(len(root))
+    out[here] = better
+    return out
+
+
+@lru_cache(maxsize=512)
+def _without(structure: Structure, gone: tuple[int, ...]) -> Model | None:
+    """The model less the terms that vanish with the species used up; None if there are none.
+
+    Near zero such a term still takes a share, one of order one half 1e-30 times its constant.
     """
-    again = solve_tanks(model, feed[rows], tau[rows], T[rows], p[rows])
-    for name in TankResult.__dataclass_fields__:
-        getattr(result, name)[rows] = getattr(again, name)
+    keep = ~(structure.order[:, list(gone)] > ZERO_ORDER).any(axis=1)
+    if keep.all():
+        return None
+    terms, kept = structure.terms.model, structure.firing[keep]
+    program = replace(
+        terms.program, segments=terms.program.segments[kept], outputs=terms.program.outputs[kept]
+    )
+    return Model(program, terms.stoichiometry[kept])
 
 
-class _Group:
-    """Tanks of one structure; writes into their rows of the result."""
+def _again_without(structure: Structure, cases: TankCases, answers: TankAnswers) -> None:
+    """Solves tanks whose species are used up without what vanishes with them; keeps what is as good."""
+    used = answers.exhausted[:, structure.present]
+    for pattern in np.unique(used[used.any(axis=1)], axis=0):
+        model = _without(structure, tuple(np.flatnonzero(pattern).tolist()))
+        if model is None:
+            continue
+        rows = np.flatnonzero((used == pattern).all(axis=1))
+        gone = np.zeros(answers.c.shape[1], dtype=np.bool_)
+        gone[structure.present[pattern]] = True
+        feed = np.zeros((len(rows), answers.c.shape[1]))
+        feed[:, structure.present] = cases.feed[np.ix_(rows, structure.present)]
+        for less, part in structures(model, feed > 0, cases.T[rows], cases.p[rows]):
+            if not less.unbounded and len(less.firing):
+                _solve_without(less, gone, cases, answers, rows[part], feed[part])
 
-    def __init__(self, structure: Structure, result: TankResult, rows: Ints) -> None:
-        self.structure, self.out, self.rows = structure, result, rows
 
-    def solve(self, feed: Floats, tau: Floats, T: Floats, p: Floats, start: Floats) -> Ints:
-        """Settle every row; returns those whose seeds were washed out."""
-        structure, out, rows = self.structure, self.out, self.rows
-        here = structure.present
-        out.unique[rows] = structure.unique
-        out.exhausted[np.ix_(rows, structure.wanted)] = True
-        faded = np.zeros(0, dtype=np.intp)
-        if structure.unbounded:
-            self._fail(np.arange(len(rows)), Status.UNBOUNDED_AT_ZERO)
-            return faded
-        c = feed[:, here].copy()
-        largest = np.maximum(feed, start).max(axis=1, keepdims=True)
-        scale = np.broadcast_to(np.where(largest > 0, largest, NOWHERE), c.shape)
-        tanks = Tanks(
-            Laws.of(structure, structure.starved, scale, T, p, STEADY_DEPTH),
-            structure.coefficients,
-            c.copy(),
-            tau,
-            NOTHING * scale[:, :1],
-        )
-        if len(structure.firing):
-            faded = self._states(tanks, c, scale, T, p, start[:, here])
-        elif not structure.unique:
-            self._fail(np.flatnonzero(invaded(structure, c, tau, T, p)), Status.UNSTABLE)
-            return faded
-        good = np.setdiff1d(np.flatnonzero(out.status[rows] == Status.OK), faded)
-        if len(structure.firing) and len(good):
-            self._keep(good, settle(structure, tanks.at(good), c[good], T[good], p[good]))
-        return faded
-
-    def _keep(self, places: Ints, answer: Settled) -> None:
-        out, rows = self.out, self.rows[places]
-        out.c[rows], out.status[rows] = answer.c, answer.status
-        out.exhausted[rows] |= answer.exhausted
-        out.residual[rows], out.condition[rows] = answer.residual, answer.condition
-        out.growth[rows] = answer.growth
-
-    def _fail(self, places: Ints, status: int | NDArray[np.int_]) -> None:
-        rows = self.rows[places]
-        self.out.status[rows] = status
-        self.out.c[rows] = np.nan
-
-    def _states(self, tanks: Tanks, c: Floats, scale: Floats, T: Floats, p: Floats, start: Floats) -> Ints:
-        """Writes steady states into c; returns the places of tanks whose seeds were washed out."""
-        structure, out = self.structure, self.out
-        left = np.arange(len(c))
-        for guess in FIRST_GUESSES if structure.unique else ():
-            part = tanks.at(left)
-            roots = newton(part, np.maximum(part.feed, guess * scale[left]))
-            out.iterations[self.rows[left]] += roots.iterations
-            out.work[self.rows[left]] += 2 * roots.iterations
-            c[left[roots.settled]] = roots.c[roots.settled]
-            left = left[~roots.settled]
-            if not len(left):
-                return left
-        fed = self._fed(tanks.feed[left])
-        laws = Laws.of(structure, structure.edged, scale[left], T[left], p[left])
-        rest = start_up(structure, tanks.at(left), laws, start[left], fed)
-        rows = self.rows[left]
-        out.from_transient[rows] = True
-        out.iterations[rows] += rest.iterations
-        out.work[rows] += rest.work
-        c[left] = rest.c
-        lost = (rest.status != Status.OK) & ~rest.faded
-        self._fail(left[lost], rest.status[lost])
-        return left[rest.faded]
-
-    def _fed(self, feed: Floats) -> NDArray[np.bool_]:
-        """Present species that the feed alone would bring about, shape (n, present)."""
-        structure = self.structure
-        alone = np.zeros(feed.shape, dtype=np.bool_)
-        for k, reached in enumerate(map(structure.reached, map(tuple, (feed > 0).tolist()))):
-            alone[k] = reached
-        return alone
+def _solve_without(
+    less: Structure, gone: Bools, cases: TankCases, answers: TankAnswers, rows: Ints, feed: Floats
+) -> None:
+    largest = cases.feed[rows] if cases.start is None else np.maximum(cases.feed[rows], cases.start[rows])
+    top = largest.max(axis=1, initial=0.0)
+    near = TankCases(
+        feed, cases.tau[rows], cases.T[rows], cases.p[rows],
+        scale=np.where(top > 0, top, 1.0), c=np.nan_to_num(answers.root[rows]),
+    )  # fmt: skip
+    found = _judged(less, near, engine().tanks(less, near, How.FROM_GUESS))
+    good = (found.status == Status.OK) & ~(gone & (found.c != 0)).any(axis=1)
+    answers.exhausted[rows[good]] |= found.exhausted[good]
+    for name in ("c", "status", "residual", "condition", "root"):
+        getattr(answers, name)[rows[good]] = getattr(found, name)[good]

@@ -1,6 +1,6 @@
 """Rates of the reactions at given concentrations."""
 
-from moletally.kernel.rates import evaluate
+from moletally.kernel.evaluate import evaluate
 from moletally.reactors.batch import Batch, Floats
 
 __all__ = ["rates_at"]

@@ -12,9 +12,9 @@ Reference: G. Steinebach, BIT Numer. Math. 63 (2023) 27, table of Rodas5P. The o
 
 import numpy as np
 
-from moletally.kernel.flow import Flow
-from moletally.kernel.linear import inverse
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference.flow import Flow
+from moletally.kernel.reference.linear import inverse
 
 __all__ = ["Rodas5P"]
 

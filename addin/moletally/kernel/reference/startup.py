@@ -9,18 +9,19 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel import steady
-from moletally.kernel.creep import creep
-from moletally.kernel.cutoff import DEPTH, LOW, STEADY_DEPTH, Laws
-from moletally.kernel.flow import Flow
+from moletally.kernel.depth import DEPTH, STEADY_DEPTH
 from moletally.kernel.rates import Floats
-from moletally.kernel.stability import growth
+from moletally.kernel.reference import steady
+from moletally.kernel.reference.creep import creep
+from moletally.kernel.reference.cutoff import LOW, Laws
+from moletally.kernel.reference.flow import Flow
+from moletally.kernel.reference.stability import growth
+from moletally.kernel.reference.steady import Tanks, newton
+from moletally.kernel.reference.stepping import STIFF, Stepper
+from moletally.kernel.reference.tolerance import ABSOLUTE, Tolerance
+from moletally.kernel.reference.totals import Totals
 from moletally.kernel.status import Status
-from moletally.kernel.steady import Tanks, newton
-from moletally.kernel.stepping import STIFF, Stepper
 from moletally.kernel.structure import Structure
-from moletally.kernel.tolerance import ABSOLUTE, Tolerance
-from moletally.kernel.totals import Totals
 
 __all__ = ["Rest", "start_up"]
 

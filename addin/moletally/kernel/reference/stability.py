@@ -4,7 +4,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.rates import Bound, Floats
-from moletally.kernel.steady import Tanks
+from moletally.kernel.reference.steady import Tanks
 from moletally.kernel.structure import Structure, everything
 
 __all__ = ["growth", "invaded"]

@@ -8,7 +8,7 @@ where a species runs out do no harm. It takes over where the Rosenbrock method g
 import numpy as np
 
 from moletally.kernel.rates import Floats
-from moletally.kernel.steady import Tanks, newton
+from moletally.kernel.reference.steady import Tanks, newton
 
 __all__ = ["creep"]
 

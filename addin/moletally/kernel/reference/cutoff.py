@@ -16,19 +16,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.rates import Bound, Floats
+from moletally.kernel.depth import DEPTH, ENDLESS_DEPTH
+from moletally.kernel.rates import Bound, Floats, tape_of
 from moletally.kernel.structure import ZERO_ORDER, Structure
 
-__all__ = ["DEPTH", "LOW", "STEADY_DEPTH", "Laws"]
+__all__ = ["LOW", "Laws"]
 
-# Of the largest concentration. It must be small: beside a law of order zero that takes all that is
-# supplied, a fast one of order one half would take its share at 1e-15; and a chain carrier of half order
-# in its own end may run a reaction from a share of 1e-16.
-DEPTH = 1e-30
-# Newton's method has no steps to take care of: deep enough that what is left there matters to nothing.
-STEADY_DEPTH = 1e-60
-# Where a law has no bound at zero there is no answer beyond; what counts is to get there in few steps.
-ENDLESS_DEPTH = 1e-15
 FAR = 1e16  # depths from zero at which the difference is rounding
 LOW = 1e6  # depths from zero within which a law of order zero no longer gets all it asks for
 
@@ -86,6 +79,17 @@ class Laws:
         v = np.where(below[:, None, :], 0.0, v) * factor[:, :, None]
         v[:, :, self.edged] += r[:, :, None] * slope
         return r * factor, v
+
+    def by_constants(self, structure: Structure, c: Floats, T: Floats, p: Floats) -> Floats:
+        """Derivatives by temperature and parameters, shape (n, terms, 1 + P)."""
+        program, here = structure.terms.model.program, len(structure.present)
+        leaves = (*structure.present.tolist(), *range(program.temperature, program.first_literal))
+        tape = tape_of(program, tuple(structure.firing.tolist()), leaves)
+        state, factor = c, np.ones((1, 1))
+        if not self._far(c):
+            state, factor = self._lifted(c), self._factors(c)[0]
+        _, v = Bound.of(tape, T, p).slopes(np.concatenate([state, T[:, None], p], axis=1))
+        return np.asarray(v[:, :, here:] * factor[:, :, None])
 
     def strict(self, c: Floats) -> Floats:
         """r with nan where a root of a negative number is taken: for checking answers."""

@@ -5,9 +5,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cutoff import LOW, Laws
-from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference.cutoff import LOW, Laws
+from moletally.kernel.reference.flow import Flow
 from moletally.kernel.structure import Structure
 
 __all__ = ["ABSOLUTE", "NOTHING", "Tolerance"]

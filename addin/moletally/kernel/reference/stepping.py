@@ -11,13 +11,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.explicit import DOP853
-from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
-from moletally.kernel.rosenbrock import Rodas5P
+from moletally.kernel.reference.explicit import DOP853
+from moletally.kernel.reference.flow import Flow
+from moletally.kernel.reference.rosenbrock import Rodas5P
+from moletally.kernel.reference.tolerance import Tolerance
+from moletally.kernel.reference.totals import Totals
 from moletally.kernel.status import Status
-from moletally.kernel.tolerance import Tolerance
-from moletally.kernel.totals import Totals
 
 __all__ = ["METHODS", "STIFF", "Stepper", "Stride"]
 

@@ -6,8 +6,8 @@ section II.5 (coefficients) and II.10 (error estimate). The order conditions are
 
 import numpy as np
 
-from moletally.kernel.flow import Flow
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference.flow import Flow
 
 __all__ = ["DOP853"]
 

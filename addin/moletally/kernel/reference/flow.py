@@ -6,8 +6,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.coefficients import Coefficients
-from moletally.kernel.cutoff import Laws
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference.cutoff import Laws
 
 __all__ = ["Flow"]
 

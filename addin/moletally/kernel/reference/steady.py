@@ -12,10 +12,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from moletally.kernel.coefficients import Coefficients
-from moletally.kernel.cutoff import Laws
-from moletally.kernel.exact import balance
-from moletally.kernel.linear import inverse, solve
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference.cutoff import Laws
+from moletally.kernel.reference.exact import balance
+from moletally.kernel.reference.linear import inverse, solve
 from moletally.kernel.totals import exact_coefficients
 
 __all__ = ["CLOSED", "EPSILON", "NOTHING", "Roots", "Tanks", "newton", "polish"]

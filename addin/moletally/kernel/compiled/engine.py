@@ -1,0 +1,157 @@
+"""The compiled engine behind the common face: arrays in, one call, arrays out."""
+
+import ctypes
+import os
+from collections.abc import Callable, Iterable
+from concurrent.futures import ThreadPoolExecutor
+from functools import cache
+from itertools import pairwise
+from typing import Any, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from moletally.kernel.cases import How, TankAnswers, TankCases, TubeAnswers
+from moletally.kernel.compiled.library import Rates, Slopes, Tanks, Tubes, library
+from moletally.kernel.compiled.network import Network, network_of, network_of_program
+from moletally.kernel.program import Program
+from moletally.kernel.rates import Floats
+from moletally.kernel.structure import Structure
+
+__all__ = ["CompiledEngine"]
+
+# Cases below which a second thread costs more than it saves: it is woken in some 50 microseconds, a tank
+# takes a few, a tube some tens.
+FEW_TANKS, FEW_TUBES = 64, 4
+PIECES = 4  # per thread: cases differ in work
+
+Array = NDArray[Any]
+Record = TypeVar("Record", Tanks, Tubes, Slopes)
+
+
+class CompiledEngine:
+    """The C kernel."""
+
+    name = "compiled engine (C)"
+
+    def __init__(self) -> None:
+        self._library = library()
+
+    def tanks(self, structure: Structure, cases: TankCases, how: How) -> TankAnswers:
+        """Solve and check tanks."""
+        n, species = cases.feed.shape
+        out = TankAnswers.empty(n, species)
+        if cases.c is not None:
+            out.c[:] = cases.c
+        rows = {
+            "feed": _floats(cases.feed), "tau": _floats(cases.tau), "T": _floats(cases.T), "p": _floats(cases.p),
+            "start": None if cases.start is None else _floats(cases.start),
+            "fed": None if cases.fed is None else np.ascontiguousarray(cases.fed),
+            "scale": None if cases.scale is None else _floats(cases.scale),
+            **{name: getattr(out, name) for name in TankAnswers.__slots__},
+        }  # fmt: skip
+        _in_pieces(self._library.mt_solve_tanks, network_of(structure), Tanks(how=how), rows, n, FEW_TANKS)
+        return out
+
+    def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
+        """Follow tubes."""
+        n, points = asked.shape
+        out = TubeAnswers.empty(n, points, feed.shape[1])
+        rows = {
+            "feed": _floats(feed), "asked": _floats(asked), "T": _floats(T), "p": _floats(p),
+            **{name: getattr(out, name) for name in TubeAnswers.__slots__},
+        }  # fmt: skip
+        _in_pieces(self._library.mt_solve_tubes, network_of(structure), Tubes(m=points), rows, n, FEW_TUBES)
+        return out
+
+    def tank_slopes(self, structure: Structure, cases: TankCases, root: Floats) -> Floats:
+        """Derivatives of outlets of tanks."""
+        return self._slopes(self._library.mt_tank_slopes, structure, cases, _floats(root))
+
+    def tube_slopes(self, structure: Structure, cases: TankCases) -> Floats:
+        """Derivatives of outlets of tubes."""
+        return self._slopes(self._library.mt_tube_slopes, structure, cases, None)
+
+    def _slopes(
+        self, function: Callable[..., int], structure: Structure, cases: TankCases, outlet: Floats | None
+    ) -> Floats:
+        n, species = cases.feed.shape
+        slope = np.empty((n, species, species + 2 + cases.p.shape[1]))
+        rows = {
+            "feed": _floats(cases.feed), "tau": _floats(cases.tau), "T": _floats(cases.T), "p": _floats(cases.p),
+            "outlet": outlet, "slope": slope, "status": np.empty(n, dtype=np.int32),
+        }  # fmt: skip
+        _in_pieces(function, network_of(structure), Slopes(), rows, n, FEW_TUBES)
+        return slope
+
+    def evaluate(self, program: Program, c: Floats, T: Floats, p: Floats) -> Floats:
+        """Rates; nan where a root of a negative number is taken."""
+        rate = np.empty((len(c), program.n_reactions))
+        rows = {"c": _floats(c), "T": _floats(T), "p": _floats(p), "rate": rate}
+        self._evaluate(program, Rates(n=len(c), strict=1), rows)
+        return rate
+
+    def derivatives(
+        self, program: Program, c: Floats, T: Floats, p: Floats
+    ) -> tuple[Floats, Floats, Floats, Floats]:
+        """Rates and their derivatives."""
+        n, reactions = len(c), program.n_reactions
+        out = (
+            np.empty((n, reactions)), np.empty((n, reactions, program.n_species)), np.empty((n, reactions)),
+            np.empty((n, reactions, program.n_parameters)),
+        )  # fmt: skip
+        names = ("rate", "by_c", "by_T", "by_p")
+        rows = {"c": _floats(c), "T": _floats(T), "p": _floats(p), **dict(zip(names, out, strict=True))}
+        self._evaluate(program, Rates(n=n), rows)
+        return out
+
+    def _evaluate(self, program: Program, record: Rates, rows: dict[str, Floats]) -> None:
+        for name, array in rows.items():
+            setattr(record, name, array.ctypes.data)
+        _check(self._library.mt_evaluate(network_of_program(program).handle, ctypes.byref(record)))
+
+
+def _floats(values: Floats) -> Floats:
+    return np.ascontiguousarray(values, dtype=np.float64)
+
+
+def _check(code: int) -> None:
+    if code:
+        raise MemoryError(f"the kernel ran out of memory (code {code})")
+
+
+@cache
+def _threads() -> ThreadPoolExecutor:
+    return ThreadPoolExecutor(_cores(), thread_name_prefix="moletally")
+
+
+@cache
+def _cores() -> int:
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def _in_pieces(
+    function: Callable[..., int], network: Network, record: Record, rows: dict[str, Array | None], n: int, few: int
+) -> None:  # fmt: skip
+    """Calls the kernel for n rows: at once where they are few, by pieces on all cores else."""
+    pieces = 1 if n < few or _cores() == 1 else min(n, PIECES * _cores())
+    if pieces == 1:
+        _call(function, network, record, rows, 0, n)
+        return
+    edges = [n * k // pieces for k in range(pieces + 1)]
+    work: Iterable[Any] = [
+        _threads().submit(_call, function, network, type(record).from_buffer_copy(record), rows, a, b)
+        for a, b in pairwise(edges)
+    ]
+    for done in work:
+        done.result()
+
+
+def _call(
+    function: Callable[..., int], network: Network, record: Record, rows: dict[str, Array | None], first: int, end: int
+) -> None:  # fmt: skip
+    record.n = end - first
+    for name, array in rows.items():
+        if array is not None:
+            setattr(record, name, array.ctypes.data + first * array.strides[0])
+    _check(function(network.handle, ctypes.byref(record)))

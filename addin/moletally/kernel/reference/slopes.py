@@ -1,0 +1,131 @@
+"""Derivatives of outlets by feed, residence time, temperature and parameters.
+
+A tank's follow from its balance. A tube's are differences between neighbours that are stepped on the very
+mesh of the tube itself, so that what they differ by is not a difference of meshes (internal numerical
+differentiation: H. G. Bock, Springer Ser. Chem. Phys. 18 (1981) 102). The compiled engine differentiates
+the steps themselves.
+"""
+
+import numpy as np
+
+from moletally.kernel.cases import TankCases
+from moletally.kernel.depth import STEADY_DEPTH
+from moletally.kernel.rates import Floats
+from moletally.kernel.reference.cutoff import Laws
+from moletally.kernel.reference.flow import Flow
+from moletally.kernel.reference.steady import NOTHING, Tanks
+from moletally.kernel.reference.stepping import METHODS, Stepper
+from moletally.kernel.reference.tolerance import Tolerance
+from moletally.kernel.status import Status
+from moletally.kernel.structure import Structure
+
+__all__ = ["of_tanks", "of_tubes"]
+
+NUDGE = 1e-5  # relative difference between neighbours: rounding and curvature weigh about the same
+MOST_STEPS = 12000
+RELATIVE = (1e-10, 1e-9)
+
+
+def of_tanks(structure: Structure, cases: TankCases, root: Floats) -> Floats:
+    """(I - tau J) dc = d(feed + tau nu^T r) at roots, shape (N, S)."""
+    here = structure.present
+    species, parameters = cases.feed.shape[1], cases.p.shape[1]
+    out = np.full((len(root), species, species + 2 + parameters), np.nan)
+    scale = np.broadcast_to(_scale(cases.feed)[:, None], (len(root), len(here)))
+    laws = Laws.of(structure, structure.starved, scale, cases.T, cases.p, STEADY_DEPTH)
+    c = np.maximum(root[:, here], NOTHING * scale)
+    tanks = Tanks(laws, structure.coefficients, cases.feed[:, here], cases.tau, NOTHING * scale[:, :1])
+    _, _, matrix = tanks.linear(c)
+    by_constants = np.moveaxis(laws.by_constants(structure, c, cases.T, cases.p), 2, 0)
+    tau = cases.tau[:, None, None]
+    right = np.concatenate(
+        [
+            np.broadcast_to(np.eye(len(here)), (len(root), len(here), len(here))),
+            structure.coefficients.gain(laws.rates(c))[:, :, None],
+            tau * np.stack([structure.coefficients.gain(r) for r in by_constants], axis=2),
+        ],
+        axis=2,
+    )
+    largest = 1.0 / np.abs(matrix).max(axis=2, keepdims=True)
+    with np.errstate(all="ignore"):
+        answer = np.linalg.solve(matrix * largest, right * largest) * c[:, :, None]
+    _write(out, here, answer)
+    return out
+
+
+def of_tubes(structure: Structure, cases: TankCases) -> Floats:
+    """Differences of neighbours on a common mesh, case by case."""
+    species, parameters = cases.feed.shape[1], cases.p.shape[1]
+    out = np.full((len(cases.tau), species, species + 2 + parameters), np.nan)
+    for k in range(len(cases.tau)):
+        answer = _of_tube(structure, cases.feed[k], float(cases.tau[k]), float(cases.T[k]), cases.p[k])
+        if answer is not None:
+            _write(out[k : k + 1], structure.present, answer[None])
+    return out
+
+
+def _of_tube(structure: Structure, feed: Floats, tau: float, T: float, p: Floats) -> Floats | None:
+    """Shape (present, present + 2 + P), or None where the tube can't be followed."""
+    here = structure.present
+    scale = float(_scale(feed[None])[0])
+    values = np.concatenate([feed[here], [T], p])
+    sizes = np.where(
+        values != 0, np.abs(values), np.concatenate([np.full(len(here), scale), np.ones(1 + len(p))])
+    )
+    step = np.diag(NUDGE * sizes)
+    rows = np.concatenate([values[None], values + step, values - step])
+    # A species that is not fed can't be fed less than nothing: two steps ahead instead (second order, too).
+    unfed = np.flatnonzero(values[: len(here)] == 0)
+    rows[1 + len(values) + unfed] = values + 2.0 * step[unfed]
+    c = rows[:, : len(here)].copy()
+    family = _Family(structure, c, rows[:, len(here)], rows[:, len(here) + 1 :], scale)
+    if not family.follow(tau):
+        return None
+    ahead, behind = family.c[1 : 1 + len(values)], family.c[1 + len(values) :]
+    change = (ahead - behind) / 2.0
+    change[unfed] = (4.0 * ahead[unfed] - behind[unfed] - 3.0 * family.c[0]) / 2.0
+    slopes = change / (NUDGE * sizes)[:, None]
+    parts = [slopes[: len(here)].T, family.slope()[:, None], slopes[len(here) :].T]
+    return np.concatenate(parts, axis=1)
+
+
+class _Family:
+    """A tube (row 0) and its neighbours, all on the mesh of the first."""
+
+    def __init__(self, structure: Structure, c: Floats, T: Floats, p: Floats, scale: float) -> None:
+        scales = np.full(c.shape, scale)
+        laws = Laws.of(structure, structure.edged, scales, T, p)
+        self.flow = Flow(laws, structure.coefficients)
+        self.tolerance = Tolerance.of(structure, laws, scales, RELATIVE)
+        self.c = c
+        one = np.zeros(1, dtype=np.intp)
+        self.stepper = Stepper(self.flow.at(one), c[:1], self.tolerance.at(one), MOST_STEPS)
+
+    def follow(self, tau: float) -> bool:
+        """Step until tau; False where the tube is given up."""
+        stepper = self.stepper
+        while stepper.active[0] and tau - stepper.t[0] > 1e-15 * tau:
+            stepper.h = np.minimum(stepper.h, tau - stepper.t)
+            for stride in stepper.attempt():
+                if len(stride.rows):
+                    h = np.full(len(self.c), stride.h[0])
+                    with np.errstate(all="ignore"):
+                        self.c, _, _ = METHODS[stride.method].step(self.flow, self.c, h, self.tolerance.least)
+        return bool(stepper.status[0] == Status.OK)
+
+    def slope(self) -> Floats:
+        """dc/dt of the tube itself, shape (S,)."""
+        return np.asarray(self.flow.slope(self.c)[0])
+
+
+def _scale(feed: Floats) -> Floats:
+    largest = feed.max(axis=1, initial=0.0)
+    return np.where(largest > 0, largest, 1.0)
+
+
+def _write(out: Floats, here: np.ndarray, answer: Floats) -> None:
+    """Puts answers by present species, shape (n, here, here + 2 + P), into all species, shape (n, S, S + 2 + P)."""
+    species = out.shape[1]
+    columns = np.concatenate([here, np.arange(species, out.shape[2])])
+    out[:, :, columns] = 0.0
+    out[np.ix_(np.arange(len(out)), here, columns)] = answer
