@@ -16,10 +16,11 @@
 #define ZERO_ORDER 1e-9
 #define SHARE_OF_DEPTH 0.1
 #define LOW 1e6
+#define SUMMED (16 * EPSILON) /* of the feed: rounding of the steps that a law of order zero takes from it */
 #define GENEROUS 4.0 /* misses of a shorter step that are taken */
 
 /* Error of a step, explicit and stiff; the sum of all stays below 1e-8. */
-static const double RELATIVE[2] = {1e-10, 1e-9};
+static const double RELATIVE[2] = {1e-9, 1e-8};
 
 typedef struct {
     desk *d;
@@ -197,7 +198,8 @@ static int check_point(run_state *u, double asked, double *c)
     int S = w->species, negative = 0, finite = 1, lost = 0;
     for (int k = 0; k < w->moving.n; k++) {
         int i = w->moving.species[k];
-        if (c[i] < LOW * d->depth_moving[k] && w->ends[i])
+        int rounding = w->starved[i] && c[i] < SUMMED * u->feed[i];
+        if ((c[i] < LOW * d->depth_moving[k] || rounding) && w->ends[i])
             c[i] = 0.0;
     }
     for (int i = 0; i < S; i++) {

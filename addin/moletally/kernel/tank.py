@@ -145,7 +145,7 @@ def _fed(structure: Structure, feed: Floats) -> Bools:
 
 def _judged(structure: Structure, cases: TankCases, answers: TankAnswers) -> TankAnswers:
     """Takes tanks whose doubles lost too many digits through 50 decimals, and checks them again."""
-    doubtful = ~(answers.error <= RELIABLE)
+    doubtful = ~(answers.error <= RELIABLE) | (answers.status == Status.RESIDUAL)
     if not doubtful.any():
         return answers
     for k in np.flatnonzero(doubtful & ~answers.faded).tolist():

@@ -23,7 +23,7 @@ __all__ = ["of_tanks", "of_tubes"]
 
 NUDGE = 1e-5  # relative difference between neighbours: rounding and curvature weigh about the same
 MOST_STEPS = 12000
-RELATIVE = (1e-10, 1e-9)
+RELATIVE = (1e-9, 1e-8)
 
 
 def of_tanks(structure: Structure, cases: TankCases, root: Floats) -> Floats:
