@@ -8,6 +8,7 @@
 #define DEPTH 1e-30
 #define ZERO_ORDER 1e-9
 #define LOW 1e6
+#define RELIABLE 1e-10 /* beyond which more digits are called for */
 #define BELIEVED 1e-8  /* estimated relative error beyond which an answer is withheld */
 #define CLOSED 1e-12   /* residual over the sum of a balance's terms */
 #define INVARIANT 1e-9 /* of the sum of a total's terms */
@@ -276,6 +277,14 @@ static void solve_one(job *j, int64_t row)
     store(j);
 }
 
+static int needs_second_look(const job *j)
+{
+    int used_up = 0;
+    for (int i = 0; i < j->d->net->species; i++)
+        used_up |= j->gone[i];
+    return j->out.status != MT_OK || j->out.faded || used_up || !(j->error <= RELIABLE);
+}
+
 int mt_solve_tanks(const mt_network *w, const mt_tanks *all)
 {
     desk d;
@@ -285,8 +294,11 @@ int mt_solve_tanks(const mt_network *w, const mt_tanks *all)
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;
     open_job(&j, &d, all);
-    for (int64_t row = 0; row < all->n; row++)
+    int doubtful = 0;
+    for (int64_t row = 0; row < all->n; row++) {
         solve_one(&j, row);
+        doubtful += needs_second_look(&j) && doubtful < INT32_MAX;
+    }
     desk_close(&d);
-    return MT_DONE;
+    return doubtful;
 }

@@ -65,11 +65,16 @@ class TankAnswers:
 
     @classmethod
     def empty(cls, n: int, species: int) -> "TankAnswers":
-        """Room for n answers."""
+        """Room for n answers, in three blocks: a single tank is solved faster than eleven arrays are made."""
+        wide = n * species
+        reals = np.empty(2 * wide + 3 * n)
+        counts = np.empty((3, n), dtype=np.int32)
+        marks = np.empty(wide + 2 * n, dtype=np.bool_)
+        rest = reals[2 * wide :]
         return cls(
-            np.empty((n, species)), np.empty(n, dtype=np.int32), np.empty(n, dtype=np.bool_),
-            np.empty(n, dtype=np.bool_), np.empty((n, species), dtype=np.bool_), np.empty(n), np.empty(n),
-            np.empty(n), np.empty((n, species)), np.empty(n, dtype=np.int32), np.empty(n, dtype=np.int32),
+            reals[:wide].reshape(n, species), counts[0], marks[wide : wide + n], marks[wide + n :],
+            marks[:wide].reshape(n, species), rest[:n], rest[n : 2 * n], rest[2 * n :],
+            reals[wide : 2 * wide].reshape(n, species), counts[1], counts[2],
         )  # fmt: skip
 
     def put(self, rows: Ints, part: "TankAnswers") -> None:

@@ -63,7 +63,7 @@ def solve_tanks(
     if start is not None:
         there = there | (start > 0)
     groups = list(structures(model, there, T, p))
-    if len(groups) == 1 and tau.min(initial=1.0) > 0:
+    if len(groups) == 1 and (tau[0] > 0 if len(tau) == 1 else tau.min() > 0):
         return _result(groups[0][0].unique, _group(model, groups[0][0], cases))
     n, species = feed.shape
     answers, unique = TankAnswers.empty(n, species), np.ones(n, dtype=np.bool_)
@@ -77,7 +77,7 @@ def solve_tanks(
 
 
 def _result(unique: bool | Bools, a: TankAnswers) -> TankResult:
-    proven = unique if isinstance(unique, np.ndarray) else np.full(len(a.status), unique)
+    proven = unique if isinstance(unique, np.ndarray) else np.array([unique] * len(a.status))
     return TankResult(
         a.c,
         a.status,
@@ -113,7 +113,10 @@ def _group(model: Model, structure: Structure, cases: TankCases) -> TankAnswers:
         return _failed(structure, cases, Status.UNBOUNDED_AT_ZERO)
     if cases.start is not None:
         cases = replace(cases, fed=_fed(structure, cases.feed))
-    answers = _judged(structure, cases, engine().tanks(structure, cases, How.FROM_FEED))
+    answers, look_again = engine().tanks(structure, cases, How.FROM_FEED)
+    if not look_again:
+        return answers
+    _judge(structure, cases, answers)
     if answers.exhausted.any():
         _again_without(structure, cases, answers)
     if answers.faded.any():
@@ -143,18 +146,16 @@ def _fed(structure: Structure, feed: Floats) -> Bools:
     return fed
 
 
-def _judged(structure: Structure, cases: TankCases, answers: TankAnswers) -> TankAnswers:
+def _judge(structure: Structure, cases: TankCases, answers: TankAnswers) -> None:
     """Takes tanks whose doubles lost too many digits through 50 decimals, and checks them again."""
     doubtful = ~(answers.error <= RELIABLE) | (answers.status == Status.RESIDUAL)
-    if not doubtful.any():
-        return answers
     for k in np.flatnonzero(doubtful & ~answers.faded).tolist():
         better = _in_decimals(structure, cases, k, answers.root[k])
         if better is not None:
             one = np.array([k])
             case = replace(_at(cases, one), c=better[None], scale=_pick(cases.scale, one))
-            answers.put(one, _kept(answers, k, engine().tanks(structure, case, How.CHECK_ONLY)))
-    return answers
+            checked, _ = engine().tanks(structure, case, How.CHECK_ONLY)
+            answers.put(one, _kept(answers, k, checked))
 
 
 def _kept(answers: TankAnswers, k: int, checked: TankAnswers) -> TankAnswers:
@@ -227,7 +228,8 @@ def _solve_without(
         feed, cases.tau[rows], cases.T[rows], cases.p[rows],
         scale=np.where(top > 0, top, 1.0), c=np.nan_to_num(answers.root[rows]),
     )  # fmt: skip
-    found = _judged(less, near, engine().tanks(less, near, How.FROM_GUESS))
+    found, _ = engine().tanks(less, near, How.FROM_GUESS)
+    _judge(less, near, found)
     good = (found.status == Status.OK) & ~(gone & (found.c != 0)).any(axis=1)
     answers.exhausted[rows[good]] |= found.exhausted[good]
     for name in ("c", "status", "residual", "condition", "root"):
