@@ -277,6 +277,12 @@ static void solve_one(job *j, int64_t row)
     store(j);
 }
 
+static int is_complete(const network *w, const mt_tanks *a)
+{
+    return a->feed && a->tau && a->T && (a->p || !w->laws.parameters) && a->c && a->status && a->from_start &&
+           a->faded && a->exhausted && a->residual && a->condition && a->error && a->root && a->iterations && a->work;
+}
+
 static int needs_second_look(const job *j)
 {
     int used_up = 0;
@@ -289,7 +295,7 @@ int mt_solve_tanks(const mt_network *w, const mt_tanks *all)
 {
     desk d;
     job j;
-    if (!w || !all || all->n < 0)
+    if (!w || !all || all->n < 0 || !is_complete(w, all))
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;

@@ -289,7 +289,8 @@ int mt_solve_tubes(const mt_network *w, const mt_tubes *all)
 {
     desk d;
     run_state u;
-    if (!w || !all || all->n < 0 || all->m < 0)
+    if (!w || !all || all->n < 0 || all->m < 0 || !all->feed || !all->asked || !all->T ||
+        (!all->p && w->laws.parameters) || !all->c || !all->status || !all->exhausted_at || !all->steps || !all->work)
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;

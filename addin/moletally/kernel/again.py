@@ -51,7 +51,7 @@ class TankAgain:
             self._prepare()
         if self._bounded and self.tau[0] > 0 and not self._again():
             return 0
-        return self._whole()
+        return self._whole() if self._how is How.FROM_FEED else int(self.status[0])
 
     def _prepare(self) -> None:
         """What runs in the tank may change with the numbers."""

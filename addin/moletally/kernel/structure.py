@@ -29,7 +29,7 @@ KEPT = 2000  # structures; a workbook has tens
 Ints = NDArray[np.intp]
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Structure:
     """A model cut down to what can happen in a vessel with one kind of feed.
 
@@ -76,7 +76,9 @@ class Structure:
     def edged(self) -> Ints:
         """Positions in `present` of species whose laws have no finite slope at zero, or must be cut there."""
         steep = (self.order < 1 - ZERO_ORDER) & ~((np.abs(self.order) < ZERO_ORDER) & (self.nu >= 0))
-        return np.union1d(np.flatnonzero(steep.any(axis=0)), self.undefined)
+        edged = np.asarray(steep.any(axis=0))
+        edged[self.undefined] = True
+        return np.flatnonzero(edged)
 
     @cached_property
     def runaway(self) -> NDArray[np.bool_]:

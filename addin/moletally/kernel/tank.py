@@ -1,7 +1,8 @@
 """Stirred tanks: 0 = feed - c + tau nu^T r(c), the state that a start-up reaches."""
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,7 +11,6 @@ from moletally.kernel.cases import How, Ints, TankAnswers, TankCases
 from moletally.kernel.engine import engine
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
-from moletally.kernel.refine import refine
 from moletally.kernel.status import Status
 from moletally.kernel.structure import ZERO_ORDER, Structure, structures
 
@@ -22,8 +22,7 @@ NEAR_ZERO = 1e-50  # of the largest concentration: where laws of order zero are 
 Bools = NDArray[np.bool_]
 
 
-@dataclass(frozen=True, eq=False, slots=True)
-class TankResult:
+class TankResult(NamedTuple):
     """The answer to N tanks.
 
     c : ndarray, shape (N, S) - outlets [mol/m3]; nan where the case failed
@@ -112,7 +111,7 @@ def _group(model: Model, structure: Structure, cases: TankCases) -> TankAnswers:
     if structure.unbounded:
         return _failed(structure, cases, Status.UNBOUNDED_AT_ZERO)
     if cases.start is not None:
-        cases = replace(cases, fed=_fed(structure, cases.feed))
+        cases = cases._replace(fed=_fed(structure, cases.feed))
     answers, look_again = engine().tanks(structure, cases, How.FROM_FEED)
     if not look_again:
         return answers
@@ -123,7 +122,7 @@ def _group(model: Model, structure: Structure, cases: TankCases) -> TankAnswers:
         # What was there at the start only was washed out before it could take hold: the feed alone is left.
         rows = np.flatnonzero(answers.faded)
         part = solve_tanks(model, cases.feed[rows], cases.tau[rows], cases.T[rows], cases.p[rows])
-        for name in set(TankAnswers.__slots__) & set(TankResult.__slots__):
+        for name in set(TankAnswers._fields) & set(TankResult._fields):
             getattr(answers, name)[rows] = getattr(part, name)
         answers.from_start[rows] = part.from_transient
     return answers
@@ -153,7 +152,7 @@ def _judge(structure: Structure, cases: TankCases, answers: TankAnswers) -> None
         better = _in_decimals(structure, cases, k, answers.root[k])
         if better is not None:
             one = np.array([k])
-            case = replace(_at(cases, one), c=better[None], scale=_pick(cases.scale, one))
+            case = _at(cases, one)._replace(c=better[None], scale=_pick(cases.scale, one))
             checked, _ = engine().tanks(structure, case, How.CHECK_ONLY)
             answers.put(one, _kept(answers, k, checked))
 
@@ -161,8 +160,7 @@ def _judge(structure: Structure, cases: TankCases, answers: TankAnswers) -> None
 def _kept(answers: TankAnswers, k: int, checked: TankAnswers) -> TankAnswers:
     """A checked answer with the history of the one it replaces."""
     one = slice(k, k + 1)
-    return replace(
-        checked,
+    return checked._replace(
         from_start=answers.from_start[one],
         iterations=answers.iterations[one],
         work=answers.work[one],
@@ -178,6 +176,8 @@ def _in_decimals(structure: Structure, cases: TankCases, k: int, root: Floats) -
     c, feed = root[here], cases.feed[k][here]
     if (c[structure.starved] < NEAR_ZERO * max(cases.feed[k].max(), root.max())).any() or not (c > 0).all():
         return None
+    from moletally.kernel.refine import refine  # decimals are slow to load and rarely called for
+
     better = refine(structure.tape, structure.nu, c, feed, float(cases.tau[k]), float(cases.T[k]), cases.p[k])
     if better is None:
         return None

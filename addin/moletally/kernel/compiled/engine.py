@@ -3,10 +3,9 @@
 import ctypes
 import os
 from collections.abc import Callable
-from concurrent.futures import ThreadPoolExecutor
 from functools import cache
 from itertools import pairwise
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +16,9 @@ from moletally.kernel.compiled.network import Network, network_of, network_of_pr
 from moletally.kernel.program import Program
 from moletally.kernel.rates import Floats
 from moletally.kernel.structure import Structure
+
+if TYPE_CHECKING:
+    from concurrent.futures import ThreadPoolExecutor
 
 __all__ = ["CompiledEngine"]
 
@@ -72,7 +74,7 @@ class CompiledEngine:
         out = TubeAnswers.empty(n, points, feed.shape[1])
         rows = {
             "feed": _floats(feed), "asked": _floats(asked), "T": _floats(T), "p": _floats(p),
-            **{name: getattr(out, name) for name in TubeAnswers.__slots__},
+            **{name: getattr(out, name) for name in TubeAnswers._fields},
         }  # fmt: skip
         _in_pieces(self._library.mt_solve_tubes, network_of(structure), Tubes(m=points), rows, n, FEW_TUBES)
         return out
@@ -130,7 +132,7 @@ def _tank_rows(cases: TankCases, out: TankAnswers) -> dict[str, Array | None]:
         "start": None if cases.start is None else _floats(cases.start),
         "fed": None if cases.fed is None else np.ascontiguousarray(cases.fed),
         "scale": None if cases.scale is None else _floats(cases.scale),
-        **{name: getattr(out, name) for name in TankAnswers.__slots__},
+        **{name: getattr(out, name) for name in TankAnswers._fields},
     }  # fmt: skip
 
 
@@ -145,7 +147,9 @@ def _check(code: int) -> int:
 
 
 @cache
-def _threads() -> ThreadPoolExecutor:
+def _threads() -> "ThreadPoolExecutor":
+    from concurrent.futures import ThreadPoolExecutor  # slow to load, and a single cell has no use for it
+
     return ThreadPoolExecutor(_cores(), thread_name_prefix="moletally")
 
 

@@ -1,7 +1,6 @@
 """The reference engine behind the common face."""
 
 from collections.abc import Callable
-from dataclasses import replace
 
 import numpy as np
 
@@ -29,7 +28,7 @@ class ReferenceEngine:
         """Solves one tank anew at each call."""
 
         def again() -> bool:
-            given = replace(cases, c=out.c.copy())
+            given = cases._replace(c=out.c.copy())
             out.put(np.zeros(1, dtype=np.intp), tank.solve(structure, given, how))
             return True
 

@@ -183,8 +183,8 @@ class _Run:
         laws = self.flow.laws.at(np.repeat(np.arange(n), points))
         r = laws.strict(np.maximum(c, 0.0).reshape(-1, species))
         inlet = self.flow.laws.strict(self.feed[:, self.structure.present])
-        undefined = ~np.isfinite(r).all(axis=1).reshape(n, points)
-        return undefined | ~np.isfinite(inlet).all(axis=1)[:, None]
+        undefined = np.asarray(~np.isfinite(r).all(axis=1)).reshape(n, points)
+        return undefined | np.asarray(~np.isfinite(inlet).all(axis=1))[:, None]
 
 
 def _creep(flow: Flow, c: Floats, h: float, tolerance: Tolerance) -> Floats:
