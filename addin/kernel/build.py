@@ -72,7 +72,9 @@ TARGETS = {
     "macos-x64": Target("x86_64-macos.11.0", "_kernel.dylib", "macosx_11_0_x86_64"),
     "macos-arm64": Target("aarch64-macos.11.0", "_kernel.dylib", "macosx_11_0_arm64"),
     "linux-x64": Target("x86_64-linux-gnu.2.17", "_kernel.so", "manylinux_2_17_x86_64.manylinux2014_x86_64"),
-    "linux-arm64": Target("aarch64-linux-gnu.2.17", "_kernel.so", "manylinux_2_17_aarch64.manylinux2014_aarch64"),
+    "linux-arm64": Target(
+        "aarch64-linux-gnu.2.17", "_kernel.so", "manylinux_2_17_aarch64.manylinux2014_aarch64"
+    ),
 }
 
 
@@ -223,7 +225,9 @@ def build(target: str | None = None, out: Path = BINDING) -> tuple[Path, Compile
     digest = _digest(target)  # before compiling: sources that change meanwhile are compiled again
     if (compiler := find_compiler(target)) is None:
         names = "" if target else "no C compiler works here (tried $CC, cc, gcc, clang), and "
-        raise NoCompiler(f"{names}the package ziglang is not installed: pip install ziglang, then build again")
+        raise NoCompiler(
+            f"{names}the package ziglang is not installed: pip install ziglang, then build again"
+        )
     with tempfile.TemporaryDirectory() as scratch:
         made = Path(scratch, library.name)
         compiler.compile(_sources(), made)
@@ -255,7 +259,9 @@ def main() -> None:
     )
     parser.add_argument("--target", choices=TARGETS, help="platform to compile for, default this machine")
     parser.add_argument("--out", type=Path, default=BINDING, help="folder to write into")
-    parser.add_argument("--check", action="store_true", help="say whether the library is current; build nothing")
+    parser.add_argument(
+        "--check", action="store_true", help="say whether the library is current; build nothing"
+    )
     options = parser.parse_args()
     if options.check:
         if not is_current(options.target, options.out):

@@ -35,11 +35,9 @@ class KernelHook(BuildHookInterface[BuilderConfig]):
     def dependencies(self) -> list[str]:
         """Ziglang, only where the machine has no compiler of its own or compiles for another platform."""
         choice = _choice()
-        if choice is None:
-            needed = find_compiler() is None and _ziglang_is_made_for_this_machine()
-        else:
-            needed = choice != "none"
-        return [self.config["ziglang"]] if needed else []
+        elsewhere = choice in TARGETS
+        here_only = choice is None and find_compiler() is None and _ziglang_is_made_for_this_machine()
+        return [self.config["ziglang"]] if elsewhere or here_only else []
 
     def initialize(self, version: str, build_data: dict[str, Any]) -> None:
         """Compile, and put the library into the wheel or, for an editable install, beside the binding."""
@@ -49,7 +47,9 @@ class KernelHook(BuildHookInterface[BuilderConfig]):
             self._go_without(f"{CHOICE} is none", editable)
             return
         if not editable:
-            self._scratch = tempfile.TemporaryDirectory()  # a wheel for elsewhere leaves nothing in the sources
+            self._scratch = (
+                tempfile.TemporaryDirectory()
+            )  # a wheel for elsewhere leaves nothing in the sources
         out = Path(self._scratch.name) if self._scratch else BINDING
         try:
             library, compiler = build(choice, out)
