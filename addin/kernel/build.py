@@ -26,7 +26,7 @@ from pathlib import Path
 
 __all__ = [
     "BINDING", "TARGETS", "CannotBuild", "Compiler", "NoCompiler", "Target", "build", "discard", "find_compiler",
-    "is_current",
+    "is_current", "library_name", "this_target",
 ]  # fmt: skip
 
 HERE = Path(__file__).parent
@@ -36,6 +36,8 @@ BINDING = HERE.parent / "moletally" / "kernel" / "compiled"
 # two operations round twice), no fast-math, no -march=native, and CFLAGS is not read: some environments set
 # it to all of these.
 FLAGS = ("-std=c99", "-O3", "-fPIC", "-shared", "-fvisibility=hidden", "-fno-math-errno", "-ffp-contract=off")
+# else the library is named after the folder that it was made in
+MACOS_NAME = "-Wl,-install_name,@rpath/_kernel.dylib"
 SYSTEM_NAMES = ("cc", "gcc", "clang")  # not cl: its flags are others, and Windows without gcc has ziglang
 PROBE = """\
 #include <math.h>
@@ -80,10 +82,14 @@ TARGETS = {
 
 @dataclass(frozen=True, slots=True)
 class Compiler:
-    """A command that compiles C, with the flags that only it needs."""
+    """A command that compiles C, with the flags that only it needs.
+
+    leaves_nothing : whether what it keeps for a next time is removed; ziglang keeps 60 MB in the user's folder
+    """
 
     command: tuple[str, ...]
     flags: tuple[str, ...]
+    leaves_nothing: bool = False
 
     def __str__(self) -> str:
         return "ziglang" if "ziglang" in self.command else " ".join(self.command)
@@ -91,10 +97,14 @@ class Compiler:
     def compile(self, files: list[Path], library: Path) -> None:
         """Make the library; CannotBuild with the compiler's own words where it refuses."""
         command = [*self.command, *FLAGS, *self.flags, *map(str, files), "-lm", "-o", str(library)]
-        try:
-            run = subprocess.run(command, capture_output=True, text=True, errors="replace", check=False)
-        except OSError as error:
-            raise CannotBuild(f"{self} can't be started: {error}") from error
+        with tempfile.TemporaryDirectory(ignore_cleanup_errors=True) as kept:
+            env = os.environ | ({"ZIG_GLOBAL_CACHE_DIR": kept} if self.leaves_nothing else {})
+            try:
+                run = subprocess.run(
+                    command, capture_output=True, text=True, errors="replace", check=False, env=env
+                )
+            except OSError as error:
+                raise CannotBuild(f"{self} can't be started: {error}") from error
         if run.returncode or not library.exists():
             raise CannotBuild(f"{self} refused the C sources:\n{run.stderr or run.stdout}")
 
@@ -104,8 +114,9 @@ def find_compiler(target: str | None = None) -> Compiler | None:
 
     target : a key of TARGETS; None is this machine, whose own compilers are then tried first
 
-    A compiler works if it makes a library that this Python can load. Its name on the PATH is not enough: there
-    are compilers without headers, without a linker, or for another width of pointers than this Python's.
+    A system's compiler works if it makes a library that this Python can load. Its name on the PATH is not
+    enough: there are compilers without headers, without a linker, or for another width of pointers than this
+    Python's. ziglang brings all that along; to try it would double the half minute that it needs on Windows.
     """
     if target is None:
         own = (_system(command) for command in _system_commands())
@@ -113,8 +124,7 @@ def find_compiler(target: str | None = None) -> Compiler | None:
             return found
     if importlib.util.find_spec("ziglang") is None:
         return None
-    zig = _zig(target or _this_target())
-    return zig if target or _works(zig) else None
+    return _zig(target)
 
 
 def _system_commands() -> list[tuple[str, ...]]:
@@ -129,17 +139,20 @@ def _system_commands() -> list[tuple[str, ...]]:
 def _system(command: tuple[str, ...]) -> Compiler:
     if sys.platform == "darwin":
         oldest = f"-mmacosx-version-min={os.environ.get('MACOSX_DEPLOYMENT_TARGET', '11.0')}"
-        return Compiler(command, ("-arch", platform.machine(), oldest, "-Wl,-x"))
+        return Compiler(command, ("-arch", platform.machine(), oldest, MACOS_NAME, "-Wl,-x"))
     return Compiler(command, ("-s", "-static-libgcc") if sys.platform == "win32" else ("-s",))
 
 
 def _zig(target: str | None) -> Compiler:
+    named = target or this_target()
     # without a target zig compiles for this very processor, as -march=native would
-    where = ("-target", TARGETS[target].zig) if target else ("-mcpu=baseline",)
-    return Compiler((sys.executable, "-m", "ziglang", "cc"), (*where, "-s"))
+    flags = ("-target", TARGETS[named].zig, "-s") if named else ("-mcpu=baseline", "-s")
+    if named and named.startswith("macos"):
+        flags = (*flags, MACOS_NAME)
+    return Compiler((sys.executable, "-m", "ziglang", "cc"), flags, leaves_nothing=target is None)
 
 
-def _this_target() -> str | None:
+def this_target() -> str | None:
     """The key of TARGETS that is this machine, if any."""
     system = {"win32": "windows", "darwin": "macos", "linux": "linux"}.get(sys.platform)
     processor = {"amd64": "x64", "x86_64": "x64", "arm64": "arm64", "aarch64": "arm64"}.get(
@@ -168,8 +181,9 @@ def _suffix() -> str:
     return {"win32": ".dll", "darwin": ".dylib"}.get(sys.platform, ".so")
 
 
-def _place(target: str | None, out: Path) -> Path:
-    return out / (TARGETS[target].library if target else f"_kernel{_suffix()}")
+def library_name(target: str | None = None) -> str:
+    """Name of the library file; target: a key of TARGETS, None for this machine."""
+    return TARGETS[target].library if target else f"_kernel{_suffix()}"
 
 
 def _stamp(library: Path) -> Path:
@@ -198,14 +212,14 @@ def _digest(target: str | None) -> str:
 
 def is_current(target: str | None = None, out: Path = BINDING) -> bool:
     """Whether the library in `out` is there and was made from the sources as they are now."""
-    library = _place(target, out)
+    library = out / library_name(target)
     stamp = _stamp(library)
     return library.exists() and stamp.exists() and stamp.read_text(encoding="utf-8") == _digest(target)
 
 
 def discard(target: str | None = None, out: Path = BINDING) -> None:
     """Remove a library: one of other sources must not be loaded in place of one that can't be made."""
-    library = _place(target, out)
+    library = out / library_name(target)
     for path in (_stamp(library), library):
         path.unlink(missing_ok=True)
 
@@ -219,7 +233,7 @@ def build(target: str | None = None, out: Path = BINDING) -> tuple[Path, Compile
     Returns the library and the compiler, None where nothing had to be compiled. Raises NoCompiler, or
     CannotBuild where the compiler refuses or the library can't be written.
     """
-    library = _place(target, out)
+    library = out / library_name(target)
     if is_current(target, out):
         return library, None
     digest = _digest(target)  # before compiling: sources that change meanwhile are compiled again

@@ -16,6 +16,11 @@ ELF_MACHINES = {62: "x64", 183: "arm64"}
 PE_MACHINES = {0x8664: "x64", 0xAA64: "arm64"}
 MACHO_MACHINES = {0x01000007: "x64", 0x0100000C: "arm64"}
 
+# section types
+DYNAMIC, DYNAMIC_SYMBOLS, VERSIONS_NEEDED = 6, 11, 0x6FFFFFFE
+# load commands
+SYMBOLS, LOADS, LOADS_IF_THERE, SIGNATURE, BUILD_VERSION = 0x2, 0xC, 0x80000018, 0x1D, 0x32
+
 
 @dataclass(frozen=True, slots=True)
 class Library:
@@ -54,9 +59,6 @@ def _version(text: str) -> tuple[int, ...]:
     return tuple(int(part) for part in text.split("."))
 
 
-# ELF
-
-
 def _elf(data: bytes) -> Library:
     (machine,) = struct.unpack_from("<H", data, 18)
     (sections_at,) = struct.unpack_from("<Q", data, 40)
@@ -69,13 +71,13 @@ def _elf(data: bytes) -> Library:
     needs: list[tuple[int, ...]] = [(0,)]
     for _, kind, _, _, at, length, link, info, _, entry in sections:
         names = strings[link]
-        if kind == 6:  # dynamic: pairs of tag and value; 1 is a needed library
+        if kind == DYNAMIC:  # pairs of tag and value; tag 1 is a needed library
             pairs = struct.iter_unpack("<qQ", data[at : at + length])
             imports |= {_text(data, names + value) for tag, value in pairs if tag == 1}
-        elif kind == 11:  # dynamic symbols: name, info, other, section (0: imported), value, size
+        elif kind == DYNAMIC_SYMBOLS:  # name, info, other, section (0: imported), value, size
             symbols = struct.iter_unpack("<IBBHQQ", data[at : at + length // entry * entry])
             exports |= {_text(data, names + s[0]) for s in symbols if s[3] and s[1] >> 4}
-        elif kind == 0x6FFFFFFE:  # versions needed of other libraries
+        elif kind == VERSIONS_NEEDED:
             found = (name for name in _elf_versions(data, at, names, info) if name.startswith("GLIBC_"))
             needs += [_version(name.removeprefix("GLIBC_")) for name in found]
     where = f"linux-{ELF_MACHINES.get(machine, machine)}"
@@ -91,9 +93,6 @@ def _elf_versions(data: bytes, at: int, names: int, files: int) -> Iterator[str]
             yield _text(data, names + name)
             entry += onward
         at += following
-
-
-# PE
 
 
 def _pe(data: bytes) -> Library:
@@ -129,9 +128,6 @@ def _pe(data: bytes) -> Library:
     return Library(f"windows-{PE_MACHINES.get(machine, machine)}", frozenset(imports), frozenset(exports))
 
 
-# Mach-O
-
-
 def _macho(data: bytes) -> Library:
     machine, _, _, count = struct.unpack_from("<IIII", data, 4)
     imports: set[str] = set()
@@ -141,16 +137,13 @@ def _macho(data: bytes) -> Library:
     command = 32  # after the header
     for _ in range(count):
         kind, size, first, second = struct.unpack_from("<IIII", data, command)
-        if kind in (
-            0xC,
-            0x80000018,
-        ):  # loads a library, perhaps one that may be missing; first: where its name is
+        if kind in (LOADS, LOADS_IF_THERE):  # first: where the name is
             imports.add(_text(data, command + first))
-        elif kind == 0x32:  # build version; second: the oldest system, as 16, 8 and 8 bits
+        elif kind == BUILD_VERSION:  # second: the oldest system, as 16, 8 and 8 bits
             needs = (second >> 16, second >> 8 & 0xFF)
-        elif kind == 0x1D:
+        elif kind == SIGNATURE:
             signed = True
-        elif kind == 0x2:  # symbol table; first, second: where it is, how many
+        elif kind == SYMBOLS:  # first, second: where it is, how many
             (strings,) = struct.unpack_from("<I", data, command + 16)
             exports |= set(_macho_exports(data, first, second, strings))
         command += size

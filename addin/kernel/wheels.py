@@ -4,8 +4,8 @@
     uv run python addin/kernel/wheels.py windows-x64 --out FOLDER
 
 Every wheel is looked into before it is kept: tag, library, processor, what the library loads and offers. The
-compiler for other platforms is the package `ziglang` (100 MB), which the build fetches in the version that
-pyproject.toml names.
+compiler for other platforms is the package `ziglang` (100 MB), in the version that pyproject.toml names: uv
+fetches it once and keeps it.
 """
 
 import argparse
@@ -13,8 +13,8 @@ import os
 import re
 import shutil
 import subprocess
-import sys
 import tempfile
+import tomllib
 import zipfile
 from pathlib import Path
 
@@ -37,30 +37,27 @@ NEEDS_AT_MOST = {"windows": (), "macos": (11, 0), "linux": (2, 17)}
 
 
 class BadWheel(Exception):
-    """A wheel is not what its name says; the text is the list of what is wrong."""
+    """A wheel can't be built or is not what its name says; the text is the list of what is wrong."""
 
 
 def build_wheel(name: str, out: Path, project: Path = ROOT) -> Path:
     """Build the wheel for the target `name` into `out`; returns its path.
 
-    The frontend is uv where there is one, else pip: both fetch what the build asks for.
+    By hatchling as a tool and not by `uv build`, whose folder has another name each time: what zig keeps of the
+    Windows C library, half a minute's work, counts for one place of zig only.
     """
+    with open(project / "pyproject.toml", "rb") as file:
+        settings = tomllib.load(file)
+    (hatchling,) = settings["build-system"]["requires"]
+    ziglang = settings["tool"]["hatch"]["build"]["targets"]["wheel"]["hooks"]["custom"]["ziglang"]
+    tool = ["uv", "tool", "run", "--quiet", "--from", hatchling, "--with", ziglang, "hatchling"]
     with tempfile.TemporaryDirectory() as scratch:
-        if uv := shutil.which("uv"):
-            command = [uv, "build", "--quiet", "--wheel", "--out-dir", scratch, str(project)]
-        else:
-            command = [
-                sys.executable,
-                "-m",
-                "pip",
-                "wheel",
-                "--quiet",
-                "--no-deps",
-                "-w",
-                scratch,
-                str(project),
-            ]
-        subprocess.run(command, check=True, env={**os.environ, "MOLETALLY_KERNEL": name})
+        run = subprocess.run(
+            [*tool, "build", "--target", "wheel", "--directory", scratch],
+            cwd=project, env={**os.environ, "MOLETALLY_KERNEL": name}, capture_output=True, text=True, check=False,
+        )  # fmt: skip
+        if run.returncode:
+            raise BadWheel(f"the wheel for {name} was not built:\n{run.stderr}")
         (made,) = Path(scratch).glob("*.whl")
         out.mkdir(parents=True, exist_ok=True)
         return Path(shutil.move(made, out / made.name))
@@ -124,11 +121,9 @@ def main() -> None:
     if unknown := set(options.names) - set(TARGETS):
         parser.error(f"unknown: {', '.join(sorted(unknown))}; known are {', '.join(TARGETS)}")
     for name in options.names or TARGETS:
-        wheel = build_wheel(name, options.out)
         try:
-            library = examine(wheel, name)
+            library = examine(wheel := build_wheel(name, options.out), name)
         except BadWheel as error:
-            wheel.unlink()
             raise SystemExit(str(error)) from error
         needs = ".".join(map(str, library.needs)) or "-"
         print(
