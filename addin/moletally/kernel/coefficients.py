@@ -32,7 +32,8 @@ class Coefficients(NamedTuple):
         owners = owner.tolist()
         names = sorted(set(owners))  # np.unique would import numpy.ma, half as slow as numpy itself
         net = np.zeros((len(nu), len(names)))
-        net[np.arange(len(nu)), [names.index(name) for name in owners]] = sign
+        for term, name in enumerate(owners):
+            net[term, names.index(name)] = sign[term]
         first = [owners.index(name) for name in names]
         return cls(nu, net, nu[first] * sign[first, None])
 

@@ -148,7 +148,7 @@ def pack_structure(structure: Structure) -> Packed:
     )
     model = structure.terms.model
     coefficients = structure.coefficients
-    owner = (coefficients.net != 0).argmax(axis=1).tolist()
+    owner = [int(np.flatnonzero(row)[0]) for row in coefficients.net]
     sign = structure.terms.sign[structure.firing]
     entries = [sorted({*read, *cuts[0].species(t), *cuts[1].species(t)}) for t, read in enumerate(laws.reads)]
     totals = structure.conserved[:, structure.present]
