@@ -249,7 +249,13 @@ static void check(run_state *u)
         int32_t *status = a->status + u->row * a->m + m;
         for (int i = 0; i < w->species; i++)
             u->point[i] = c[w->present[i]];
-        *status = *status < 0 ? stopped(u) : asked > 0 ? check_point(u, asked, u->point) : MT_OK;
+        *status = *status < 0  ? stopped(u)
+                  : asked > 0  ? check_point(u, asked, u->point)
+                  : asked == 0 ? MT_OK
+                               : MT_NOT_FINITE; /* no residence time: less than none, or no number */
+        for (int i = 0; i < w->all && *status == MT_OK; i++)
+            if (!isfinite(c[i]))
+                *status = MT_NOT_FINITE;
         for (int i = 0; i < w->all && *status != MT_OK; i++)
             c[i] = NAN;
         if (*status == MT_OK)
