@@ -148,7 +148,8 @@ def pack_structure(structure: Structure) -> Packed:
     )
     model = structure.terms.model
     coefficients = structure.coefficients
-    owner = (coefficients.net != 0).argmax(axis=1).tolist()
+    net = coefficients.net != 0
+    owner = net.argmax(axis=1).tolist() if len(net) else []  # no term runs: nothing to look through
     sign = structure.terms.sign[structure.firing]
     entries = [sorted({*read, *cuts[0].species(t), *cuts[1].species(t)}) for t, read in enumerate(laws.reads)]
     totals = structure.conserved[:, structure.present]
