@@ -56,6 +56,7 @@ typedef struct {
     int32_t *order;               /* (n) pivots */
     int32_t *lower_start, *lower; /* (n + 1) by pivot in order; rows below it */
     int32_t *upper_start, *upper; /* (n + 1) by pivot in order; columns right of it */
+    int32_t *lower_column, *upper_row;
     int32_t *lower_at, *upper_at; /* their places in the matrix */
     int32_t *row_start, *column;  /* (n + 1) the pattern itself */
     int32_t *memory;

@@ -119,9 +119,9 @@ static void list_factors(elimination *p, const uint8_t *mark, const int32_t *ran
         p->lower_start[step] = low, p->upper_start[step] = up;
         for (int i = 0; i < S; i++) {
             if (rank[i] > step && mark[(size_t)i * S + k])
-                p->lower_at[low] = i * S + k, p->lower[low++] = i;
+                p->lower_at[low] = i * S + k, p->lower_column[low] = k, p->lower[low++] = i;
             if (rank[i] > step && mark[(size_t)k * S + i])
-                p->upper_at[up] = k * S + i, p->upper[up++] = i;
+                p->upper_at[up] = k * S + i, p->upper_row[up] = k, p->upper[up++] = i;
         }
     }
     p->lower_start[S] = low, p->upper_start[S] = up;
@@ -146,7 +146,7 @@ int plan_elimination(elimination *p, const network *w)
             int64_t length = write_program(mark, order, rank, S, NULL);
             int with_fill = count(mark, (int64_t)places);
             p->memory = length > INT32_MAX ? NULL
-                                           : malloc(((size_t)length + 4 * (size_t)S + 3 + 4 * (size_t)with_fill +
+                                           : malloc(((size_t)length + 4 * (size_t)S + 3 + 6 * (size_t)with_fill +
                                                      (size_t)filled) * sizeof *p->memory);
             if (p->memory) {
                 p->length = (int)length;
@@ -159,7 +159,9 @@ int plan_elimination(elimination *p, const network *w)
                 p->upper = p->lower + with_fill;
                 p->lower_at = p->upper + with_fill;
                 p->upper_at = p->lower_at + with_fill;
-                p->column = p->upper_at + with_fill;
+                p->lower_column = p->upper_at + with_fill;
+                p->upper_row = p->lower_column + with_fill;
+                p->column = p->upper_row + with_fill;
                 memcpy(p->order, order, (size_t)S * sizeof *order);
                 write_program(mark, order, rank, S, p->program);
                 list_factors(p, mark, rank);
@@ -199,33 +201,28 @@ static void eliminate(const elimination *p, double *m, double *diagonal)
     }
 }
 
-/* Lines the factors up in the order in which substitution reads them. */
+/* Lines the factors up in the order in which substitution reads them, rows of the upper one over their pivots. */
 static void pack(desk *d)
 {
     const elimination *p = &d->net->plan;
     for (int e = 0; e < p->lower_start[p->n]; e++)
         d->lower[e] = d->factors[p->lower_at[e]];
     for (int e = 0; e < p->upper_start[p->n]; e++)
-        d->upper[e] = d->factors[p->upper_at[e]];
+        d->upper[e] = d->factors[p->upper_at[e]] * d->diagonal[p->upper_row[e]];
 }
 
+/* One flat loop each way: nested loops of two or three rounds are mostly mispredicted branches. */
 static void solve_sparse(const desk *d, double *restrict b)
 {
     const elimination *p = &d->net->plan;
-    const double *restrict lower = d->lower, *restrict upper = d->upper;
-    int S = p->n;
-    for (int step = 0, e = 0; step < S; step++) {
-        double x = b[p->order[step]];
-        for (; e < p->lower_start[step + 1]; e++)
-            b[p->lower[e]] -= lower[e] * x;
-    }
-    for (int step = S - 1; step >= 0; step--) {
-        int k = p->order[step];
-        double x = b[k];
-        for (int e = p->upper_start[step]; e < p->upper_start[step + 1]; e++)
-            x -= upper[e] * b[p->upper[e]];
-        b[k] = x * d->diagonal[k];
-    }
+    const double *restrict lower = d->lower, *restrict upper = d->upper, *restrict diagonal = d->diagonal;
+    int S = p->n, n_lower = p->lower_start[S], n_upper = p->upper_start[S];
+    for (int e = 0; e < n_lower; e++)
+        b[p->lower[e]] -= lower[e] * b[p->lower_column[e]];
+    for (int i = 0; i < S; i++)
+        b[i] *= diagonal[i];
+    for (int e = 0; e < n_upper; e++)
+        b[p->upper_row[n_upper - 1 - e]] -= upper[n_upper - 1 - e] * b[p->upper[n_upper - 1 - e]];
 }
 
 /* Rows and columns scaled (unknowns relative to `size`, rows to their largest entry), rows exchanged. */

@@ -68,6 +68,32 @@ static const int32_t *starts(reader *in, int rows, int64_t total_known, int *tot
     return s;
 }
 
+/* Reverse mode passes on only what has arrived: every edge starts at a register that the term's own result or an
+ * edge before it has reached, `first` says truly whether it is the first to reach its end, and derivatives are
+ * read where something has arrived. Else a term would be handed what another one, or nobody, has left there. */
+static void check_paths(reader *in, const program *q)
+{
+    int32_t *reached = in->bad ? NULL : calloc((size_t)q->registers, sizeof *reached); /* by which term, from 1 */
+    if (!reached) {
+        in->bad = 1;
+        return;
+    }
+    for (int t = 0; t < q->terms; t++) {
+        int32_t mark = t + 1;
+        reached[q->output[t]] = mark;
+        for (int k = q->path_start[t]; k < q->path_start[t + 1]; k++) {
+            const edge *e = q->path + k;
+            if (reached[e->target] != mark || e->first != (reached[e->source] != mark))
+                in->bad = 1;
+            reached[e->source] = mark;
+        }
+        for (int k = q->entry_start[t]; k < q->entry_start[t + 1]; k++)
+            if (q->entry_read[k] && reached[q->entry_leaf[k]] != mark)
+                in->bad = 1;
+    }
+    free(reached);
+}
+
 static void read_program(reader *in, program *q)
 {
     int first_result = q->leaves + 1 + q->parameters + q->literals, count = q->prelude + q->body, total;
@@ -92,6 +118,7 @@ static void read_program(reader *in, program *q)
     q->entry_leaf = ints(in, total, 0, q->leaves - 1, NULL);
     q->entry_read = ints(in, total, 0, 1, NULL);
     q->literal = reals(in, q->literals);
+    check_paths(in, q);
 }
 
 static void read_cut(reader *in, const network *w, cut *c)
@@ -195,6 +222,8 @@ static int read_network(reader *in, network *w)
     if (w->all > MOST_SPECIES || w->species > w->all || w->absent > w->all)
         return 0;
     w->unique = h[9], w->n_totals = h[10], w->has_whole = h[11], w->absent = h[12];
+    if (w->n_totals > w->all) /* a basis of totals has no more; a desk has room for their square */
+        return 0;
     w->present = ints(in, w->species, 0, w->all - 1, NULL);
     read_program(in, q);
     int entries = in->bad ? 0 : q->entry_start[q->terms], total;

@@ -227,11 +227,16 @@ static void tank_slopes(desk *d, tangents *x, const mt_slopes *all, int64_t row,
     d->next = keep;
 }
 
+static int is_complete(const network *w, const mt_slopes *a)
+{
+    return a->feed && a->tau && a->T && (a->p || !w->laws.parameters) && a->slope && a->status;
+}
+
 int mt_tank_slopes(const mt_network *w, const mt_slopes *all)
 {
     desk d;
     tangents x;
-    if (!w || !all || all->n < 0 || !all->outlet)
+    if (!w || !all || all->n < 0 || !is_complete(w, all) || !all->outlet)
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, tangent_room(w)))
         return MT_NO_MEMORY;
@@ -389,7 +394,7 @@ static void tube_slopes(desk *d, carried *y, stepper *s, double *least, double *
         if (w->ends[w->moving.species[k]])
             least[w->moving.species[k]] = SHARE_OF_DEPTH * d->depth_moving[k];
     y->f = (flow){{&w->moving, d->depth_moving}, feed, 0.0};
-    tolerance o = {{1e-9, 1e-8}, least, scale};
+    tolerance o = {{1e-8, 1e-8}, least, scale};
     memset(y->ended, 0, (size_t)S);
     memset(y->s, 0, (size_t)y->x.columns * (size_t)S * sizeof *y->s);
     for (int i = 0; i < S; i++)
@@ -417,7 +422,7 @@ int mt_tube_slopes(const mt_network *w, const mt_slopes *all)
     desk d;
     carried y;
     stepper s;
-    if (!w || !all || all->n < 0)
+    if (!w || !all || all->n < 0 || !is_complete(w, all))
         return MT_BAD_REQUEST;
     int64_t S = w->species, columns = S + 1 + w->laws.parameters;
     if (!desk_open(&d, w, tangent_room(w) + columns * S * 13))

@@ -193,12 +193,25 @@ static void settle(job *j)
     j->out.status = status;
 }
 
-static void store(const job *j)
+/* Numbers that are none may come in where no law looks at them; they don't go out as an answer. */
+static int is_answer(const job *j)
+{
+    if (j->out.status != MT_OK || j->out.faded)
+        return 0;
+    for (int i = 0; i < j->d->net->species; i++)
+        if (!isfinite(j->c[i]))
+            return 0;
+    return 1;
+}
+
+static void store(job *j)
 {
     const network *w = j->d->net;
     const mt_tanks *a = j->all;
     int64_t row = j->row;
-    int fine = j->out.status == MT_OK && !j->out.faded;
+    int fine = is_answer(j);
+    if (!fine && !j->out.faded && j->out.status == MT_OK)
+        j->out.status = MT_NOT_FINITE;
     double *c = a->c + row * w->all;
     uint8_t *used = a->exhausted + row * w->all;
     for (int i = 0; i < w->all; i++) {
@@ -279,8 +292,9 @@ static void solve_one(job *j, int64_t row)
 
 static int is_complete(const network *w, const mt_tanks *a)
 {
-    return a->feed && a->tau && a->T && (a->p || !w->laws.parameters) && a->c && a->status && a->from_start &&
-           a->faded && a->exhausted && a->residual && a->condition && a->error && a->root && a->iterations && a->work;
+    return a->how >= MT_FROM_FEED && a->how <= MT_CHECK_ONLY && a->feed && a->tau && a->T && (a->p || !w->laws.parameters) &&
+           a->c && a->status && a->from_start && a->faded && a->exhausted && a->residual && a->condition && a->error &&
+           a->root && a->iterations && a->work;
 }
 
 static int needs_second_look(const job *j)

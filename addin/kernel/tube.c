@@ -20,7 +20,7 @@
 #define GENEROUS 4.0 /* misses of a shorter step that are taken */
 
 /* Error of a step, explicit and stiff; the sum of all stays below 1e-8. */
-static const double RELATIVE[2] = {1e-9, 1e-8};
+static const double RELATIVE[2] = {1e-8, 1e-8};
 
 typedef struct {
     desk *d;
@@ -249,7 +249,13 @@ static void check(run_state *u)
         int32_t *status = a->status + u->row * a->m + m;
         for (int i = 0; i < w->species; i++)
             u->point[i] = c[w->present[i]];
-        *status = *status < 0 ? stopped(u) : asked > 0 ? check_point(u, asked, u->point) : MT_OK;
+        *status = *status < 0  ? stopped(u)
+                  : asked > 0  ? check_point(u, asked, u->point)
+                  : asked == 0 ? MT_OK
+                               : MT_NOT_FINITE; /* no residence time: less than none, or no number */
+        for (int i = 0; i < w->all && *status == MT_OK; i++)
+            if (!isfinite(c[i]))
+                *status = MT_NOT_FINITE;
         for (int i = 0; i < w->all && *status != MT_OK; i++)
             c[i] = NAN;
         if (*status == MT_OK)
