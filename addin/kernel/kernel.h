@@ -134,6 +134,14 @@ double *take(desk *d, int64_t n);
 int desk_open(desk *d, const network *net, int64_t extra);
 void desk_close(desk *d);
 
+/* again.c: one vessel that is solved again and again */
+typedef struct {
+    int (*solve)(void *self);
+    void (*close)(void *self);
+    const double *feed, *T, *p;
+} vessel;
+mt_again *keep_vessel(const network *net, void *self, vessel v);
+
 /* program.c */
 void bind_case(const program *q, double *registers, double T, const double *p);
 void run(const program *q, int from, int to, double *registers, int strict);
@@ -179,10 +187,10 @@ typedef struct {
     double tau, nothing;
 } tank;
 int newton(desk *d, const tank *t, double *c, int most, int *iterations);
-void polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *residual, double *condition,
-            double *error);
+int polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *residual, double *condition,
+           double *error);
 void tank_matrix(desk *d, const tank *t, const double *c, double *f, double *terms, double *matrix);
-void growth(desk *d, const tank *t, const double *c, double *rate, double *swing, int *unstable);
+void growth(desk *d, const tank *t, const double *c, int known, double *rate, double *swing, int *unstable);
 int invaded(desk *d, double T, const double *p, const double *c, double tau);
 
 /* integrators */

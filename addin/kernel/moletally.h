@@ -38,7 +38,7 @@ enum {
 
 /* What a call returns; mt_solve_tanks returns more than MT_DONE: how many of its answers call for a second
  * look, being refused, doubtful beyond a relative 1e-10, faded, or with species used up. */
-enum { MT_DONE = 0, MT_NO_MEMORY = -1, MT_BAD_REQUEST = -2 };
+enum { MT_DONE = 0, MT_NO_MEMORY = -1, MT_BAD_REQUEST = -2, MT_CHANGED = -3 };
 
 typedef struct mt_network mt_network;
 
@@ -109,6 +109,14 @@ MT_API int mt_solve_tubes(const mt_network *network, const mt_tubes *tubes);
 MT_API int mt_tank_slopes(const mt_network *network, const mt_slopes *slopes);
 MT_API int mt_tube_slopes(const mt_network *network, const mt_slopes *slopes);
 MT_API int mt_evaluate(const mt_network *network, const mt_rates *rates);
+/* One vessel solved again and again: memory is taken once, and what depends on T and p alone is kept. The
+ * record and its arrays stay the caller's and must live as long; n is 1. `solve` returns MT_CHANGED, and does
+ * nothing, where T, p or which species are fed differ from what they were: the network may be another then. */
+typedef struct mt_again mt_again;
+MT_API mt_again *mt_tank_again(const mt_network *network, const mt_tanks *tank);
+MT_API mt_again *mt_tube_again(const mt_network *network, const mt_tubes *tube);
+MT_API int mt_again_solve(mt_again *again);
+MT_API void mt_again_free(mt_again *again);
 /* One step of size h from c: method 0 explicit, 1 stiff; for tests against the other engine. */
 MT_API int mt_step(const mt_network *network, int method, const double *feed, double T, const double *p,
                    const double *c, double h, double *after, double *error);

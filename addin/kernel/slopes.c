@@ -394,7 +394,7 @@ static void tube_slopes(desk *d, carried *y, stepper *s, double *least, double *
         if (w->ends[w->moving.species[k]])
             least[w->moving.species[k]] = SHARE_OF_DEPTH * d->depth_moving[k];
     y->f = (flow){{&w->moving, d->depth_moving}, feed, 0.0};
-    tolerance o = {{1e-8, 1e-8}, least, scale};
+    tolerance o = {{1e-10, 1e-8}, least, scale};
     memset(y->ended, 0, (size_t)S);
     memset(y->s, 0, (size_t)y->x.columns * (size_t)S * sizeof *y->s);
     for (int i = 0; i < S; i++)

@@ -74,7 +74,7 @@ static void arrive(startup *u)
 {
     double rate, swing;
     int unstable;
-    growth(u->d, u->t, u->guess, &rate, &swing, &unstable);
+    growth(u->d, u->t, u->guess, 0, &rate, &swing, &unstable);
     if (!unstable) {
         memcpy(u->c, u->guess, (size_t)u->d->net->species * sizeof *u->c);
         finish(u, MT_OK);
@@ -159,7 +159,7 @@ static void creep_on(startup *u)
     u->out->iterations += steps;
     if (!found)
         return;
-    growth(u->d, u->t, u->guess, &rate, &swing, &unstable);
+    growth(u->d, u->t, u->guess, 0, &rate, &swing, &unstable);
     u->out->status = !unstable ? MT_OK : swing > 0 ? MT_OSCILLATES : MT_UNSTABLE;
     memcpy(u->c, u->guess, (size_t)u->d->net->species * sizeof *u->c);
 }

@@ -152,8 +152,9 @@ static void twice_the_digits(desk *d, const tank *t, double *c, const uint8_t *g
  *
  * residual: largest |F| over the sum of its terms; condition: largest relative change of an outlet per
  * relative change of feed and rates; error: estimated relative error. What is `gone` has no digits to lose.
+ * Returns whether the matrix on the desk is still that of c.
  */
-void polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *residual, double *condition, double *error)
+int polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *residual, double *condition, double *error)
 {
     const network *w = d->net;
     int S = w->species;
@@ -199,7 +200,8 @@ void polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *resi
         *residual = g > *residual || g != g ? g : *residual;
     }
     d->next = keep;
-    if (!(*error <= GOOD)) {
+    int rough = !(*error <= GOOD);
+    if (rough) {
         double last;
         twice_the_digits(d, t, c, gone, residual, &last);
         double least = EPSILON * *condition;
@@ -207,16 +209,18 @@ void polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *resi
         if (*condition != *condition)
             *error = *condition;
     }
+    return !rough;
 }
 
-/* Does a disturbance of the steady state c grow? rate: the fastest one's, 1/s, -inf where all are proven to
+/* Does a disturbance of the steady state c grow? known: its matrix is on the desk; rate: the fastest one's, 1/s, -inf where all are proven to
  * fade; swing: its frequency; unstable: it surely grows. */
-void growth(desk *d, const tank *t, const double *c, double *rate, double *swing, int *unstable)
+void growth(desk *d, const tank *t, const double *c, int known, double *rate, double *swing, int *unstable)
 {
     int S = d->net->species;
     double *keep = d->next, *f = take(d, S), *terms = take(d, S), largest = 0.0;
     *rate = -INFINITY, *swing = 0.0, *unstable = 0;
-    tank_matrix(d, t, c, f, terms, d->matrix);
+    if (!known)
+        tank_matrix(d, t, c, f, terms, d->matrix);
     d->next = keep;
     if (is_m_matrix(d, d->matrix))
         return;

@@ -1,4 +1,5 @@
 /* Stirred tanks: from feeds to checked outlets, a case at a time. */
+#include <stdlib.h>
 #include <string.h>
 
 #include "kernel.h"
@@ -27,6 +28,7 @@ typedef struct {
     double scale;
     double *feed, *start, *c, *f;
     uint8_t *fed, *gone;
+    int bound; /* T and p of `row` are in the registers */
     outcome out;
     double residual, condition, error;
 } job;
@@ -44,10 +46,18 @@ static void set_depths(desk *d, double scale)
 static void open_job(job *j, desk *d, const mt_tanks *all)
 {
     int S = d->net->species;
-    j->d = d, j->all = all;
+    j->d = d, j->all = all, j->bound = 0, j->row = 0;
     j->feed = take(d, S), j->start = take(d, S), j->c = take(d, S), j->f = take(d, S);
     j->fed = (uint8_t *)take(d, S);
     j->gone = (uint8_t *)take(d, S);
+}
+
+/* Cases that differ in feed and residence time alone share what T and p make. */
+static int same_constants(const network *w, const mt_tanks *a, int64_t row, int64_t other)
+{
+    size_t P = (size_t)w->laws.parameters;
+    return !memcmp(a->T + row, a->T + other, sizeof *a->T) &&
+           (!P || !memcmp(a->p + row * (int64_t)P, a->p + other * (int64_t)P, P * sizeof *a->p));
 }
 
 static void load(job *j, int64_t row)
@@ -67,10 +77,11 @@ static void load(job *j, int64_t row)
         if (a->how != MT_FROM_FEED)
             j->c[i] = a->c[row * w->all + at];
     }
-    j->row = row;
     j->scale = a->scale ? a->scale[row] : largest > 0 ? largest : NOWHERE;
     set_depths(d, j->scale);
-    bind_case(&w->laws, d->registers, a->T[row], w->laws.parameters ? a->p + row * w->laws.parameters : NULL);
+    if (!j->bound || !same_constants(w, a, j->row, row))
+        bind_case(&w->laws, d->registers, a->T[row], w->laws.parameters ? a->p + row * w->laws.parameters : NULL);
+    j->bound = 1, j->row = row;
     j->t = (tank){{&w->steady, d->depth_steady}, j->feed, a->tau[row], NOTHING * j->scale};
     j->out = (outcome){MT_OK, 0, 0, 0};
     j->residual = j->condition = j->error = 0.0;
@@ -156,18 +167,19 @@ static void settle(job *j)
 {
     desk *d = j->d;
     const network *w = d->net;
-    int S = w->species, unstable, status = MT_OK;
+    int S = w->species, unstable, known, status = MT_OK;
     double rate, swing, *c = j->c;
     if (j->all->how != MT_CHECK_ONLY) {
         mark_gone(j, c, j->gone);
-        polish(d, &j->t, c, j->gone, &j->residual, &j->condition, &j->error);
+        known = polish(d, &j->t, c, j->gone, &j->residual, &j->condition, &j->error);
     } else {
         double unused;
+        known = 0;
         polish(d, &j->t, memcpy(j->f, c, (size_t)S * sizeof *c), j->gone, &j->residual, &j->condition, &unused);
     }
     for (int i = 0; i < S; i++)
         j->all->root[j->row * w->all + w->present[i]] = c[i];
-    growth(d, &j->t, c, &rate, &swing, &unstable);
+    growth(d, &j->t, c, known, &rate, &swing, &unstable);
     if (!(j->error <= BELIEVED))
         status = MT_ILL_CONDITIONED;
     if (!(j->residual <= CLOSED))
@@ -321,4 +333,40 @@ int mt_solve_tanks(const mt_network *w, const mt_tanks *all)
     }
     desk_close(&d);
     return doubtful;
+}
+
+typedef struct {
+    desk d;
+    job j;
+    mt_tanks all;
+} seat;
+
+static int again(void *self)
+{
+    seat *s = self;
+    solve_one(&s->j, 0);
+    return needs_second_look(&s->j);
+}
+
+static void leave(void *self)
+{
+    seat *s = self;
+    desk_close(&s->d);
+    free(s);
+}
+
+mt_again *mt_tank_again(const mt_network *w, const mt_tanks *tank)
+{
+    if (!w || !tank || tank->n != 1 || !is_complete(w, tank))
+        return NULL;
+    seat *s = calloc(1, sizeof *s);
+    if (!s)
+        return NULL;
+    s->all = *tank;
+    if (!desk_open(&s->d, w, 0)) {
+        leave(s);
+        return NULL;
+    }
+    open_job(&s->j, &s->d, &s->all);
+    return keep_vessel(w, s, (vessel){again, leave, tank->feed, tank->T, tank->p});
 }

@@ -4,6 +4,7 @@
  * before it: a shorter step is a better one, and has the full order of the method, which an interpolating
  * polynomial has not. Where it is not good enough (fast transients that the long step damps), many steps.
  */
+#include <stdlib.h>
 #include <string.h>
 
 #include "kernel.h"
@@ -20,7 +21,7 @@
 #define GENEROUS 4.0 /* misses of a shorter step that are taken */
 
 /* Error of a step, explicit and stiff; the sum of all stays below 1e-8. */
-static const double RELATIVE[2] = {1e-8, 1e-8};
+static const double RELATIVE[2] = {1e-10, 1e-8};
 
 typedef struct {
     desk *d;
@@ -291,12 +292,17 @@ static void follow(run_state *u, int64_t row)
     a->work[row] = (int32_t)(u->d->work < INT32_MAX ? u->d->work : INT32_MAX);
 }
 
+static int is_complete(const network *w, const mt_tubes *a)
+{
+    return a->n >= 0 && a->m >= 0 && a->feed && a->asked && a->T && (a->p || !w->laws.parameters) && a->c && a->status &&
+           a->exhausted_at && a->steps && a->work;
+}
+
 int mt_solve_tubes(const mt_network *w, const mt_tubes *all)
 {
     desk d;
     run_state u;
-    if (!w || !all || all->n < 0 || all->m < 0 || !all->feed || !all->asked || !all->T ||
-        (!all->p && w->laws.parameters) || !all->c || !all->status || !all->exhausted_at || !all->steps || !all->work)
+    if (!w || !all || !is_complete(w, all))
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;
@@ -305,4 +311,40 @@ int mt_solve_tubes(const mt_network *w, const mt_tubes *all)
         follow(&u, row);
     desk_close(&d);
     return MT_DONE;
+}
+
+typedef struct {
+    desk d;
+    run_state u;
+    mt_tubes all;
+} seat;
+
+static int again(void *self)
+{
+    seat *s = self;
+    follow(&s->u, 0);
+    return MT_DONE;
+}
+
+static void leave(void *self)
+{
+    seat *s = self;
+    desk_close(&s->d);
+    free(s);
+}
+
+mt_again *mt_tube_again(const mt_network *w, const mt_tubes *tube)
+{
+    if (!w || !tube || tube->n != 1 || !is_complete(w, tube))
+        return NULL;
+    seat *s = calloc(1, sizeof *s);
+    if (!s)
+        return NULL;
+    s->all = *tube;
+    if (!desk_open(&s->d, w, 0)) {
+        leave(s);
+        return NULL;
+    }
+    open_run(&s->u, &s->d, &s->all);
+    return keep_vessel(w, s, (vessel){again, leave, tube->feed, tube->T, tube->p});
 }

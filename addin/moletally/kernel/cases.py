@@ -1,5 +1,6 @@
 """What an engine is asked and what it answers: arrays with a row per case, a column per species of the model."""
 
+from collections.abc import Callable
 from enum import IntEnum
 from typing import NamedTuple
 
@@ -8,9 +9,12 @@ from numpy.typing import NDArray
 
 from moletally.kernel.rates import Floats
 
-__all__ = ["How", "Ints", "TankAnswers", "TankCases", "TubeAnswers"]
+__all__ = ["CHANGED", "Again", "How", "Ints", "TankAnswers", "TankCases", "TubeAnswers"]
 
 Ints = NDArray[np.intp]
+# Solves one vessel anew; returns CHANGED, or 0 for a fine answer, or more for one that calls for a second look.
+Again = Callable[[], int]
+CHANGED = -3
 
 
 class How(IntEnum):

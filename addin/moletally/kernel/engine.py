@@ -5,11 +5,11 @@ reference) overrides it: for tests, and for a second opinion on a number.
 """
 
 import os
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Protocol
 
-from moletally.kernel.cases import How, TankAnswers, TankCases, TubeAnswers
+from moletally.kernel.cases import Again, How, TankAnswers, TankCases, TubeAnswers
 from moletally.kernel.program import Program
 from moletally.kernel.rates import Floats
 from moletally.kernel.structure import Structure
@@ -29,10 +29,11 @@ class Engine(Protocol):
     def tanks(self, structure: Structure, cases: TankCases, how: How) -> tuple[TankAnswers, bool]:
         """Solve and check tanks; False if no answer calls for a second look, True if some may."""
 
-    def tank_again(
-        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
-    ) -> Callable[[], bool]:
-        """A function that solves one tank anew from arrays to arrays; it returns as `tanks` does."""
+    def tank_again(self, structure: Structure, cases: TankCases, out: TankAnswers, how: How) -> Again:
+        """A function that solves one tank anew, from arrays to arrays."""
+
+    def tube_again(self, structure: Structure, cases: TankCases, out: TubeAnswers) -> Again:
+        """The same for a tube with one point."""
 
     def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
         """Follow tubes; asked, shape (N, M) - residence times [s]."""

@@ -2,6 +2,7 @@
 
 import ctypes
 import os
+import weakref
 from collections.abc import Callable
 from functools import cache
 from itertools import pairwise
@@ -10,7 +11,7 @@ from typing import TYPE_CHECKING, Any, TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.kernel.cases import How, TankAnswers, TankCases, TubeAnswers
+from moletally.kernel.cases import Again, How, TankAnswers, TankCases, TubeAnswers
 from moletally.kernel.compiled.library import Rates, Slopes, Tanks, Tubes, library
 from moletally.kernel.compiled.network import Network, network_of, network_of_program
 from moletally.kernel.program import Program
@@ -51,31 +52,42 @@ class CompiledEngine:
         )
         return out, code > 0
 
-    def tank_again(
-        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
-    ) -> Callable[[], bool]:
+    def tank_again(self, structure: Structure, cases: TankCases, out: TankAnswers, how: How) -> Again:
         """Solves one tank anew at each call, from arrays to arrays whose addresses are taken once."""
-        record, network = Tanks(n=1, how=how), network_of(structure)
-        rows = _tank_rows(cases, out)
+        return self._again(
+            self._library.mt_tank_again, structure, Tanks(n=1, how=how), _tank_rows(cases, out)
+        )
+
+    def tube_again(self, structure: Structure, cases: TankCases, out: TubeAnswers) -> Again:
+        """The same for a tube."""
+        rows = _tube_rows(cases.feed, cases.tau[:, None], cases.T, cases.p, out)
+        return self._again(self._library.mt_tube_again, structure, Tubes(n=1, m=1), rows)
+
+    def _again(
+        self, make: Callable[..., int], structure: Structure, record: Tanks | Tubes, rows: dict[str, Array | None]
+    ) -> Again:  # fmt: skip
+        network = network_of(structure)
         for name, array in rows.items():
             if array is not None:
                 setattr(record, name, array.ctypes.data)
-        function, handle, where = self._library.mt_solve_tanks, network.handle, ctypes.addressof(record)
+        seat = make(network.handle, ctypes.addressof(record))
+        if not seat:
+            raise MemoryError("the kernel ran out of memory")
+        held = ctypes.c_void_p(seat)
+        solve = self._library.mt_again_solve
 
-        def again(_kept: object = (record, network, rows)) -> bool:
-            code = function(handle, where)
-            return _check(code) > 0 if code else False
+        def again() -> int:
+            return int(solve(held))
 
+        weakref.finalize(again, self._library.mt_again_free, seat)
+        again.keeps = (network, rows)  # type: ignore[attr-defined]  # the kernel has their addresses
         return again
 
     def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
         """Follow tubes."""
         n, points = asked.shape
         out = TubeAnswers.empty(n, points, feed.shape[1])
-        rows = {
-            "feed": _floats(feed), "asked": _floats(asked), "T": _floats(T), "p": _floats(p),
-            **{name: getattr(out, name) for name in TubeAnswers._fields},
-        }  # fmt: skip
+        rows = _tube_rows(feed, asked, T, p, out)
         _in_pieces(self._library.mt_solve_tubes, network_of(structure), Tubes(m=points), rows, n, FEW_TUBES)
         return out
 
@@ -133,6 +145,15 @@ def _tank_rows(cases: TankCases, out: TankAnswers) -> dict[str, Array | None]:
         "fed": None if cases.fed is None else np.ascontiguousarray(cases.fed),
         "scale": None if cases.scale is None else _floats(cases.scale),
         **{name: getattr(out, name) for name in TankAnswers._fields},
+    }  # fmt: skip
+
+
+def _tube_rows(
+    feed: Floats, asked: Floats, T: Floats, p: Floats, out: TubeAnswers
+) -> dict[str, Array | None]:
+    return {
+        "feed": _floats(feed), "asked": _floats(asked), "T": _floats(T), "p": _floats(p),
+        **{name: getattr(out, name) for name in TubeAnswers._fields},
     }  # fmt: skip
 
 

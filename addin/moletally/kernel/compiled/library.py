@@ -67,6 +67,14 @@ def library() -> ctypes.CDLL:
         function = getattr(found, name)
         function.restype = c_int
         function.argtypes = (c_void_p, c_void_p)
+    for name in ("mt_tank_again", "mt_tube_again"):
+        function = getattr(found, name)
+        function.restype = c_void_p
+        function.argtypes = (c_void_p, c_void_p)
+    found.mt_again_solve.restype = c_int
+    found.mt_again_solve.argtypes = (c_void_p,)
+    found.mt_again_free.restype = None
+    found.mt_again_free.argtypes = (c_void_p,)
     found.mt_step.restype = c_int
     found.mt_step.argtypes = (
         c_void_p, c_int, c_void_p, c_double, c_void_p, c_void_p, c_double, c_void_p, c_void_p,

@@ -1,16 +1,19 @@
 """The reference engine behind the common face."""
 
-from collections.abc import Callable
-
 import numpy as np
 
-from moletally.kernel.cases import How, TankAnswers, TankCases, TubeAnswers
+from moletally.kernel.cases import CHANGED, Again, How, TankAnswers, TankCases, TubeAnswers
 from moletally.kernel.program import Program
 from moletally.kernel.rates import Floats
 from moletally.kernel.reference import evaluate, slopes, tank, tube
 from moletally.kernel.structure import Structure
 
 __all__ = ["ReferenceEngine"]
+
+
+def _numbers(cases: TankCases) -> tuple[bytes, ...]:
+    """What the structure of a case may depend on."""
+    return (cases.feed > 0).tobytes(), cases.T.tobytes(), cases.p.tobytes()
 
 
 class ReferenceEngine:
@@ -22,15 +25,29 @@ class ReferenceEngine:
         """Solve and check tanks."""
         return tank.solve(structure, cases, how), True
 
-    def tank_again(
-        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
-    ) -> Callable[[], bool]:
+    def tank_again(self, structure: Structure, cases: TankCases, out: TankAnswers, how: How) -> Again:
         """Solves one tank anew at each call."""
+        numbers = _numbers(cases)
 
-        def again() -> bool:
+        def again() -> int:
+            if _numbers(cases) != numbers:
+                return CHANGED
             given = cases._replace(c=out.c.copy())
             out.put(np.zeros(1, dtype=np.intp), tank.solve(structure, given, how))
-            return True
+            return 1
+
+        return again
+
+    def tube_again(self, structure: Structure, cases: TankCases, out: TubeAnswers) -> Again:
+        """Solves one tube anew at each call."""
+        numbers = _numbers(cases)
+
+        def again() -> int:
+            if _numbers(cases) != numbers:
+                return CHANGED
+            answer = tube.solve(structure, cases.feed, cases.tau[:, None], cases.T, cases.p)
+            out.put(np.zeros(1, dtype=np.intp), answer)
+            return 0
 
         return again
 

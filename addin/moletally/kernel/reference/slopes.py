@@ -26,7 +26,7 @@ __all__ = ["of_tanks", "of_tubes"]
 NUDGE = 1e-5  # relative difference between neighbours: rounding and curvature weigh about the same
 WIDE_NUDGE = 1e-4  # the same where each has its own mesh, whose tolerance counts as rounding
 MOST_STEPS = 12000
-RELATIVE = (1e-8, 1e-8)
+RELATIVE = (1e-10, 1e-8)
 
 
 def of_tanks(structure: Structure, cases: TankCases, root: Floats) -> Floats:

@@ -16,7 +16,7 @@ from moletally.kernel.structure import Structure
 
 __all__ = ["solve"]
 
-RELATIVE = (1e-8, 1e-8)  # error of a step, explicit and stiff; the sum of all stays below 1e-8
+RELATIVE = (1e-10, 1e-8)  # error of a step, explicit and stiff; the sum of all stays below 1e-8
 MOST_STEPS = 12000
 VANISHING = 1e-5  # of the feed: where a law of negative order is about to end
 INVARIANT = 1e-9  # of the sum of a total's terms
