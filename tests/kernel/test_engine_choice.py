@@ -7,10 +7,11 @@ import numpy as np
 import pytest
 from kernel_cases import case, network
 
-from moletally.kernel.again import TankAgain
+from moletally.kernel.again import TankAgain, TubeAgain
 from moletally.kernel.engine import engine_name, using
 from moletally.kernel.status import Status
 from moletally.kernel.tank import solve_tanks
+from moletally.kernel.tube import solve_tubes
 
 ASK = "from moletally.kernel.engine import engine_name; print(engine_name())"
 WITHOUT = "import moletally.kernel.compiled.library as library; library.FILE = 'no such file'; "
@@ -83,3 +84,31 @@ def test_a_branch_is_followed_and_left_with_a_reason(name):
         tank.tau[0] = 1 / 11
         assert tank.solve() == Status.UNSTABLE
         assert np.isnan(tank.c).all()
+
+
+@pytest.mark.parametrize("name", ["compiled", "reference"])
+def test_a_tube_again(name):
+    with using(name):
+        tube = TubeAgain(
+            network("A B", ["A -> B : k*A"], "k"), np.array([2.0, 0.0]), 12.0, 300.0, np.array([0.1])
+        )
+        for tau, k in ((12.0, 0.1), (3.0, 0.1), (3.0, 0.7), (0.0, 0.7)):
+            tube.tau[0], tube.p[0] = tau, k
+            assert tube.solve() == Status.OK
+            assert tube.c == pytest.approx([2 * np.exp(-k * tau), -2 * np.expm1(-k * tau)], rel=1e-9)
+
+
+def test_many_vessels_at_once_are_what_each_is_alone():
+    """On all cores, in pieces: 500 tanks and 50 tubes of several structures."""
+    rng = np.random.default_rng(5)
+    model = network("A B C", ["A -> B : k1*A^n", "B -> C : k2*B"], "k1 k2 n")
+    for solve, n in ((solve_tanks, 500), (solve_tubes, 50)):
+        feed = np.where(rng.random((n, 3)) < 0.3, 0.0, rng.uniform(0.1, 3, (n, 3)))
+        tau, T = rng.uniform(0, 9, n), np.full(n, 300.0)
+        p = np.column_stack([rng.uniform(0.1, 2, (n, 2)), rng.choice([0.5, 1.0, 1.5], n)])
+        together = solve(model, feed, tau, T, p)
+        for k in range(0, n, 7):
+            one = slice(k, k + 1)
+            alone = solve(model, feed[one], tau[one], T[one], p[one])
+            assert (together.c[k] == alone.c[0]).all()
+            assert together.status[k] == alone.status[0]
