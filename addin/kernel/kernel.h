@@ -201,7 +201,8 @@ typedef struct {
 } tolerance;
 enum { EXPLICIT, STIFF };
 typedef struct {
-    int error_order, evaluations;
+    double (*root)(double size); /* size^(-1/order of the estimate) */
+    int evaluations;
     double most_growth;
     int (*step)(desk *d, const flow *f, const double *c, double h, const double *least, double *after,
                 double *error, double *stiffness);

@@ -78,7 +78,8 @@ static double product(const desk *d, laws l, int t, int without)
 static void fill(desk *d, const double *c)
 {
     const program *q = &d->net->laws;
-    memcpy(d->registers, c, (size_t)q->leaves * sizeof *c);
+    for (int i = 0; i < q->leaves; i++)
+        d->registers[i] = c[i];
     run(q, q->prelude, q->prelude + q->body, d->registers, 0);
     d->work++;
 }

@@ -35,11 +35,15 @@ int step_explicit(desk *d, const flow *f, const double *c, double h, const doubl
 int step_stiff(desk *d, const flow *f, const double *c, double h, const double *least, double *after, double *error,
                double *stiffness);
 
+/* How a step has to shrink where its error is `size` times what is accepted: by the order of the estimate. */
+static double eighth_root(double size) { return 1.0 / sqrt(sqrt(sqrt(size))); }
+static double fifth_root(double size) { return pow(size, -0.2); }
+
 /* The explicit method's steps grow twofold at most: a longer leap may pass the knee of an adsorption law
  * without an error that shows (measured on 3000 tubes of r = A/(K + A): 1e-7 became 1e-8). */
 const method METHODS[2] = {
-    {7, 12, 2.0, step_explicit},
-    {4, 9, 6.0, step_stiff},
+    {eighth_root, 12, 2.0, step_explicit},
+    {fifth_root, 9, 6.0, step_stiff},
 };
 
 /* The largest error in units of what is accepted; finite: errors and states are numbers. */
@@ -191,7 +195,7 @@ int attempt(desk *d, stepper *s)
     m->step(d, s->flow, s->c, h, s->tolerance->least, s->after, s->error, &stiffness);
     double size = missed(d, s->tolerance, s->flow, s->error, s->c, s->after, s->mode, &finite);
     size = finite ? (size > 1e-10 ? size : 1e-10) : INFINITY;
-    double shrink = SAFETY * pow(size, -1.0 / (m->error_order + 1));
+    double shrink = SAFETY * m->root(size);
     for (int i = 0; i < S; i++)
         negative |= s->after[i] < -s->tolerance->least[i];
     if (negative && shrink > TOO_FAR)
@@ -219,6 +223,8 @@ int attempt(desk *d, stepper *s)
         s->late = step - (s->t - begun);
         if (s->totals)
             restore(d, s->totals, s->c, s->t);
+        if (d->known && s->last_mode == EXPLICIT) /* the slope there is as good after a move of the last digit */
+            memcpy(d->known_at, s->c, (size_t)S * sizeof *s->c);
     }
     look_for_trouble(d, s, fine, finite);
     if (s->last_mode == EXPLICIT)
