@@ -2,12 +2,12 @@
 
 import marshal
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cached_property, lru_cache
 from typing import Any
 
 from moletally.chemistry.errors import InputError, Place
 from moletally.chemistry.tables import ConstantRow, FeedTable, ReactionTable
-from moletally.sheet.cells import OMITTED, Argument, Omitted
+from moletally.sheet.cells import OMITTED, Argument
 from moletally.sheet.reading.constants import read_constants
 from moletally.sheet.reading.feed import read_feed
 from moletally.sheet.reading.grid import Grid, is_empty
@@ -19,7 +19,7 @@ __all__ = ["Tables", "read_tables"]
 MOST_ROWS = 2000  # of a range that is remembered: whole columns would fill the memory
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, eq=False)
 class Tables:
     """What the tables say; `numbers` fills the slots of `reactions` and `constants`."""
 
@@ -27,6 +27,15 @@ class Tables:
     constants: tuple[ConstantRow, ...]
     feed: FeedTable
     numbers: tuple[float, ...]
+
+    @cached_property
+    def labels(self) -> tuple[str, ...]:
+        """Labels of these tables that a reactor may carry: in(A), K_A, k(2)."""
+        labels = [f"in({name})" for name in self.feed.names] + [row.name for row in self.constants]
+        for number, row in enumerate(self.reactions.rows, start=1):
+            labels += [f"{name}({number})" for name, _ in row.constants]
+            labels += [name for name, _ in row.constants if name not in labels]
+        return tuple(labels)
 
 
 def read_tables(reactions: Argument, feed: Argument, constants: Argument) -> Tables:
@@ -39,15 +48,16 @@ def read_tables(reactions: Argument, feed: Argument, constants: Argument) -> Tab
     SheetError
         With the place: table, row and column of the range, header.
     """
-    arguments = (reactions, feed, constants)
-    if any(isinstance(a, tuple) and len(a) > MOST_ROWS for a in arguments):
-        return _read(*arguments)
+    plain: list[Any] = []
+    for argument in (reactions, feed, constants):
+        if isinstance(argument, tuple) and len(argument) > MOST_ROWS:
+            return _read(reactions, feed, constants)
+        plain.append(... if argument is OMITTED else argument)
     try:
         # Bytes, because TRUE and 1 are equal as cells but not as content; version 2 does not depend on identity.
-        plain: Any = tuple(... if isinstance(a, Omitted) else a for a in arguments)
         key = marshal.dumps(plain, 2)
     except ValueError:  # dates and error values: rare, and refused anyway
-        return _read(*arguments)
+        return _read(reactions, feed, constants)
     return _remembered(key)
 
 
