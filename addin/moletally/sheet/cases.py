@@ -111,7 +111,8 @@ class Cases:
 
     def refuse_sign(self, label: str, values: Floats, zero_too: bool) -> None:
         """Take out cases with a negative value (or zero, where that makes no sense)."""
+        if not self.has(label):
+            return
         least = "0 or more" if zero_too else "more than 0"
-        with np.errstate(invalid="ignore"):
-            bad = values < 0 if zero_too else values <= 0
+        bad = values < 0 if zero_too else values <= 0
         self.refuse(bad, label, lambda i: f"{label} is {self.raw(label)[i]:g}: it must be {least}")
