@@ -138,7 +138,7 @@ class Inlet:
         """
         if not self.needs_flow:
             known = flow if math.isnan(self.flow) else np.where(np.isnan(flow), self.flow, flow)
-            return np.repeat(self._given[None, :], len(flow), axis=0), known
+            return self._given[None, :].repeat(len(flow), axis=0), known
         own = self.flow
         total = np.where(np.isnan(flow), own, flow)
         if np.isnan(total).any():

@@ -44,9 +44,18 @@ class Cases:
         """For each row, which case of the sheet it is, counted from 0."""
         return tuple(i for i, row in enumerate(self.reactor.rows) if not isinstance(row, SheetError))
 
+    @cached_property
+    def unknown(self) -> Floats:
+        """The values of a label that no case has, shape (N,): nan."""
+        return np.full(self.count, np.nan)
+
     def has(self, label: str) -> bool:
         """True where a label has a number, the same for all or one per case."""
         return label in self.layout.where
+
+    def all_have(self, label: str) -> bool:
+        """True where no case can be without it."""
+        return self.has(label) and (self.reactor.single or self.layout.where[label] < 0)
 
     def place(self, label: str, row: int | None = None) -> Place:
         """Where a label stands, or its value in one row."""
@@ -71,7 +80,7 @@ class Cases:
         """Values of a label as they are typed, shape (N,); nan in cases that do not have it."""
         where = self.layout.where.get(label)
         if where is None:
-            return np.full(self.count, np.nan)
+            return self.unknown
         return np.full(self.count, self.reactor.numbers[where]) if where < 0 else self.numbers[:, where]
 
     def values(self, label: str, dims: Dims, bare: Unit | None = None, always: bool = False) -> Floats:
@@ -85,7 +94,7 @@ class Cases:
         if where is None or (
             not self.reactor.single and where >= 0 and np.isnan(self.numbers[:, where]).all()
         ):
-            return np.full(self.count, np.nan)
+            return self.unknown
         scale = self.scales.get(label)
         if scale is None:
             text = self.unit_text(label) or (bare.text if bare is not None else None)

@@ -33,6 +33,7 @@ class Request:
     setup : what tables and layout mean together
     cases : for each case of the sheet its row in `batch`, or the fault that makes it an error
     pressure : ndarray, shape (N,) [Pa], nan where none is given
+    findings : what an audit should say of tables and labels
     """
 
     setup: Setup
@@ -40,6 +41,7 @@ class Request:
     batch: Batch
     cases: tuple[int | SheetError, ...]
     pressure: Floats
+    findings: tuple[Finding, ...]
 
     @property
     def network(self) -> Network:
@@ -55,11 +57,6 @@ class Request:
     def units(self) -> ResultUnits:
         """The units of results that name none of their own."""
         return self.setup.units
-
-    @property
-    def findings(self) -> tuple[Finding, ...]:
-        """What an audit should say of tables and labels."""
-        return self.setup.findings
 
     def state(self, concentration: Floats) -> State:
         """The outlets as a `want` sees them."""
@@ -83,15 +80,16 @@ def read_request(reactions: Argument, feed: Argument, reactor: Argument, constan
     tables = read_tables(reactions, feed, constants)
     read = NOTHING if not sized and is_empty(reactor) else read_reactor(reactor, tables.labels)
     setup = _setup(tables, read.layout, sized)
-    batch, cases, pressure = setup.batch(read)
-    return Request(setup, read, batch, cases, pressure)
+    return Request(setup, read, *setup.batch(read), setup.findings)
 
 
 @lru_cache(maxsize=256)
 def _setup(tables: Tables, layout: Layout, sized: bool) -> Setup:
     """Tables and layouts are found by identity: those of equal content are one object each."""
     with_units = _carries_units(tables, layout)
-    return Setup(tables, layout, _network(tables, with_units), with_units, sized)
+    setup = Setup(tables, layout, _network(tables, with_units), with_units, sized)
+    setup.check_words()
+    return setup
 
 
 def _carries_units(tables: Tables, layout: Layout) -> bool:

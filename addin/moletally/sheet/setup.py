@@ -55,14 +55,12 @@ class Setup:
 
     def batch(self, reactor: ReactorInput) -> tuple[Batch, tuple[int | SheetError, ...], Floats]:
         """The good cases, for each case of the sheet its row or fault, and the pressures of the good ones."""
-        assert self._allowed
         cases = Cases(reactor, self.with_units, self.scales)
         parameters = self._parameters(cases)
         size, flow, density = self._size(cases)
-        feed, flow = self.inlet.mixed(flow, cases.place("Flow"))
+        feed, flow = self.inlet.mixed(flow, self._flow_place)
         self._override_feed(cases, feed, flow)
         temperature = self._temperature(cases)
-        assert self.findings is not None
         whole = Batch(
             self.network, feed, size, temperature, parameters, self.inlet.start(feed), flow, density
         )
@@ -84,9 +82,8 @@ class Setup:
             found.append(places[row] if row in places else cases.faults[row])
         return tuple(found)
 
-    @cached_property
-    def _allowed(self) -> bool:
-        """True; raises for what belongs to a model that this version does not solve."""
+    def check_words(self) -> None:
+        """Refuse what belongs to a model that this version does not solve."""
         words = dict(self.layout.words)
         for label, (now, later) in WORDS.items():
             value, place = words.get(label, now).strip().casefold(), Place("Reactor", header=label)
@@ -99,7 +96,11 @@ class Setup:
                 "rate laws in partial pressures need Phase gas, which is not solved by this version yet",
                 Place("Reactions"),
             )
-        return True
+
+    @cached_property
+    def _flow_place(self) -> Place:
+        column = self.layout.column("Flow")
+        return Place("Reactor", header="Flow") if column is None else column.place
 
     @cached_property
     def _values(self) -> tuple[Floats, tuple[Finding, ...]]:
@@ -113,7 +114,7 @@ class Setup:
 
     def _parameters(self, cases: Cases) -> Floats:
         """The parameter vector of each case: the tables' numbers, overridden by labels of constants."""
-        parameters = np.repeat(self._values[0][None, :], len(cases), axis=0)
+        parameters = self._values[0][None, :].repeat(len(cases), axis=0)
         for label in self._overrides:
             self._override(cases, parameters, label)
         return parameters
@@ -150,11 +151,16 @@ class Setup:
         self._require(
             cases, tau, "the size of the vessel is missing: give Residence time, or Volume and Flow"
         )
-        return tau, flow, np.full(len(tau), np.nan)
+        return tau, flow, cases.unknown
 
     def _from_volume(self, cases: Cases, tau: Floats, volume: Floats, flow: Floats) -> tuple[Floats, Floats]:
         """Residence time and flow, each from the other where it is not given."""
         own = self.inlet.flow
+        if (
+            not cases.has("Residence time") and own != own
+        ):  # the usual block: volume and flow, and nothing twice
+            with np.errstate(all="ignore"):
+                return volume / flow, flow
         with np.errstate(all="ignore"):
             known = np.where(np.isnan(flow), own, flow)
             known = np.where(np.isnan(known) & (tau > 0), volume / tau, known)
@@ -192,7 +198,7 @@ class Setup:
         return size, flow, density
 
     def _require(self, cases: Cases, size: Floats, missing: str) -> None:
-        if self.sized:
+        if self.sized and not cases.all_have("Residence time"):
             cases.refuse(np.isnan(size), "Residence time", lambda _: missing)
 
     def _time_unit(self) -> Unit:

@@ -70,7 +70,7 @@ def _read(text: str, species: tuple[str, ...]) -> _Want:
 
 
 def answer(text: str, state: State) -> Answer:
-    """Values of a want in M states.
+    """Values of a want in M states; call within np.errstate, as functions.call does.
 
     Raises
     ------
@@ -78,8 +78,7 @@ def answer(text: str, state: State) -> Answer:
         Where the text can't be read, or asks for what these states do not have.
     """
     want = _read(text, state.names)
-    with np.errstate(all="ignore"):
-        return _plain(want, state) if want.unit is None else _converted(want, want.unit, state)
+    return _plain(want, state) if want.unit is None else _converted(want, want.unit, state)
 
 
 def species_answer(state: State, index: int) -> Answer:
