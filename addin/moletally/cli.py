@@ -3,7 +3,6 @@
 Exit codes: 0 all fine, 1 some cell has a problem or is stale, 2 the book or the call can't be used.
 """
 
-import json
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -87,11 +86,12 @@ def recalc(book: Path, settings: tuple[str, ...], out: Path | None, as_json: boo
     except OSError as error:
         raise _Failed(f"{out} can't be written: {error.strerror}") from None
     if as_json:
-        click.echo(json.dumps(report.as_json(calculation, FUNCTIONS), ensure_ascii=False, indent=1))
-    else:
-        click.echo(report.as_text(calculation, FUNCTIONS))
-        if out is not None:
-            click.echo(f"written: {out}")
+        answers = report.as_json(calculation, FUNCTIONS)
+        click.echo(report.json_text(answers))
+        click.get_current_context().exit(1 if answers["problems"] else 0)
+    click.echo(report.as_text(calculation, FUNCTIONS))
+    if out is not None:
+        click.echo(f"written: {out}")
     click.get_current_context().exit(1 if report.troubles(calculation) else 0)
 
 
