@@ -8,7 +8,7 @@
 
 #include "kernel.h"
 
-#define MOST_STEPS 400
+#define MOST_STEPS 1500
 #define ERROR 0.02   /* of a concentration, per step */
 #define TRACE 1e-12  /* of the largest concentration: below it a species may change as it likes */
 #define FIRST 1e-9   /* residence times: first step, and when to stop */

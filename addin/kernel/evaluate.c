@@ -20,10 +20,16 @@ static void by_constants(const program *q, const double *g, double *a, const mt_
     }
 }
 
+static int is_complete(const network *w, const mt_rates *a)
+{
+    int some = a->by_c || a->by_T || a->by_p, every = a->by_c && a->by_T && (a->by_p || !w->laws.parameters);
+    return a->c && a->T && (a->p || !w->laws.parameters) && a->rate && some == every;
+}
+
 int mt_evaluate(const mt_network *w, const mt_rates *all)
 {
     desk d;
-    if (!w || !all || all->n < 0)
+    if (!w || !all || all->n < 0 || !is_complete(w, all))
         return MT_BAD_REQUEST;
     const program *q = &w->laws;
     if (!desk_open(&d, w, q->registers))
@@ -43,7 +49,8 @@ int mt_evaluate(const mt_network *w, const mt_rates *all)
         for (int t = 0; t < q->terms; t++) {
             reverse(q, t, d.registers, d.adjoints);
             for (int m = q->entry_start[t]; m < q->entry_start[t + 1]; m++)
-                by_c[(ptrdiff_t)t * w->all + w->present[q->entry_leaf[m]]] = d.adjoints[q->entry_leaf[m]];
+                if (q->entry_read[m])
+                    by_c[(ptrdiff_t)t * w->all + w->present[q->entry_leaf[m]]] = d.adjoints[q->entry_leaf[m]];
         }
         by_constants(q, d.registers, a, all, row);
     }
@@ -55,7 +62,7 @@ int mt_step(const mt_network *w, int method_number, const double *feed, double T
             double h, double *after, double *error)
 {
     desk d;
-    if (!w || !feed || !c || !after || !error || method_number < 0 || method_number > 1)
+    if (!w || !feed || (!p && w->laws.parameters) || !c || !after || !error || method_number < 0 || method_number > 1)
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;

@@ -56,6 +56,8 @@ typedef struct {
     int32_t *order;               /* (n) pivots */
     int32_t *lower_start, *lower; /* (n + 1) by pivot in order; rows below it */
     int32_t *upper_start, *upper; /* (n + 1) by pivot in order; columns right of it */
+    int32_t *lower_column, *upper_row;
+    int32_t *lower_at, *upper_at; /* their places in the matrix */
     int32_t *row_start, *column;  /* (n + 1) the pattern itself */
     int32_t *memory;
 } elimination;
@@ -70,6 +72,10 @@ struct mt_network {
     const int32_t *gain_start;       /* (reactions + 1) */
     const int32_t *gain_species;
     const double *gain, *finer;      /* coefficient, and what it lost in rounding */
+    int plain;                       /* each reaction is one term, forwards: nothing to net */
+    int32_t *maker_start, *maker;    /* (species + 1): the reactions that change a species */
+    double *made;                    /* and its coefficients there */
+    int n_starved;
     const int32_t *net_start;        /* (reactions + 1): derivatives that a reaction has */
     const int32_t *net_leaf;
     const int32_t *entry_net;        /* (entries) where each derivative of a term is netted */
@@ -87,7 +93,7 @@ struct mt_network {
     const double *whole_gain;        /* (terms of whole, absent) */
     elimination plan;
     int nets;                        /* length of net_leaf */
-    void *memory[3];
+    void *memory[4];
 };
 typedef struct mt_network network;
 
@@ -101,6 +107,9 @@ typedef struct {
     double *lifted, *share, *rise;
     double *depth_steady, *depth_moving;
     double *jacobian, *matrix, *factors, *diagonal, *probe;
+    double *lower, *upper;           /* the factors, packed in the order of substitution */
+    double *known_at, *known_slope;  /* the last slope of an explicit step, and where it was taken */
+    int known;
     int32_t *pivots;
     int dense;                       /* the last matrix was factored with pivoting */
     double *row_scale, *column_scale;

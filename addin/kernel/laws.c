@@ -174,16 +174,20 @@ int takes_odd_root(desk *d, laws l, const double *c)
 void gains(desk *d, const double *r, double *out)
 {
     const network *w = d->net;
-    double *net = d->net_r;
-    for (int j = 0; j < w->reactions; j++)
-        net[j] = 0.0;
-    for (int t = 0; t < w->laws.terms; t++)
-        net[w->owner[t]] += w->sign[t] * r[t];
-    for (int i = 0; i < w->species; i++)
-        out[i] = 0.0;
-    for (int j = 0; j < w->reactions; j++)
-        for (int k = w->gain_start[j]; k < w->gain_start[j + 1]; k++)
-            out[w->gain_species[k]] += w->gain[k] * net[j];
+    const double *net = r;
+    if (!w->plain) {
+        for (int j = 0; j < w->reactions; j++)
+            d->net_r[j] = 0.0;
+        for (int t = 0; t < w->laws.terms; t++)
+            d->net_r[w->owner[t]] += w->sign[t] * r[t];
+        net = d->net_r;
+    }
+    for (int i = 0, k = 0; i < w->species; i++) {
+        double sum = 0.0;
+        for (; k < w->maker_start[i + 1]; k++)
+            sum += w->made[k] * net[w->maker[k]];
+        out[i] = sum;
+    }
 }
 
 /* The sum of the sizes of all terms, by species. */

@@ -119,9 +119,9 @@ static void list_factors(elimination *p, const uint8_t *mark, const int32_t *ran
         p->lower_start[step] = low, p->upper_start[step] = up;
         for (int i = 0; i < S; i++) {
             if (rank[i] > step && mark[(size_t)i * S + k])
-                p->lower[low++] = i;
+                p->lower_at[low] = i * S + k, p->lower_column[low] = k, p->lower[low++] = i;
             if (rank[i] > step && mark[(size_t)k * S + i])
-                p->upper[up++] = i;
+                p->upper_at[up] = k * S + i, p->upper_row[up] = k, p->upper[up++] = i;
         }
     }
     p->lower_start[S] = low, p->upper_start[S] = up;
@@ -146,7 +146,7 @@ int plan_elimination(elimination *p, const network *w)
             int64_t length = write_program(mark, order, rank, S, NULL);
             int with_fill = count(mark, (int64_t)places);
             p->memory = length > INT32_MAX ? NULL
-                                           : malloc(((size_t)length + 4 * (size_t)S + 3 + 2 * (size_t)with_fill +
+                                           : malloc(((size_t)length + 4 * (size_t)S + 3 + 6 * (size_t)with_fill +
                                                      (size_t)filled) * sizeof *p->memory);
             if (p->memory) {
                 p->length = (int)length;
@@ -157,7 +157,11 @@ int plan_elimination(elimination *p, const network *w)
                 p->row_start = p->upper_start + S + 1;
                 p->lower = p->row_start + S + 1;
                 p->upper = p->lower + with_fill;
-                p->column = p->upper + with_fill;
+                p->lower_at = p->upper + with_fill;
+                p->upper_at = p->lower_at + with_fill;
+                p->lower_column = p->upper_at + with_fill;
+                p->upper_row = p->lower_column + with_fill;
+                p->column = p->upper_row + with_fill;
                 memcpy(p->order, order, (size_t)S * sizeof *order);
                 write_program(mark, order, rank, S, p->program);
                 list_factors(p, mark, rank);
@@ -197,26 +201,28 @@ static void eliminate(const elimination *p, double *m, double *diagonal)
     }
 }
 
-static void solve_sparse(const desk *d, double *b)
+/* Lines the factors up in the order in which substitution reads them, rows of the upper one over their pivots. */
+static void pack(desk *d)
 {
     const elimination *p = &d->net->plan;
-    const double *m = d->factors;
-    int S = p->n;
-    for (int step = 0; step < S; step++) {
-        int k = p->order[step];
-        double x = b[k];
-        if (x != 0)
-            for (int e = p->lower_start[step]; e < p->lower_start[step + 1]; e++)
-                b[p->lower[e]] -= m[(ptrdiff_t)p->lower[e] * S + k] * x;
-    }
-    for (int step = S - 1; step >= 0; step--) {
-        int k = p->order[step];
-        const double *row = m + (ptrdiff_t)k * S;
-        double x = b[k];
-        for (int e = p->upper_start[step]; e < p->upper_start[step + 1]; e++)
-            x -= row[p->upper[e]] * b[p->upper[e]];
-        b[k] = x * d->diagonal[k];
-    }
+    for (int e = 0; e < p->lower_start[p->n]; e++)
+        d->lower[e] = d->factors[p->lower_at[e]];
+    for (int e = 0; e < p->upper_start[p->n]; e++)
+        d->upper[e] = d->factors[p->upper_at[e]] * d->diagonal[p->upper_row[e]];
+}
+
+/* One flat loop each way: nested loops of two or three rounds are mostly mispredicted branches. */
+static void solve_sparse(const desk *d, double *restrict b)
+{
+    const elimination *p = &d->net->plan;
+    const double *restrict lower = d->lower, *restrict upper = d->upper, *restrict diagonal = d->diagonal;
+    int S = p->n, n_lower = p->lower_start[S], n_upper = p->upper_start[S];
+    for (int e = 0; e < n_lower; e++)
+        b[p->lower[e]] -= lower[e] * b[p->lower_column[e]];
+    for (int i = 0; i < S; i++)
+        b[i] *= diagonal[i];
+    for (int e = 0; e < n_upper; e++)
+        b[p->upper_row[n_upper - 1 - e]] -= upper[n_upper - 1 - e] * b[p->upper[n_upper - 1 - e]];
 }
 
 /* Rows and columns scaled (unknowns relative to `size`, rows to their largest entry), rows exchanged. */
@@ -311,6 +317,7 @@ void factor_and_solve(desk *d, const double *matrix, const double *size, double 
     eliminate(&d->net->plan, d->factors, d->diagonal);
     memcpy(d->probe, b, S * sizeof *b);
     d->dense = 0;
+    pack(d);
     solve_sparse(d, b);
     if (is_solution(d, matrix, b, d->probe))
         return;

@@ -36,7 +36,8 @@ enum {
     MT_STEP_TOO_SMALL = 12
 };
 
-/* What a call returns. */
+/* What a call returns; mt_solve_tanks returns more than MT_DONE: how many of its answers call for a second
+ * look, being refused, doubtful beyond a relative 1e-10, faded, or with species used up. */
 enum { MT_DONE = 0, MT_NO_MEMORY = -1, MT_BAD_REQUEST = -2 };
 
 typedef struct mt_network mt_network;

@@ -68,6 +68,32 @@ static const int32_t *starts(reader *in, int rows, int64_t total_known, int *tot
     return s;
 }
 
+/* Reverse mode passes on only what has arrived: every edge starts at a register that the term's own result or an
+ * edge before it has reached, `first` says truly whether it is the first to reach its end, and derivatives are
+ * read where something has arrived. Else a term would be handed what another one, or nobody, has left there. */
+static void check_paths(reader *in, const program *q)
+{
+    int32_t *reached = in->bad ? NULL : calloc((size_t)q->registers, sizeof *reached); /* by which term, from 1 */
+    if (!reached) {
+        in->bad = 1;
+        return;
+    }
+    for (int t = 0; t < q->terms; t++) {
+        int32_t mark = t + 1;
+        reached[q->output[t]] = mark;
+        for (int k = q->path_start[t]; k < q->path_start[t + 1]; k++) {
+            const edge *e = q->path + k;
+            if (reached[e->target] != mark || e->first != (reached[e->source] != mark))
+                in->bad = 1;
+            reached[e->source] = mark;
+        }
+        for (int k = q->entry_start[t]; k < q->entry_start[t + 1]; k++)
+            if (q->entry_read[k] && reached[q->entry_leaf[k]] != mark)
+                in->bad = 1;
+    }
+    free(reached);
+}
+
 static void read_program(reader *in, program *q)
 {
     int first_result = q->leaves + 1 + q->parameters + q->literals, count = q->prelude + q->body, total;
@@ -92,6 +118,7 @@ static void read_program(reader *in, program *q)
     q->entry_leaf = ints(in, total, 0, q->leaves - 1, NULL);
     q->entry_read = ints(in, total, 0, 1, NULL);
     q->literal = reals(in, q->literals);
+    check_paths(in, q);
 }
 
 static void read_cut(reader *in, const network *w, cut *c)
@@ -157,6 +184,33 @@ static void read_flags(reader *in, network *w, uint8_t *flags)
     }
 }
 
+/* The same coefficients by species: what a species gains is summed in a register, not in memory. */
+static int list_makers(network *w)
+{
+    int S = w->species, total = w->gain_start[w->reactions], at = 0;
+    double *made = malloc((size_t)total * (sizeof(double) + sizeof(int32_t)) + ((size_t)S + 1) * sizeof(int32_t));
+    w->memory[3] = made;
+    if (!made)
+        return 0;
+    w->made = made;
+    w->maker = (int32_t *)(made + total);
+    w->maker_start = w->maker + total;
+    for (int i = 0; i < S; i++) {
+        w->maker_start[i] = at;
+        for (int j = 0; j < w->reactions; j++)
+            for (int k = w->gain_start[j]; k < w->gain_start[j + 1]; k++)
+                if (w->gain_species[k] == i)
+                    w->maker[at] = j, made[at++] = w->gain[k];
+    }
+    w->maker_start[S] = at;
+    w->plain = w->laws.terms == w->reactions;
+    for (int t = 0; t < w->laws.terms; t++)
+        w->plain &= w->owner[t] == t && w->sign[t] == 1;
+    for (int i = 0; i < S; i++)
+        w->n_starved += w->starved[i];
+    return 1;
+}
+
 static int read_network(reader *in, network *w)
 {
     const int32_t *h = ints(in, 13, 0, MOST, NULL);
@@ -168,6 +222,8 @@ static int read_network(reader *in, network *w)
     if (w->all > MOST_SPECIES || w->species > w->all || w->absent > w->all)
         return 0;
     w->unique = h[9], w->n_totals = h[10], w->has_whole = h[11], w->absent = h[12];
+    if (w->n_totals > w->all) /* a basis of totals has no more; a desk has room for their square */
+        return 0;
     w->present = ints(in, w->species, 0, w->all - 1, NULL);
     read_program(in, q);
     int entries = in->bad ? 0 : q->entry_start[q->terms], total;
@@ -214,7 +270,7 @@ mt_network *mt_network_new(const int32_t *given, int64_t n_ints, const double *n
     memcpy(i, given, (size_t)n_ints * sizeof(int32_t));
     w->memory[0] = copy;
     reader in = {i, i + n_ints, x, x + n_reals, 0};
-    if (!read_network(&in, w) || !plan_elimination(&w->plan, w)) {
+    if (!read_network(&in, w) || !list_makers(w) || !plan_elimination(&w->plan, w)) {
         mt_network_free(w);
         return NULL;
     }
@@ -226,7 +282,7 @@ void mt_network_free(mt_network *w)
     if (!w)
         return;
     forget_elimination(&w->plan);
-    for (int k = 0; k < 3; k++)
+    for (int k = 0; k < 4; k++)
         free(w->memory[k]);
     free(w);
 }
@@ -247,7 +303,7 @@ int desk_open(desk *d, const network *w, int64_t extra)
     int64_t whole = w->has_whole ? 2 * (int64_t)w->whole.registers + (int64_t)w->absent * (w->absent + 4) : 0;
     int64_t sums = (int64_t)w->n_totals * (w->n_totals + 6) + S;
     int64_t need = 2 * (int64_t)w->laws.registers + F + entries + R + w->nets + S + 2 * cuts + w->steady.n +
-                   w->moving.n + 3 * S * S + (21 + 60) * S + whole + sums + 2 * w->n_totals + 64 + extra;
+                   w->moving.n + 3 * S * S + (21 + 60) * S + whole + sums + 2 * S + w->plan.lower_start[S] + w->plan.upper_start[S] + 2 * w->n_totals + 64 + extra;
     memset(d, 0, sizeof *d);
     d->net = w;
     d->memory = malloc((size_t)need * sizeof(double));
@@ -274,6 +330,10 @@ int desk_open(desk *d, const network *w, int64_t extra)
     d->factors = take(d, S * S);
     d->diagonal = take(d, S);
     d->probe = take(d, S);
+    d->lower = take(d, w->plan.lower_start[S]);
+    d->upper = take(d, w->plan.upper_start[S]);
+    d->known_at = take(d, S);
+    d->known_slope = take(d, S);
     d->row_scale = take(d, S);
     d->column_scale = take(d, S);
     d->stages = take(d, 12 * S);

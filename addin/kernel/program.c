@@ -24,6 +24,9 @@ void bind_case(const program *q, double *g, double T, const double *p)
     run(q, 0, q->prelude, g, 0);
 }
 
+/* rint without its library call; what is too large for an int has no fraction. */
+static int is_whole(double y) { return !(y > -1e9 && y < 1e9) || y == (double)(int)y; }
+
 /* x^y with the odd continuation -(-x)^y of fractional powers below zero; `strict`: nan there. */
 static double power(double x, double y, int strict)
 {
@@ -31,7 +34,7 @@ static double power(double x, double y, int strict)
         return x;
     if (y == 2)
         return x * x;
-    if (x >= 0 || y == rint(y))
+    if (x >= 0 || is_whole(y))
         return y == 0.5 ? sqrt(x) : pow(x, y);
     return strict ? NAN : -pow(-x, y);
 }
@@ -81,7 +84,7 @@ static double power_slope(double x, double y, double z)
         double q = y * (z / x);
         return z > 1e-290 && q < 1e290 && q > -1e290 ? q : y * pow(x, y - 1.0);
     }
-    return y * pow(y == rint(y) ? x : -x, y - 1.0);
+    return y * pow(is_whole(y) ? x : -x, y - 1.0);
 }
 
 static double exponent_slope(double x, double y, double z) { return x == 0 && y > 0 ? 0.0 : z * log(x); }
@@ -132,7 +135,7 @@ static void curvature(int op, double x, double y, double z, double *xx, double *
     case DIV: *xy = -1.0 / (y * y), *yy = 2.0 * z / (y * y); break;
     case POW:
         if (y != 0 && y != 1)
-            *xx = y * (y - 1.0) * power(fabs(x), y - 2.0, 0) * (x < 0 && y != rint(y) ? -1.0 : 1.0);
+            *xx = y * (y - 1.0) * power(fabs(x), y - 2.0, 0) * (x < 0 && !is_whole(y) ? -1.0 : 1.0);
         if (x > 0)
             *xy = pow(x, y - 1.0) * (1.0 + y * log(x)), *yy = z * log(x) * log(x);
         break;

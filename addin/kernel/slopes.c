@@ -16,6 +16,7 @@
 #define SHARE_OF_DEPTH 0.1
 #define STEADY_NOTHING 1e-200
 #define NO_COLUMN -1
+#define LOW 1e6
 
 /* Columns are numbered: feed of species 0.., tau, T, parameter 0.. */
 typedef struct {
@@ -226,11 +227,16 @@ static void tank_slopes(desk *d, tangents *x, const mt_slopes *all, int64_t row,
     d->next = keep;
 }
 
+static int is_complete(const network *w, const mt_slopes *a)
+{
+    return a->feed && a->tau && a->T && (a->p || !w->laws.parameters) && a->slope && a->status;
+}
+
 int mt_tank_slopes(const mt_network *w, const mt_slopes *all)
 {
     desk d;
     tangents x;
-    if (!w || !all || all->n < 0 || !all->outlet)
+    if (!w || !all || all->n < 0 || !is_complete(w, all) || !all->outlet)
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, tangent_room(w)))
         return MT_NO_MEMORY;
@@ -247,6 +253,7 @@ typedef struct {
     tangents x;
     flow f;
     double *s, *stages, *u, *now, *out;
+    uint8_t *ended; /* (species) used up: its laws are cut */
 } carried;
 
 /* u = c + sum of weights times stages */
@@ -321,6 +328,51 @@ static void carry_stiff(carried *y, const double *c, double h, const double *lea
     }
 }
 
+/* dc/dt once species i has settled where its laws are cut: as much is taken of it as is supplied. */
+static void settled_slope(carried *y, double *c, int i, double top, double *out)
+{
+    desk *d = y->x.d;
+    double before = c[i], low = log(1e-290), high = log(top > 1e-280 ? top : 1e-280);
+    for (int k = 0; k < 60; k++) {
+        double middle = 0.5 * (low + high);
+        c[i] = exp(middle);
+        flow_slope(d, &y->f, c, out);
+        if (out[i] < 0)
+            high = middle;
+        else
+            low = middle;
+    }
+    c[i] = before;
+}
+
+/* Where a species has just been used up the laws change, and the time at which they do changes with every
+ * number: s jumps by (f- - f+) dt*, dt* = -s_i/f_i-, and what is left of the species depends on nothing.
+ */
+static int cross_ends(carried *y, stepper *s)
+{
+    desk *d = y->x.d;
+    const network *w = d->net;
+    const cut *r = &w->moving;
+    int S = w->species, crossed = 0;
+    for (int k = 0; k < r->n; k++) {
+        int i = r->species[k], low = w->ends[i] && s->c[i] < LOW * d->depth_moving[k];
+        if (!low || y->ended[i]) {
+            y->ended[i] = (uint8_t)low;
+            continue;
+        }
+        y->ended[i] = 1, crossed = 1;
+        flow_slope(d, &y->f, s->before, y->u);
+        settled_slope(y, s->c, i, s->before[i], y->now);
+        for (int q = 0; q < y->x.columns && y->u[i] != 0; q++) {
+            double *column = y->s + (ptrdiff_t)q * S, shift = -column[i] / y->u[i];
+            for (int m = 0; m < S; m++)
+                column[m] += (y->u[m] - y->now[m]) * shift;
+            column[i] = 0.0;
+        }
+    }
+    return crossed;
+}
+
 static void write_tube(const network *w, const mt_slopes *all, int64_t row, carried *y, int fine)
 {
     int S = w->species;
@@ -342,15 +394,16 @@ static void tube_slopes(desk *d, carried *y, stepper *s, double *least, double *
         if (w->ends[w->moving.species[k]])
             least[w->moving.species[k]] = SHARE_OF_DEPTH * d->depth_moving[k];
     y->f = (flow){{&w->moving, d->depth_moving}, feed, 0.0};
-    tolerance o = {{1e-10, 1e-9}, least, scale};
+    tolerance o = {{1e-8, 1e-8}, least, scale};
+    memset(y->ended, 0, (size_t)S);
     memset(y->s, 0, (size_t)y->x.columns * (size_t)S * sizeof *y->s);
     for (int i = 0; i < S; i++)
         y->s[(ptrdiff_t)i * S + i] = 1.0;
     stepper_start(d, s, &y->f, &o, NULL, feed, MOST_STEPS, EXPLICIT);
     while (s->active && s->t < tau && tau - s->t > 1e-15 * tau) {
         s->h = fmin(s->h, tau - s->t);
-        if (!attempt(d, s))
-            continue;
+        if (!attempt(d, s) || cross_ends(y, s))
+            continue; /* a step across an end is as good as none for them: it is short beside all others */
         if (s->last_mode == EXPLICIT)
             carry_explicit(y, s->before, s->stride);
         else
@@ -369,13 +422,14 @@ int mt_tube_slopes(const mt_network *w, const mt_slopes *all)
     desk d;
     carried y;
     stepper s;
-    if (!w || !all || all->n < 0)
+    if (!w || !all || all->n < 0 || !is_complete(w, all))
         return MT_BAD_REQUEST;
     int64_t S = w->species, columns = S + 1 + w->laws.parameters;
     if (!desk_open(&d, w, tangent_room(w) + columns * S * 13))
         return MT_NO_MEMORY;
     open_tangents(&y.x, &d, (laws){&w->moving, d.depth_moving});
     y.s = take(&d, columns * S), y.stages = take(&d, columns * S * 12);
+    y.ended = (uint8_t *)take(&d, S);
     y.u = take(&d, S), y.now = take(&d, S), y.out = take(&d, S);
     s.c = take(&d, S), s.before = take(&d, S), s.after = take(&d, S), s.error = take(&d, S);
     double *least = take(&d, S), *feed = take(&d, S);

@@ -261,7 +261,7 @@ int invaded(desk *d, double T, const double *p, const double *c, double tau)
         reverse(q, t, g, adjoints);
         for (int e = q->entry_start[t]; e < q->entry_start[t + 1]; e++)
             for (int b = 0; b < n; b++)
-                if (w->absent_species[b] == q->entry_leaf[e])
+                if (q->entry_read[e] && w->absent_species[b] == q->entry_leaf[e])
                     for (int a = 0; a < n; a++) {
                         double gain = w->whole_gain[(ptrdiff_t)t * n + a];
                         if (gain != 0)

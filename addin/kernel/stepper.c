@@ -45,11 +45,9 @@ double missed(desk *d, const tolerance *o, const flow *f, const double *error, c
               const double *after, int kind, int *finite)
 {
     const network *w = d->net;
-    int S = w->species, any_starved = 0;
+    int S = w->species, any_starved = w->n_starved;
     double *keep = d->next, *net = take(d, S), *gross = take(d, S), worst = 0.0;
     *finite = 1;
-    for (int i = 0; i < S; i++)
-        any_starved |= w->starved[i];
     if (any_starved)
         flow_balance(d, f, before, net, gross);
     for (int i = 0; i < S; i++) {
@@ -76,7 +74,7 @@ double leaked(desk *d, const tolerance *o, const flow *f, const double *before, 
 {
     const network *w = d->net;
     int S = w->species, any = 0;
-    for (int i = 0; i < S; i++)
+    for (int i = 0; w->n_starved && i < S; i++)
         any |= w->starved[i] && before[i] < LOW / SHARE_OF_DEPTH * o->least[i];
     if (!any)
         return 0.0;
@@ -87,7 +85,8 @@ double leaked(desk *d, const tolerance *o, const flow *f, const double *before, 
         if (!w->starved[i] || !(before[i] < LOW / SHARE_OF_DEPTH * o->least[i]))
             continue;
         double gain = fabs(slope[i]) * h / (LEAK * o->relative[STIFF] * o->scale);
-        if (net[i] > FALLS * gross[i] && after[i] < before[i])
+        int rises = net[i] > FALLS * gross[i] && net[i] * h > LOW / SHARE_OF_DEPTH * o->least[i];
+        if (rises && after[i] < before[i])
             gain = INFINITY;
         worst = gain > worst ? gain : worst;
     }
@@ -129,6 +128,7 @@ void stepper_start(desk *d, stepper *s, const flow *f, const tolerance *o, const
     for (int i = 0; i < S; i++)
         largest = fabs(c[i]) > largest ? fabs(c[i]) : largest;
     s->largest = largest > 0 ? largest : INFINITY;
+    d->known = 0;
     s->h = first_step(d, f, c);
 }
 

@@ -15,11 +15,25 @@
 
 #define NOTHING 1e-10 /* of the least concentration: a species at zero is measured by what a step makes */
 
-int step_stiff(desk *d, const flow *f, const double *c, double h, const double *least, double *after, double *error,
-               double *stiffness)
+#define K(j) stages[(j) * (ptrdiff_t)S + i]
+#define A(k, j) RODAS5P_A[k][j] * K(j)
+#define C(k, j) RODAS5P_C[k][j] * K(j)
+#define STAGE(k, point, sum)                                                                                         \
+    do {                                                                                                             \
+        double *stage = stages + (k) * (ptrdiff_t)S;                                                                 \
+        for (int i = 0; i < S; i++)                                                                                  \
+            u[i] = (point), stage[i] = (sum);                                                                        \
+        flow_slope(d, f, u, slope);                                                                                  \
+        for (int i = 0; i < S; i++)                                                                                  \
+            stage[i] = slope[i] + stage[i] * per;                                                                    \
+        solve(d, stage);                                                                                             \
+    } while (0)
+
+int step_stiff(desk *d, const flow *f, const double *restrict c, double h, const double *least,
+               double *restrict after, double *restrict error, double *stiffness)
 {
     int S = d->net->species;
-    double *stages = d->stages, *u = d->a, *slope = d->a + S, *size = d->b, per = 1.0 / h;
+    double *restrict stages = d->stages, *restrict u = d->a, *restrict slope = d->a + S, *size = d->b, per = 1.0 / h;
     (void)stiffness; /* it does not matter here */
     flow_linear(d, f, c, slope, d->matrix);
     for (int i = 0; i < S * S; i++)
@@ -31,29 +45,16 @@ int step_stiff(desk *d, const flow *f, const double *c, double h, const double *
     }
     memcpy(stages, slope, (size_t)S * sizeof *slope);
     factor_and_solve(d, d->matrix, size, stages);
-    memcpy(u, c, (size_t)S * sizeof *c);
-    for (int k = 1; k < 8; k++) {
-        double *stage = stages + (ptrdiff_t)k * S;
-        if (k < 6) {
-            memcpy(u, c, (size_t)S * sizeof *c);
-            for (int j = 0; j < k; j++)
-                for (int i = 0; i < S; i++)
-                    u[i] += RODAS5P_A[k][j] * stages[(ptrdiff_t)j * S + i];
-        } else
-            for (int i = 0; i < S; i++)
-                u[i] += stages[(ptrdiff_t)(k - 1) * S + i];
-        flow_slope(d, f, u, slope);
-        for (int i = 0; i < S; i++)
-            stage[i] = 0.0;
-        for (int j = 0; j < k; j++)
-            for (int i = 0; i < S; i++)
-                stage[i] += RODAS5P_C[k][j] * stages[(ptrdiff_t)j * S + i];
-        for (int i = 0; i < S; i++)
-            stage[i] = slope[i] + stage[i] * per;
-        solve(d, stage);
-    }
+    STAGE(1, c[i] + A(1, 0), C(1, 0));
+    STAGE(2, c[i] + A(2, 0) + A(2, 1), C(2, 0) + C(2, 1));
+    STAGE(3, c[i] + A(3, 0) + A(3, 1) + A(3, 2), C(3, 0) + C(3, 1) + C(3, 2));
+    STAGE(4, c[i] + A(4, 0) + A(4, 1) + A(4, 2) + A(4, 3), C(4, 0) + C(4, 1) + C(4, 2) + C(4, 3));
+    STAGE(5, c[i] + A(5, 0) + A(5, 1) + A(5, 2) + A(5, 3) + A(5, 4),
+          C(5, 0) + C(5, 1) + C(5, 2) + C(5, 3) + C(5, 4));
+    STAGE(6, u[i] + K(5), C(6, 0) + C(6, 1) + C(6, 2) + C(6, 3) + C(6, 4) + C(6, 5));
+    STAGE(7, u[i] + K(6), C(7, 0) + C(7, 1) + C(7, 2) + C(7, 3) + C(7, 4) + C(7, 5) + C(7, 6));
     for (int i = 0; i < S; i++) {
-        error[i] = stages[7 * (ptrdiff_t)S + i];
+        error[i] = K(7);
         after[i] = u[i] + error[i];
     }
     return 1;

@@ -8,6 +8,7 @@
 #define DEPTH 1e-30
 #define ZERO_ORDER 1e-9
 #define LOW 1e6
+#define RELIABLE 1e-10 /* beyond which more digits are called for */
 #define BELIEVED 1e-8  /* estimated relative error beyond which an answer is withheld */
 #define CLOSED 1e-12   /* residual over the sum of a balance's terms */
 #define INVARIANT 1e-9 /* of the sum of a total's terms */
@@ -192,12 +193,25 @@ static void settle(job *j)
     j->out.status = status;
 }
 
-static void store(const job *j)
+/* Numbers that are none may come in where no law looks at them; they don't go out as an answer. */
+static int is_answer(const job *j)
+{
+    if (j->out.status != MT_OK || j->out.faded)
+        return 0;
+    for (int i = 0; i < j->d->net->species; i++)
+        if (!isfinite(j->c[i]))
+            return 0;
+    return 1;
+}
+
+static void store(job *j)
 {
     const network *w = j->d->net;
     const mt_tanks *a = j->all;
     int64_t row = j->row;
-    int fine = j->out.status == MT_OK && !j->out.faded;
+    int fine = is_answer(j);
+    if (!fine && !j->out.faded && j->out.status == MT_OK)
+        j->out.status = MT_NOT_FINITE;
     double *c = a->c + row * w->all;
     uint8_t *used = a->exhausted + row * w->all;
     for (int i = 0; i < w->all; i++) {
@@ -276,17 +290,35 @@ static void solve_one(job *j, int64_t row)
     store(j);
 }
 
+static int is_complete(const network *w, const mt_tanks *a)
+{
+    return a->how >= MT_FROM_FEED && a->how <= MT_CHECK_ONLY && a->feed && a->tau && a->T && (a->p || !w->laws.parameters) &&
+           a->c && a->status && a->from_start && a->faded && a->exhausted && a->residual && a->condition && a->error &&
+           a->root && a->iterations && a->work;
+}
+
+static int needs_second_look(const job *j)
+{
+    int used_up = 0;
+    for (int i = 0; i < j->d->net->species; i++)
+        used_up |= j->gone[i];
+    return j->out.status != MT_OK || j->out.faded || used_up || !(j->error <= RELIABLE);
+}
+
 int mt_solve_tanks(const mt_network *w, const mt_tanks *all)
 {
     desk d;
     job j;
-    if (!w || !all || all->n < 0)
+    if (!w || !all || all->n < 0 || !is_complete(w, all))
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;
     open_job(&j, &d, all);
-    for (int64_t row = 0; row < all->n; row++)
+    int doubtful = 0;
+    for (int64_t row = 0; row < all->n; row++) {
         solve_one(&j, row);
+        doubtful += needs_second_look(&j) && doubtful < INT32_MAX;
+    }
     desk_close(&d);
-    return MT_DONE;
+    return doubtful;
 }

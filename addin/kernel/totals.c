@@ -3,6 +3,7 @@
 
 /* Of a total's terms: more than this is no rounding and must show. */
 #define DRIFT 1e-4
+#define ROUNDED 1.2e-16 /* of the terms: no double is nearer */
 #define DEPENDENT 1e-12 /* a total that the others determine */
 
 static double weigh(const double *weights, const double *c, int n)
@@ -82,7 +83,7 @@ void restore(desk *d, const totals *t, double *c, double time)
             terms += fabs(row[i] * c[i]);
         }
         off[k] = sum - now;
-        needed |= off[k] != 0;
+        needed |= fabs(off[k]) > ROUNDED * terms;
         near &= fabs(off[k]) <= DRIFT * terms;
     }
     for (int i = 0; i < S; i++)

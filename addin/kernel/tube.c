@@ -16,10 +16,11 @@
 #define ZERO_ORDER 1e-9
 #define SHARE_OF_DEPTH 0.1
 #define LOW 1e6
+#define SUMMED (16 * EPSILON) /* of the feed: rounding of the steps that a law of order zero takes from it */
 #define GENEROUS 4.0 /* misses of a shorter step that are taken */
 
 /* Error of a step, explicit and stiff; the sum of all stays below 1e-8. */
-static const double RELATIVE[2] = {1e-10, 1e-9};
+static const double RELATIVE[2] = {1e-8, 1e-8};
 
 typedef struct {
     desk *d;
@@ -197,7 +198,8 @@ static int check_point(run_state *u, double asked, double *c)
     int S = w->species, negative = 0, finite = 1, lost = 0;
     for (int k = 0; k < w->moving.n; k++) {
         int i = w->moving.species[k];
-        if (c[i] < LOW * d->depth_moving[k] && w->ends[i])
+        int rounding = w->starved[i] && c[i] < SUMMED * u->feed[i];
+        if ((c[i] < LOW * d->depth_moving[k] || rounding) && w->ends[i])
             c[i] = 0.0;
     }
     for (int i = 0; i < S; i++) {
@@ -247,7 +249,13 @@ static void check(run_state *u)
         int32_t *status = a->status + u->row * a->m + m;
         for (int i = 0; i < w->species; i++)
             u->point[i] = c[w->present[i]];
-        *status = *status < 0 ? stopped(u) : asked > 0 ? check_point(u, asked, u->point) : MT_OK;
+        *status = *status < 0  ? stopped(u)
+                  : asked > 0  ? check_point(u, asked, u->point)
+                  : asked == 0 ? MT_OK
+                               : MT_NOT_FINITE; /* no residence time: less than none, or no number */
+        for (int i = 0; i < w->all && *status == MT_OK; i++)
+            if (!isfinite(c[i]))
+                *status = MT_NOT_FINITE;
         for (int i = 0; i < w->all && *status != MT_OK; i++)
             c[i] = NAN;
         if (*status == MT_OK)
@@ -287,7 +295,8 @@ int mt_solve_tubes(const mt_network *w, const mt_tubes *all)
 {
     desk d;
     run_state u;
-    if (!w || !all || all->n < 0 || all->m < 0)
+    if (!w || !all || all->n < 0 || all->m < 0 || !all->feed || !all->asked || !all->T ||
+        (!all->p && w->laws.parameters) || !all->c || !all->status || !all->exhausted_at || !all->steps || !all->work)
         return MT_BAD_REQUEST;
     if (!desk_open(&d, w, 0))
         return MT_NO_MEMORY;

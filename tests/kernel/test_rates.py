@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from kernel_cases import case, network
 
-from moletally.kernel.arithmetic import DECIMALS, DIGITS
+from moletally.kernel.decimals import DECIMALS, DIGITS
 from moletally.kernel.evaluate import derivatives, evaluate
 from moletally.kernel.program import Builder, Op
 from moletally.kernel.rates import Bound, tape_of

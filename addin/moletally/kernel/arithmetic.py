@@ -1,4 +1,4 @@
-"""What the operations of a program mean for floats, for arrays of cases and for long decimals.
+"""What the operations of a program mean for floats and for arrays of cases.
 
 A table has a function of two arguments for each Op, by its number; unary operations ignore the second.
 Nothing raises: where a law is undefined the result is nan or inf, and the callers look for that.
@@ -8,7 +8,6 @@ zero. `STRICT` has nan there; answers are checked with it.
 
 import math
 from collections.abc import Callable
-from decimal import Context, Decimal
 from typing import Any, TypeAlias
 
 import numpy as np
@@ -16,8 +15,7 @@ import numpy as np
 from moletally.kernel.program import Op
 
 __all__ = [
-    "ARRAYS", "ARRAY_SLOPES", "DECIMALS", "DECIMAL_SLOPES", "DIGITS", "FLOATS", "FLOAT_SLOPES", "STRICT",
-    "Slopes", "Table", "Value",
+    "ARRAYS", "ARRAY_SLOPES", "FLOATS", "FLOAT_SLOPES", "STRICT", "Slopes", "Table", "Value", "slopes", "table",
 ]  # fmt: skip
 
 # A register may hold a float, an array of cases or a Decimal: what they share is arithmetic.
@@ -26,11 +24,9 @@ Table: TypeAlias = tuple[Callable[[Value, Value], Value], ...]
 Slope: TypeAlias = Callable[[Value, Value, Value], Value] | None
 Slopes: TypeAlias = tuple[tuple[Slope, ...], tuple[Slope, ...]]
 
-# For DECIMALS to run in (decimal.localcontext): long enough for a condition of 1e30.
-DIGITS = Context(prec=50, Emin=-(10**8), Emax=10**8)
 
-
-def _table(**functions: Callable[[Value, Value], Value]) -> Table:
+def table(**functions: Callable[[Value, Value], Value]) -> Table:
+    """Functions in the order of Op."""
     return tuple(functions[op.name] for op in Op)
 
 
@@ -67,7 +63,7 @@ def _root(x: float) -> float:
     return math.sqrt(x) if x >= 0 else (-math.sqrt(-x) if x < 0 else math.nan)
 
 
-FLOATS: Table = _table(
+FLOATS: Table = table(
     ADD=lambda x, y: x + y,
     SUB=lambda x, y: x - y,
     MUL=lambda x, y: x * y,
@@ -111,29 +107,8 @@ _ARRAY_FUNCTIONS: dict[str, Callable[[Value, Value], Value]] = {
     "LOG10": lambda x, _: np.log10(x),
     "ABS": lambda x, _: np.abs(x),
 }
-ARRAYS: Table = _table(**_ARRAY_FUNCTIONS)
-STRICT: Table = _table(**(_ARRAY_FUNCTIONS | {"POW": _strict_powers, "SQRT": lambda x, _: np.sqrt(x)}))
-
-
-def _decimal_power(x: Decimal, y: Decimal) -> Decimal:
-    return x**y if x >= 0 or y == y.to_integral_value() else -((-x) ** y)
-
-
-DECIMALS: Table = _table(
-    ADD=lambda x, y: x + y,
-    SUB=lambda x, y: x - y,
-    MUL=lambda x, y: x * y,
-    DIV=lambda x, y: x / y,
-    POW=_decimal_power,
-    MIN=min,
-    MAX=max,
-    NEG=lambda x, _: -x,
-    SQRT=lambda x, _: x.sqrt() if x >= 0 else -(-x).sqrt(),
-    EXP=lambda x, _: x.exp(),
-    LN=lambda x, _: x.ln(),
-    LOG10=lambda x, _: x.log10(),
-    ABS=lambda x, _: abs(x),
-)
+ARRAYS: Table = table(**_ARRAY_FUNCTIONS)
+STRICT: Table = table(**(_ARRAY_FUNCTIONS | {"POW": _strict_powers, "SQRT": lambda x, _: np.sqrt(x)}))
 
 
 def _float_slope(x: float, y: float, _: float) -> float:
@@ -151,14 +126,10 @@ def _array_slope(x: Value, y: Value, _: Value) -> Value:
     return np.where(np.equal(y, 0), 0.0, y * np.power(size, np.subtract(y, 1.0)))
 
 
-def _decimal_slope(x: Decimal, y: Decimal, _: Decimal) -> Decimal:
-    return y * _decimal_power(x if y == y.to_integral_value() else abs(x), y - 1) if y else y
-
-
-def _slopes(
+def slopes(
     power: Callable[[Value, Value, Value], Value],
     exponent: Callable[[Value, Value], Value],
-    table: Table,
+    functions: Table,
     unit: Value,
 ) -> Slopes:
     """For each Op the functions of (x, y, z) that give dz/dx and dz/dy of z = op(x, y); None is 1.
@@ -166,8 +137,8 @@ def _slopes(
     power, exponent : dz/dx of x^y, and dz/dy of it, which is nothing where z is: 0^y stays 0
     """
     half = unit / 2
-    per_decade = unit / table[Op.LN](unit * 10, None)
-    div = table[Op.DIV]
+    per_decade = unit / functions[Op.LN](unit * 10, None)
+    div = functions[Op.DIV]
     first = {
         "ADD": None,
         "SUB": None,
@@ -195,6 +166,5 @@ def _slopes(
     return tuple(first[op.name] for op in Op), tuple(second.get(op.name) for op in Op)
 
 
-FLOAT_SLOPES = _slopes(_float_slope, lambda x, z: z * _ln(x) if z else 0.0, FLOATS, 1.0)
-ARRAY_SLOPES = _slopes(_array_slope, lambda x, z: np.where(np.equal(z, 0), 0.0, z * np.log(x)), ARRAYS, 1.0)
-DECIMAL_SLOPES = _slopes(_decimal_slope, lambda x, z: z * x.ln() if z else z, DECIMALS, Decimal(1))
+FLOAT_SLOPES = slopes(_float_slope, lambda x, z: z * _ln(x) if z else 0.0, FLOATS, 1.0)
+ARRAY_SLOPES = slopes(_array_slope, lambda x, z: np.where(np.equal(z, 0), 0.0, z * np.log(x)), ARRAYS, 1.0)

@@ -5,7 +5,7 @@ reference) overrides it: for tests, and for a second opinion on a number.
 """
 
 import os
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from typing import Protocol
 
@@ -26,8 +26,13 @@ class Engine(Protocol):
     def name(self) -> str:
         """What users are shown."""
 
-    def tanks(self, structure: Structure, cases: TankCases, how: How) -> TankAnswers:
-        """Solve and check tanks."""
+    def tanks(self, structure: Structure, cases: TankCases, how: How) -> tuple[TankAnswers, bool]:
+        """Solve and check tanks; False if no answer calls for a second look, True if some may."""
+
+    def tank_again(
+        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
+    ) -> Callable[[], bool]:
+        """A function that solves one tank anew from arrays to arrays; it returns as `tanks` does."""
 
     def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
         """Follow tubes; asked, shape (N, M) - residence times [s]."""

@@ -20,7 +20,6 @@ References
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import NamedTuple
 
 import numpy as np
@@ -52,8 +51,7 @@ class Matching(NamedTuple):
     power: float
 
 
-@dataclass(frozen=True, slots=True)
-class Laws:
+class Laws(NamedTuple):
     """V by terms, and whether every law is a plain product of powers."""
 
     entries: list[list[Entry]]

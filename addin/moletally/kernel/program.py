@@ -10,6 +10,7 @@ A subexpression that two reactions share and that depends on concentrations stay
 from collections.abc import Sequence
 from dataclasses import dataclass
 from enum import IntEnum
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -40,7 +41,7 @@ class Op(IntEnum):
 UNARY = frozenset({Op.NEG, Op.SQRT, Op.EXP, Op.LN, Op.LOG10, Op.ABS})
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Program:
     """Rate laws r_j(c, T, p) of all reactions.
 
@@ -91,7 +92,7 @@ class Program:
         return self.first_temporary + len(self.code)
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Model:
     """A program and what its rates do: species i changes at sum_j stoichiometry[j, i] r_j.
 
@@ -102,12 +103,11 @@ class Model:
     stoichiometry: NDArray[np.float64]
 
 
-@dataclass(frozen=True, slots=True)
-class Reg:
+class Reg(NamedTuple):
     """A handle for a value under construction: its kind ('s', 'T', 'p', 'n' or 't') and index there."""
 
     kind: str
-    index: int
+    place: int
 
 
 class Builder:
@@ -172,7 +172,7 @@ class Builder:
         def number(reg: Reg | None) -> int:
             if reg is None:
                 return NONE
-            return base_i + position[reg.index] if reg.kind == "t" else bases[reg.kind] + reg.index
+            return base_i + position[reg.place] if reg.kind == "t" else bases[reg.kind] + reg.place
 
         code = [(op, base_i + new, number(a), number(b))
                 for new, (op, a, b) in enumerate(self._instructions[old] for old in order)]  # fmt: skip
@@ -189,7 +189,7 @@ class Builder:
         )
 
     def _varies(self, reg: Reg) -> bool:
-        return reg.kind == "s" or (reg.kind == "t" and self._owner[reg.index] >= 0)
+        return reg.kind == "s" or (reg.kind == "t" and self._owner[reg.place] >= 0)
 
 
 def _first(owners: Sequence[int], value: int) -> int:

@@ -1,8 +1,8 @@
 """Runs a rate-law program: rates, and their exact derivatives by reverse mode."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -98,8 +98,7 @@ def tape_of(program: Program, wanted: tuple[int, ...], leaves: tuple[int, ...]) 
     return Tape(program, wanted, leaves)
 
 
-@dataclass(frozen=True, slots=True)
-class Bound:
+class Bound(NamedTuple):
     """A tape with temperature and parameters put in; the prelude has run. Concentrations come later.
 
     A single case runs on floats, many on arrays: for one case numpy's overhead is ten times the work.

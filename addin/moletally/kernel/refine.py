@@ -4,7 +4,8 @@ from decimal import Decimal, DivisionByZero, InvalidOperation, Overflow, localco
 
 import numpy as np
 
-from moletally.kernel.arithmetic import DECIMAL_SLOPES, DECIMALS, DIGITS, Value
+from moletally.kernel.arithmetic import Value
+from moletally.kernel.decimals import DECIMAL_SLOPES, DECIMALS, DIGITS
 from moletally.kernel.rates import Floats, Tape
 from moletally.kernel.totals import exact_coefficients
 

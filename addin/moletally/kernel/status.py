@@ -1,7 +1,7 @@
 """Every way an answer can end: one table, from which the documents and the reasons in cells are made."""
 
-from dataclasses import dataclass
 from enum import IntEnum
+from typing import NamedTuple
 
 __all__ = ["STATUS", "Status", "StatusText"]
 
@@ -24,8 +24,7 @@ class Status(IntEnum):
     STEP_TOO_SMALL = 12
 
 
-@dataclass(frozen=True, slots=True)
-class StatusText:
+class StatusText(NamedTuple):
     """A status in words: its name, what happened, and what to mend."""
 
     name: str

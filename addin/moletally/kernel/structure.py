@@ -29,7 +29,7 @@ KEPT = 2000  # structures; a workbook has tens
 Ints = NDArray[np.intp]
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Structure:
     """A model cut down to what can happen in a vessel with one kind of feed.
 
@@ -76,7 +76,9 @@ class Structure:
     def edged(self) -> Ints:
         """Positions in `present` of species whose laws have no finite slope at zero, or must be cut there."""
         steep = (self.order < 1 - ZERO_ORDER) & ~((np.abs(self.order) < ZERO_ORDER) & (self.nu >= 0))
-        return np.union1d(np.flatnonzero(steep.any(axis=0)), self.undefined)
+        edged = np.asarray(steep.any(axis=0))
+        edged[self.undefined] = True
+        return np.flatnonzero(edged)
 
     @cached_property
     def runaway(self) -> NDArray[np.bool_]:
@@ -117,6 +119,8 @@ class Structure:
 
 
 _KEPT: dict[tuple[Model, bytes], Structure] = {}
+_SEEN: dict[tuple[Model, bytes, bytes, bytes], Structure] = {}  # by the very numbers of a single case
+_FIRST = np.zeros(1, dtype=np.intp)
 
 
 def structures(
@@ -127,15 +131,33 @@ def structures(
     there : bool ndarray, shape (N, S) - species fed, or in the vessel at the start
     T, p : as for `solve_tanks`
     """
+    if len(there) == 1:
+        yield _of_one(model, there, T, p), _FIRST
+        return
     marks = np.concatenate([there, _traits(model.program, T, p)], axis=1)
     for rows in _equal_rows(marks):
         i = int(rows[0])
-        key = (model, marks[i].tobytes())
-        if key not in _KEPT:
-            if len(_KEPT) >= KEPT:
-                _KEPT.clear()
-            _KEPT[key] = _analyse(model, there[i], T[i : i + 1], p[i : i + 1])
-        yield _KEPT[key], rows
+        yield _of(model, there[i], T[i : i + 1], p[i : i + 1], marks[i].tobytes()), rows
+
+
+def _of_one(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats) -> Structure:
+    key = (model, there.tobytes(), T.tobytes(), p.tobytes())
+    found = _SEEN.get(key)
+    if found is None:
+        if len(_SEEN) >= KEPT:
+            _SEEN.clear()
+        marks = np.concatenate([there, _traits(model.program, T, p)], axis=1)
+        found = _SEEN[key] = _of(model, there[0], T, p, marks.tobytes())
+    return found
+
+
+def _of(model: Model, there: NDArray[np.bool_], T: Floats, p: Floats, marks: bytes) -> Structure:
+    key = (model, marks)
+    if key not in _KEPT:
+        if len(_KEPT) >= KEPT:
+            _KEPT.clear()
+        _KEPT[key] = _analyse(model, there, T, p)
+    return _KEPT[key]
 
 
 def _equal_rows(marks: Floats) -> list[Ints]:

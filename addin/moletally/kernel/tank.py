@@ -1,7 +1,8 @@
 """Stirred tanks: 0 = feed - c + tau nu^T r(c), the state that a start-up reaches."""
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,7 +11,6 @@ from moletally.kernel.cases import How, Ints, TankAnswers, TankCases
 from moletally.kernel.engine import engine
 from moletally.kernel.program import Model
 from moletally.kernel.rates import Floats
-from moletally.kernel.refine import refine
 from moletally.kernel.status import Status
 from moletally.kernel.structure import ZERO_ORDER, Structure, structures
 
@@ -22,8 +22,7 @@ NEAR_ZERO = 1e-50  # of the largest concentration: where laws of order zero are 
 Bools = NDArray[np.bool_]
 
 
-@dataclass(frozen=True, eq=False, slots=True)
-class TankResult:
+class TankResult(NamedTuple):
     """The answer to N tanks.
 
     c : ndarray, shape (N, S) - outlets [mol/m3]; nan where the case failed
@@ -63,7 +62,7 @@ def solve_tanks(
     if start is not None:
         there = there | (start > 0)
     groups = list(structures(model, there, T, p))
-    if len(groups) == 1 and tau.min(initial=1.0) > 0:
+    if len(groups) == 1 and (tau[0] > 0 if len(tau) == 1 else tau.min() > 0):
         return _result(groups[0][0].unique, _group(model, groups[0][0], cases))
     n, species = feed.shape
     answers, unique = TankAnswers.empty(n, species), np.ones(n, dtype=np.bool_)
@@ -77,7 +76,7 @@ def solve_tanks(
 
 
 def _result(unique: bool | Bools, a: TankAnswers) -> TankResult:
-    proven = unique if isinstance(unique, np.ndarray) else np.full(len(a.status), unique)
+    proven = unique if isinstance(unique, np.ndarray) else np.array([unique] * len(a.status))
     return TankResult(
         a.c,
         a.status,
@@ -112,15 +111,18 @@ def _group(model: Model, structure: Structure, cases: TankCases) -> TankAnswers:
     if structure.unbounded:
         return _failed(structure, cases, Status.UNBOUNDED_AT_ZERO)
     if cases.start is not None:
-        cases = replace(cases, fed=_fed(structure, cases.feed))
-    answers = _judged(structure, cases, engine().tanks(structure, cases, How.FROM_FEED))
+        cases = cases._replace(fed=_fed(structure, cases.feed))
+    answers, look_again = engine().tanks(structure, cases, How.FROM_FEED)
+    if not look_again:
+        return answers
+    _judge(structure, cases, answers)
     if answers.exhausted.any():
         _again_without(structure, cases, answers)
     if answers.faded.any():
         # What was there at the start only was washed out before it could take hold: the feed alone is left.
         rows = np.flatnonzero(answers.faded)
         part = solve_tanks(model, cases.feed[rows], cases.tau[rows], cases.T[rows], cases.p[rows])
-        for name in set(TankAnswers.__slots__) & set(TankResult.__slots__):
+        for name in set(TankAnswers._fields) & set(TankResult._fields):
             getattr(answers, name)[rows] = getattr(part, name)
         answers.from_start[rows] = part.from_transient
     return answers
@@ -143,25 +145,22 @@ def _fed(structure: Structure, feed: Floats) -> Bools:
     return fed
 
 
-def _judged(structure: Structure, cases: TankCases, answers: TankAnswers) -> TankAnswers:
+def _judge(structure: Structure, cases: TankCases, answers: TankAnswers) -> None:
     """Takes tanks whose doubles lost too many digits through 50 decimals, and checks them again."""
-    doubtful = ~(answers.error <= RELIABLE)
-    if not doubtful.any():
-        return answers
+    doubtful = ~(answers.error <= RELIABLE) | (answers.status == Status.RESIDUAL)
     for k in np.flatnonzero(doubtful & ~answers.faded).tolist():
         better = _in_decimals(structure, cases, k, answers.root[k])
         if better is not None:
             one = np.array([k])
-            case = replace(_at(cases, one), c=better[None], scale=_pick(cases.scale, one))
-            answers.put(one, _kept(answers, k, engine().tanks(structure, case, How.CHECK_ONLY)))
-    return answers
+            case = _at(cases, one)._replace(c=better[None], scale=_pick(cases.scale, one))
+            checked, _ = engine().tanks(structure, case, How.CHECK_ONLY)
+            answers.put(one, _kept(answers, k, checked))
 
 
 def _kept(answers: TankAnswers, k: int, checked: TankAnswers) -> TankAnswers:
     """A checked answer with the history of the one it replaces."""
     one = slice(k, k + 1)
-    return replace(
-        checked,
+    return checked._replace(
         from_start=answers.from_start[one],
         iterations=answers.iterations[one],
         work=answers.work[one],
@@ -177,6 +176,8 @@ def _in_decimals(structure: Structure, cases: TankCases, k: int, root: Floats) -
     c, feed = root[here], cases.feed[k][here]
     if (c[structure.starved] < NEAR_ZERO * max(cases.feed[k].max(), root.max())).any() or not (c > 0).all():
         return None
+    from moletally.kernel.refine import refine  # decimals are slow to load and rarely called for
+
     better = refine(structure.tape, structure.nu, c, feed, float(cases.tau[k]), float(cases.T[k]), cases.p[k])
     if better is None:
         return None
@@ -227,7 +228,8 @@ def _solve_without(
         feed, cases.tau[rows], cases.T[rows], cases.p[rows],
         scale=np.where(top > 0, top, 1.0), c=np.nan_to_num(answers.root[rows]),
     )  # fmt: skip
-    found = _judged(less, near, engine().tanks(less, near, How.FROM_GUESS))
+    found, _ = engine().tanks(less, near, How.FROM_GUESS)
+    _judge(less, near, found)
     good = (found.status == Status.OK) & ~(gone & (found.c != 0)).any(axis=1)
     answers.exhausted[rows[good]] |= found.exhausted[good]
     for name in ("c", "status", "residual", "condition", "root"):

@@ -4,7 +4,7 @@ A law that can run both ways has no order of its own in a species that vanishes;
 A law is a sum of terms where the sum is taken last, or multiplied or divided by a common factor.
 """
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,8 +16,7 @@ __all__ = ["Terms", "split"]
 MOST_TERMS = 16  # of one law; a longer sum stays whole
 
 
-@dataclass(frozen=True, eq=False)
-class Terms:
+class Terms(NamedTuple):
     """A model whose laws are terms, and where they come from.
 
     model : Model - rates are terms; the sign of a term stands in its stoichiometry

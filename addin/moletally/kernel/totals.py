@@ -32,7 +32,7 @@ def conserved(nu: Floats) -> Floats:
     would drown a total of trace species.
     """
     species = nu.shape[1]
-    rows = exact_coefficients(np.unique(nu, axis=0))
+    rows = exact_coefficients(np.array(sorted(set(map(tuple, nu.tolist())))).reshape(-1, species))
     pivots: list[int] = []
     for i in range(species):
         k = next((k for k in range(len(pivots), len(rows)) if rows[k][i]), None)

@@ -1,6 +1,6 @@
 """Plug-flow tubes: dc/dtau = nu^T r(c), c(0) = feed, at any number of residence times."""
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,8 +15,7 @@ from moletally.kernel.structure import Structure, structures
 __all__ = ["TubeResult", "solve_tubes"]
 
 
-@dataclass(frozen=True, eq=False)
-class TubeResult:
+class TubeResult(NamedTuple):
     """The answer to N tubes.
 
     c : ndarray, shape (N, S) - outlets [mol/m3]; nan where the case failed

@@ -78,14 +78,14 @@ class Outlets:
     """
 
     concentration: Floats
-    status: NDArray[np.int_]
+    status: NDArray[np.int32]
     exhausted: NDArray[np.bool_]
     exhausted_at: Floats
     unique: NDArray[np.bool_]
     from_start: NDArray[np.bool_]
     residual: Floats
     condition: Floats
-    work: NDArray[np.int_]
+    work: NDArray[np.int32]
 
     @property
     def fine(self) -> NDArray[np.bool_]:

@@ -27,7 +27,7 @@ def pfr(batch: Batch) -> Outlets:
     return out.outlets(batch.size)
 
 
-def profile(batch: Batch, grid: Floats) -> tuple[Floats, NDArray[np.int_], Floats]:
+def profile(batch: Batch, grid: Floats) -> tuple[Floats, NDArray[np.int32], Floats]:
     """One tube along its length.
 
     batch : one case; grid : ndarray, shape (M,), rising - tau [s] (or W/q) of each point
@@ -38,7 +38,7 @@ def profile(batch: Batch, grid: Floats) -> tuple[Floats, NDArray[np.int_], Float
     return c, status, exhausted_at
 
 
-def _along(batch: Batch, grid: Floats) -> tuple[Floats, NDArray[np.int_], Floats, int]:
+def _along(batch: Batch, grid: Floats) -> tuple[Floats, NDArray[np.int32], Floats, int]:
     answer = solve_tubes(
         batch.network.model, batch.feed, grid[-1:], batch.temperature, batch.parameters, grid=grid
     )
@@ -63,12 +63,12 @@ class _Collector:
 
     def __init__(self, n: int, species: int) -> None:
         self.c = np.full((n, species), np.nan)
-        self.status = np.zeros(n, dtype=np.int_)
+        self.status = np.zeros(n, dtype=np.int32)
         self.exhausted_at = np.full((n, species), np.nan)
-        self.work = np.zeros(n, dtype=np.int_)
+        self.work = np.zeros(n, dtype=np.int32)
 
-    def put(self, rows: NDArray[np.intp], c: Floats, status: NDArray[np.int_], exhausted_at: Floats,
-            work: NDArray[np.int_]) -> None:  # fmt: skip
+    def put(self, rows: NDArray[np.intp], c: Floats, status: NDArray[np.int32], exhausted_at: Floats,
+            work: NDArray[np.int32]) -> None:  # fmt: skip
         self.c[rows], self.status[rows] = c, status
         self.exhausted_at[rows], self.work[rows] = exhausted_at, work
 

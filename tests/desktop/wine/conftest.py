@@ -13,6 +13,8 @@ from pathlib import Path
 
 import pytest
 
+from kernel.wheels import build_wheel
+
 HERE = Path(__file__).parent
 ROOT = HERE.parents[2]
 
@@ -80,12 +82,10 @@ def stop(process):
 def windows(request, tmp_path_factory) -> Windows:
     folder = Path(request.config.getoption("--windows")).resolve()
     subprocess.run([str(HERE / "setup_windows_python.sh"), str(folder)], check=True)
-    wheels = tmp_path_factory.mktemp("wheel")
-    subprocess.run(["uv", "build", "--quiet", "--wheel", "--out-dir", str(wheels), str(ROOT)], check=True)
+    wheel = build_wheel("windows-x64", tmp_path_factory.mktemp("wheel"))
     packages = folder / "py" / "Lib" / "site-packages"
     for old in packages.glob("moletally*"):
         shutil.rmtree(old)
-    (wheel,) = wheels.glob("*.whl")
     with zipfile.ZipFile(wheel) as archive:
         archive.extractall(packages)
     return Windows(folder)

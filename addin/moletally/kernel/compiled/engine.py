@@ -2,11 +2,10 @@
 
 import ctypes
 import os
-from collections.abc import Callable, Iterable
-from concurrent.futures import ThreadPoolExecutor
+from collections.abc import Callable
 from functools import cache
 from itertools import pairwise
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +16,9 @@ from moletally.kernel.compiled.network import Network, network_of, network_of_pr
 from moletally.kernel.program import Program
 from moletally.kernel.rates import Floats
 from moletally.kernel.structure import Structure
+
+if TYPE_CHECKING:
+    from concurrent.futures import ThreadPoolExecutor
 
 __all__ = ["CompiledEngine"]
 
@@ -37,21 +39,34 @@ class CompiledEngine:
     def __init__(self) -> None:
         self._library = library()
 
-    def tanks(self, structure: Structure, cases: TankCases, how: How) -> TankAnswers:
+    def tanks(self, structure: Structure, cases: TankCases, how: How) -> tuple[TankAnswers, bool]:
         """Solve and check tanks."""
         n, species = cases.feed.shape
         out = TankAnswers.empty(n, species)
         if cases.c is not None:
             out.c[:] = cases.c
-        rows = {
-            "feed": _floats(cases.feed), "tau": _floats(cases.tau), "T": _floats(cases.T), "p": _floats(cases.p),
-            "start": None if cases.start is None else _floats(cases.start),
-            "fed": None if cases.fed is None else np.ascontiguousarray(cases.fed),
-            "scale": None if cases.scale is None else _floats(cases.scale),
-            **{name: getattr(out, name) for name in TankAnswers.__slots__},
-        }  # fmt: skip
-        _in_pieces(self._library.mt_solve_tanks, network_of(structure), Tanks(how=how), rows, n, FEW_TANKS)
-        return out
+        rows = _tank_rows(cases, out)
+        code = _in_pieces(
+            self._library.mt_solve_tanks, network_of(structure), Tanks(how=how), rows, n, FEW_TANKS
+        )
+        return out, code > 0
+
+    def tank_again(
+        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
+    ) -> Callable[[], bool]:
+        """Solves one tank anew at each call, from arrays to arrays whose addresses are taken once."""
+        record, network = Tanks(n=1, how=how), network_of(structure)
+        rows = _tank_rows(cases, out)
+        for name, array in rows.items():
+            if array is not None:
+                setattr(record, name, array.ctypes.data)
+        function, handle, where = self._library.mt_solve_tanks, network.handle, ctypes.addressof(record)
+
+        def again(_kept: object = (record, network, rows)) -> bool:
+            code = function(handle, where)
+            return _check(code) > 0 if code else False
+
+        return again
 
     def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
         """Follow tubes."""
@@ -59,7 +74,7 @@ class CompiledEngine:
         out = TubeAnswers.empty(n, points, feed.shape[1])
         rows = {
             "feed": _floats(feed), "asked": _floats(asked), "T": _floats(T), "p": _floats(p),
-            **{name: getattr(out, name) for name in TubeAnswers.__slots__},
+            **{name: getattr(out, name) for name in TubeAnswers._fields},
         }  # fmt: skip
         _in_pieces(self._library.mt_solve_tubes, network_of(structure), Tubes(m=points), rows, n, FEW_TUBES)
         return out
@@ -111,17 +126,30 @@ class CompiledEngine:
         _check(self._library.mt_evaluate(network_of_program(program).handle, ctypes.byref(record)))
 
 
+def _tank_rows(cases: TankCases, out: TankAnswers) -> dict[str, Array | None]:
+    return {
+        "feed": _floats(cases.feed), "tau": _floats(cases.tau), "T": _floats(cases.T), "p": _floats(cases.p),
+        "start": None if cases.start is None else _floats(cases.start),
+        "fed": None if cases.fed is None else np.ascontiguousarray(cases.fed),
+        "scale": None if cases.scale is None else _floats(cases.scale),
+        **{name: getattr(out, name) for name in TankAnswers._fields},
+    }  # fmt: skip
+
+
 def _floats(values: Floats) -> Floats:
     return np.ascontiguousarray(values, dtype=np.float64)
 
 
-def _check(code: int) -> None:
-    if code:
+def _check(code: int) -> int:
+    if code < 0:
         raise MemoryError(f"the kernel ran out of memory (code {code})")
+    return code
 
 
 @cache
-def _threads() -> ThreadPoolExecutor:
+def _threads() -> "ThreadPoolExecutor":
+    from concurrent.futures import ThreadPoolExecutor  # slow to load, and a single cell has no use for it
+
     return ThreadPoolExecutor(_cores(), thread_name_prefix="moletally")
 
 
@@ -132,26 +160,25 @@ def _cores() -> int:
 
 def _in_pieces(
     function: Callable[..., int], network: Network, record: Record, rows: dict[str, Array | None], n: int, few: int
-) -> None:  # fmt: skip
+) -> int:  # fmt: skip
     """Calls the kernel for n rows: at once where they are few, by pieces on all cores else."""
     pieces = 1 if n < few or _cores() == 1 else min(n, PIECES * _cores())
     if pieces == 1:
-        _call(function, network, record, rows, 0, n)
-        return
+        return _call(function, network, record, rows, 0, n)
     edges = [n * k // pieces for k in range(pieces + 1)]
-    work: Iterable[Any] = [
+    work = [
         _threads().submit(_call, function, network, type(record).from_buffer_copy(record), rows, a, b)
         for a, b in pairwise(edges)
     ]
-    for done in work:
-        done.result()
+    return sum(done.result() for done in work)
 
 
 def _call(
     function: Callable[..., int], network: Network, record: Record, rows: dict[str, Array | None], first: int, end: int
-) -> None:  # fmt: skip
+) -> int:  # fmt: skip
     record.n = end - first
     for name, array in rows.items():
         if array is not None:
-            setattr(record, name, array.ctypes.data + first * array.strides[0])
-    _check(function(network.handle, ctypes.byref(record)))
+            # the array interface is read faster than the ctypes attribute, which makes an object
+            setattr(record, name, array.__array_interface__["data"][0] + first * array.strides[0])
+    return _check(function(network.handle, ctypes.addressof(record)))

@@ -1,16 +1,16 @@
 """Loads the compiled kernel and declares its functions; the records are those of addin/kernel/moletally.h."""
 
 import ctypes
+import os.path
 import sys
 from ctypes import POINTER, c_double, c_int, c_int32, c_int64, c_void_p
 from functools import cache
-from pathlib import Path
 
 __all__ = ["FILE", "FORMAT", "Rates", "Slopes", "Tanks", "Tubes", "library"]
 
 FORMAT = 1
 SUFFIX = {"win32": "dll", "darwin": "dylib"}.get(sys.platform, "so")
-FILE = Path(__file__).with_name(f"_kernel.{SUFFIX}")
+FILE = os.path.join(os.path.dirname(__file__), f"_kernel.{SUFFIX}")  # pathlib is slow to load
 
 
 class Tanks(ctypes.Structure):
@@ -55,10 +55,10 @@ class Rates(ctypes.Structure):
 @cache
 def library() -> ctypes.CDLL:
     """The library; OSError where it is not there, can't be loaded or is of another version."""
-    found = ctypes.CDLL(str(FILE))
+    found = ctypes.CDLL(FILE)
     found.mt_format.restype = c_int
     if found.mt_format() != FORMAT:
-        raise OSError(f"{FILE.name} is of another version of moletally: install it again")
+        raise OSError(f"{FILE} is of another version of moletally: install it again")
     found.mt_network_new.restype = c_void_p
     found.mt_network_new.argtypes = (POINTER(c_int32), c_int64, POINTER(c_double), c_int64)
     found.mt_network_free.restype = None

@@ -45,9 +45,17 @@ class _Writer:
         return np.array(self.ints, dtype=np.int32), np.array(self.reals, dtype=np.float64)
 
 
-def starts(rows: Sequence[Sequence[int]]) -> list[int]:
+def starts(rows: Sequence[Sequence[object]]) -> list[int]:
     """Where each row starts, and the end."""
     return list(accumulate(map(len, rows), initial=0))
+
+
+def _marks(n: int, places: NDArray[np.intp]) -> list[bool]:
+    """n flags, True at the places. (np.isin would import numpy.ma, half as slow as numpy itself.)"""
+    marks = [False] * n
+    for k in places.tolist():
+        marks[k] = True
+    return marks
 
 
 class _Laws:
@@ -83,7 +91,7 @@ class _Laws:
 
     def _path(self, j: int) -> list[tuple[int, ...]]:
         seen = {self.tape.outputs[j]}
-        out = []
+        out: list[tuple[int, ...]] = []
         for target, source, x, y, op, second in self.tape.paths[j]:
             first = source not in seen
             seen.add(source)
@@ -139,8 +147,8 @@ def pack_structure(structure: Structure) -> Packed:
         _Cut(structure, structure.edged, DEPTH),
     )
     model = structure.terms.model
-    owners = structure.terms.reaction[structure.firing]
-    names, owner = np.unique(owners, return_inverse=True)
+    coefficients = structure.coefficients
+    owner = [int(np.flatnonzero(row)[0]) for row in coefficients.net]
     sign = structure.terms.sign[structure.firing]
     entries = [sorted({*read, *cuts[0].species(t), *cuts[1].species(t)}) for t, read in enumerate(laws.reads)]
     totals = structure.conserved[:, structure.present]
@@ -148,13 +156,13 @@ def pack_structure(structure: Structure) -> Packed:
     whole = not structure.unique and len(structure.absent) > 0
     w = _Writer()
     w.section(
-        (FORMAT, model.program.n_species, len(structure.present), len(structure.firing), len(names),
+        (FORMAT, model.program.n_species, len(structure.present), len(structure.firing), len(coefficients.reactions),
          model.program.n_parameters, len(laws.literals), len(structure.tape.prelude), len(structure.tape.body),
          structure.unique, len(totals), whole, len(structure.absent) if whole else 0)
     )  # fmt: skip
     w.section(structure.present)
     laws.write(w, entries)
-    _write_gains(w, structure.coefficients.reactions, owner, entries)
+    _write_gains(w, coefficients.reactions, owner, entries)
     w.numbers(sign)
     w.numbers(structure.order.ravel())
     place: list[dict[int, int]] = []
@@ -162,17 +170,15 @@ def pack_structure(structure: Structure) -> Packed:
         place.append({leaf: start + k for k, leaf in enumerate(row)})
     for cut in cuts:
         cut.write(w, place)
-    w.section(np.isin(np.arange(len(structure.present)), structure.starved))
-    w.section(np.isin(np.arange(model.program.n_species), structure.wanted))
+    w.section(_marks(len(structure.present), structure.starved))
+    w.section(_marks(model.program.n_species, structure.wanted))
     w.numbers(totals.ravel())
     if whole:
         _write_whole(w, structure)
     return w.packed()
 
 
-def _write_gains(
-    w: _Writer, reactions: Floats, owner: NDArray[np.intp], entries: Sequence[Sequence[int]]
-) -> None:
+def _write_gains(w: _Writer, reactions: Floats, owner: list[int], entries: Sequence[Sequence[int]]) -> None:
     """Who gains what: terms netted by reaction, and each reaction's coefficients."""
     w.section(owner)
     gaining = [np.flatnonzero(row).tolist() for row in reactions]
@@ -184,7 +190,7 @@ def _write_gains(
     w.numbers(x for x, _ in meant)
     w.numbers(float(fraction - type(fraction)(float(x))) for x, fraction in meant)
     net: list[list[int]] = [
-        sorted({leaf for t in np.flatnonzero(owner == j) for leaf in entries[t]})
+        sorted({leaf for t in [k for k, name in enumerate(owner) if name == j] for leaf in entries[t]})
         for j in range(len(reactions))
     ]
     w.lists(net)
@@ -200,7 +206,7 @@ def _write_whole(w: _Writer, structure: Structure) -> None:
     w.section((len(laws.literals), len(tape.prelude), len(tape.body), model.program.n_reactions))
     laws.write(w, laws.reads)
     w.section(structure.absent)
-    w.section(np.isin(np.arange(model.program.n_reactions), structure.held))
+    w.section(_marks(model.program.n_reactions, structure.held))
     w.numbers(model.stoichiometry[:, structure.absent].ravel())
 
 
@@ -215,7 +221,7 @@ def pack_program(program: Program) -> Packed:
     )  # fmt: skip
     w.section(range(species))
     laws.write(w, laws.reads)
-    _write_gains(w, np.zeros((reactions, species)), np.arange(reactions), laws.reads)
+    _write_gains(w, np.zeros((reactions, species)), list(range(reactions)), laws.reads)
     w.numbers([1.0] * reactions)
     w.numbers([0.0] * (reactions * species))
     for _ in range(2):

@@ -12,7 +12,7 @@ from moletally.kernel.reference.steady import Tanks, newton
 
 __all__ = ["creep"]
 
-MOST_STEPS = 400
+MOST_STEPS = 1500
 ERROR = 0.02  # of a concentration, per step
 TRACE = 1e-12  # of the largest concentration: below it a species may change as it likes
 FIRST, LAST = 1e-9, 100.0  # residence times: first step, and when to stop

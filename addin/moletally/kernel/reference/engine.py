@@ -1,5 +1,9 @@
 """The reference engine behind the common face."""
 
+from collections.abc import Callable
+
+import numpy as np
+
 from moletally.kernel.cases import How, TankAnswers, TankCases, TubeAnswers
 from moletally.kernel.program import Program
 from moletally.kernel.rates import Floats
@@ -14,9 +18,21 @@ class ReferenceEngine:
 
     name = "reference engine (numpy)"
 
-    def tanks(self, structure: Structure, cases: TankCases, how: How) -> TankAnswers:
+    def tanks(self, structure: Structure, cases: TankCases, how: How) -> tuple[TankAnswers, bool]:
         """Solve and check tanks."""
-        return tank.solve(structure, cases, how)
+        return tank.solve(structure, cases, how), True
+
+    def tank_again(
+        self, structure: Structure, cases: TankCases, out: TankAnswers, how: How
+    ) -> Callable[[], bool]:
+        """Solves one tank anew at each call."""
+
+        def again() -> bool:
+            given = cases._replace(c=out.c.copy())
+            out.put(np.zeros(1, dtype=np.intp), tank.solve(structure, given, how))
+            return True
+
+        return again
 
     def tubes(self, structure: Structure, feed: Floats, asked: Floats, T: Floats, p: Floats) -> TubeAnswers:
         """Follow tubes."""

@@ -2,15 +2,17 @@
 
 A tank's follow from its balance. A tube's are differences between neighbours that are stepped on the very
 mesh of the tube itself, so that what they differ by is not a difference of meshes (internal numerical
-differentiation: H. G. Bock, Springer Ser. Chem. Phys. 18 (1981) 102). The compiled engine differentiates
-the steps themselves.
+differentiation: H. G. Bock, Springer Ser. Chem. Phys. 18 (1981) 102); where a species is used up, at another
+time in each, they go their own ways. The compiled engine differentiates the steps themselves.
 """
 
 import numpy as np
+from numpy.typing import NDArray
 
 from moletally.kernel.cases import TankCases
 from moletally.kernel.depth import STEADY_DEPTH
 from moletally.kernel.rates import Floats
+from moletally.kernel.reference import tube
 from moletally.kernel.reference.cutoff import Laws
 from moletally.kernel.reference.flow import Flow
 from moletally.kernel.reference.steady import NOTHING, Tanks
@@ -22,8 +24,9 @@ from moletally.kernel.structure import Structure
 __all__ = ["of_tanks", "of_tubes"]
 
 NUDGE = 1e-5  # relative difference between neighbours: rounding and curvature weigh about the same
+WIDE_NUDGE = 1e-4  # the same where each has its own mesh, whose tolerance counts as rounding
 MOST_STEPS = 12000
-RELATIVE = (1e-10, 1e-9)
+RELATIVE = (1e-8, 1e-8)
 
 
 def of_tanks(structure: Structure, cases: TankCases, root: Floats) -> Floats:
@@ -69,24 +72,46 @@ def _of_tube(structure: Structure, feed: Floats, tau: float, T: float, p: Floats
     here = structure.present
     scale = float(_scale(feed[None])[0])
     values = np.concatenate([feed[here], [T], p])
-    sizes = np.where(
-        values != 0, np.abs(values), np.concatenate([np.full(len(here), scale), np.ones(1 + len(p))])
-    )
-    step = np.diag(NUDGE * sizes)
-    rows = np.concatenate([values[None], values + step, values - step])
-    # A species that is not fed can't be fed less than nothing: two steps ahead instead (second order, too).
-    unfed = np.flatnonzero(values[: len(here)] == 0)
-    rows[1 + len(values) + unfed] = values + 2.0 * step[unfed]
+    floor = np.concatenate([np.full(len(here), scale), np.ones(1 + len(p))])
+    sizes = np.where(values != 0, np.abs(values), floor)
+    rows = _neighbours(values, NUDGE * sizes, len(here))
     c = rows[:, : len(here)].copy()
     family = _Family(structure, c, rows[:, len(here)], rows[:, len(here) + 1 :], scale)
     if not family.follow(tau):
         return None
-    ahead, behind = family.c[1 : 1 + len(values)], family.c[1 + len(values) :]
-    change = (ahead - behind) / 2.0
-    change[unfed] = (4.0 * ahead[unfed] - behind[unfed] - 3.0 * family.c[0]) / 2.0
-    slopes = change / (NUDGE * sizes)[:, None]
+    ends, nudge = family.c, NUDGE
+    if family.has_ends():
+        nudge = WIDE_NUDGE
+        rows = _neighbours(values, nudge * sizes, len(here))
+        fed = np.zeros((len(rows), len(feed)))
+        fed[:, here] = rows[:, : len(here)]
+        asked = np.full((len(rows), 1), tau)
+        ends = tube.solve(structure, fed, asked, rows[:, len(here)], rows[:, len(here) + 1 :]).c[:, 0, here]
+    slopes = _differences(ends, values[: len(here)] == 0) / (nudge * sizes)[:, None]
     parts = [slopes[: len(here)].T, family.slope()[:, None], slopes[len(here) :].T]
     return np.concatenate(parts, axis=1)
+
+
+def _neighbours(values: Floats, step: Floats, fed: int) -> Floats:
+    """Rows: the values themselves, each a step ahead, each a step behind.
+
+    What is not fed can't be fed less than nothing: two steps ahead instead (of second order, too).
+    """
+    ahead = np.diag(step)
+    rows = np.concatenate([values[None], values + ahead, values - ahead])
+    unfed = np.flatnonzero(values[:fed] == 0)
+    rows[1 + len(values) + unfed] = values + 2.0 * ahead[unfed]
+    return rows
+
+
+def _differences(c: Floats, unfed: NDArray[np.bool_]) -> Floats:
+    """Changes per step, shape (values, S)."""
+    count = (len(c) - 1) // 2
+    ahead, behind = c[1 : 1 + count], c[1 + count :]
+    change = (ahead - behind) / 2.0
+    places = np.flatnonzero(unfed)
+    change[places] = (4.0 * ahead[places] - behind[places] - 3.0 * c[0]) / 2.0
+    return change
 
 
 class _Family:
@@ -113,9 +138,14 @@ class _Family:
                         self.c, _, _ = METHODS[stride.method].step(self.flow, self.c, h, self.tolerance.least)
         return bool(stepper.status[0] == Status.OK)
 
+    def has_ends(self) -> bool:
+        """True where a species has been used up."""
+        laws = self.stepper.flow.laws
+        return bool((laws.low(self.stepper.c) & self.tolerance.ends[laws.edged]).any())
+
     def slope(self) -> Floats:
         """dc/dt of the tube itself, shape (S,)."""
-        return np.asarray(self.flow.slope(self.c)[0])
+        return np.asarray(self.stepper.flow.slope(self.stepper.c)[0])
 
 
 def _scale(feed: Floats) -> Floats:
@@ -123,7 +153,7 @@ def _scale(feed: Floats) -> Floats:
     return np.where(largest > 0, largest, 1.0)
 
 
-def _write(out: Floats, here: np.ndarray, answer: Floats) -> None:
+def _write(out: Floats, here: NDArray[np.intp], answer: Floats) -> None:
     """Puts answers by present species, shape (n, here, here + 2 + P), into all species, shape (n, S, S + 2 + P)."""
     species = out.shape[1]
     columns = np.concatenate([here, np.arange(species, out.shape[2])])

@@ -83,5 +83,6 @@ class Tolerance:
             return None
         gain = np.abs(flow.slope(after)) * h[:, None] / (LEAK * self.relative[1] * self.scale)
         net, gross = flow.balance(before)
-        gain = np.where((net > FALLS * gross) & (after < before), np.inf, gain)
+        rises = (net > FALLS * gross) & (net * h[:, None] > LOW / SHARE_OF_DEPTH * self.least)
+        gain = np.where(rises & (after < before), np.inf, gain)
         return np.asarray(np.where(low, gain, 0.0).max(axis=1))

@@ -7,6 +7,7 @@ from moletally.kernel.cases import TubeAnswers
 from moletally.kernel.rates import Floats
 from moletally.kernel.reference.cutoff import LOW, Laws
 from moletally.kernel.reference.flow import Flow
+from moletally.kernel.reference.steady import EPSILON
 from moletally.kernel.reference.stepping import METHODS, STIFF, Stepper, Stride
 from moletally.kernel.reference.tolerance import NOTHING, Tolerance
 from moletally.kernel.reference.totals import Totals
@@ -15,10 +16,11 @@ from moletally.kernel.structure import Structure
 
 __all__ = ["solve"]
 
-RELATIVE = (1e-10, 1e-9)  # error of a step, explicit and stiff; the sum of all stays below 1e-8
+RELATIVE = (1e-8, 1e-8)  # error of a step, explicit and stiff; the sum of all stays below 1e-8
 MOST_STEPS = 12000
 VANISHING = 1e-5  # of the feed: where a law of negative order is about to end
 INVARIANT = 1e-9  # of the sum of a total's terms
+SUMMED = 16 * EPSILON  # of the feed: rounding of the steps that a law of order zero takes from it
 NOWHERE = 1.0  # mol/m3: the scale of a vessel into which nothing is fed, for want of another
 
 Ints = NDArray[np.intp]
@@ -138,7 +140,11 @@ class _Run:
         c = self.points[:, :, structure.present]
         edged, depth = structure.edged, self.flow.laws.depth[:, None, :]
         if len(edged):
-            gone = (c[:, :, edged] < LOW * depth) & structure.finite_end[edged] & (self.asked > 0)[:, :, None]
+            rounding = (
+                SUMMED * self.feed[:, None, structure.present[edged]] * np.isin(edged, structure.starved)
+            )
+            low = (c[:, :, edged] < LOW * depth) | (c[:, :, edged] < rounding)
+            gone = low & structure.finite_end[edged] & (self.asked > 0)[:, :, None]
             c[:, :, edged] = np.where(gone, 0.0, c[:, :, edged])
         least = self.tolerance.least[:, None, :]
         negative = (c < -least).any(axis=2)
@@ -177,8 +183,8 @@ class _Run:
         laws = self.flow.laws.at(np.repeat(np.arange(n), points))
         r = laws.strict(np.maximum(c, 0.0).reshape(-1, species))
         inlet = self.flow.laws.strict(self.feed[:, self.structure.present])
-        undefined = ~np.isfinite(r).all(axis=1).reshape(n, points)
-        return undefined | ~np.isfinite(inlet).all(axis=1)[:, None]
+        undefined = np.asarray(~np.isfinite(r).all(axis=1)).reshape(n, points)
+        return undefined | np.asarray(~np.isfinite(inlet).all(axis=1))[:, None]
 
 
 def _creep(flow: Flow, c: Floats, h: float, tolerance: Tolerance) -> Floats:
