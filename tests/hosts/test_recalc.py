@@ -1,5 +1,6 @@
 """Recalculation of real workbook files without Excel, through the command a user has."""
 
+import re
 import subprocess
 import sys
 
@@ -9,7 +10,9 @@ from books import RANGE, near, parts, recalc, replace_in_part, run, tank, withou
 
 from moletally.hosts.headless.book import open_book
 from moletally.hosts.headless.calculate import calculate
+from moletally.hosts.headless.spelling import plain
 from moletally.sheet.cells import OMITTED
+from moletally.sheet.functions import FUNCTIONS
 from moletally.sheet.outcome import Outcome
 
 
@@ -335,3 +338,56 @@ def test_a_circular_reference_is_told(tmp_path):
     assert code == 1
     assert values == {"Design!G2": 1.0}
     assert any("circular" in reason for _, reason in problems.values())
+
+
+def test_constants_of_every_kind_reach_the_formulas(tmp_path):
+    """They are handed over as pieces of columns: gaps stay blank, and each kind stays what it is."""
+
+    def fill(book, sheet):
+        for row, value in enumerate((1.5, "x", True, None, 2.5, None, None, -3), start=9):
+            if value is not None:
+                sheet.write(row, 0, value)
+        sheet.write("A20", "=NA()")
+        sheet.write("C10", "")
+        kinds = '=IF(ISBLANK(A{0}),"blank",IF(ISLOGICAL(A{0}),"logical",IF(ISTEXT(A{0}),"text",IF(ISNUMBER(A{0}),"number","?"))))'
+        for row in range(10, 19):
+            sheet.write_formula(f"B{row}", kinds.format(row) + f'&IF(FALSE,MOLE_CSTR({RANGE},,G1,"A"),"")')
+        sheet.write_formula("B19", f'=SUM(A10:A18)*MOLE_CSTR({RANGE},,G1,"A")')
+
+    code, values, problems = recalc(write(tmp_path / "b.xlsx", fill))
+    assert (code, problems) == (0, {})
+    kinds = [values[f"Design!B{row}"] for row in range(10, 19)]
+    assert kinds == ["number", "text", "logical", "blank", "number", "blank", "blank", "number", "blank"]
+    assert values["Design!B19"] == near((1.5 + 2.5 - 3) * tank(4.0)[0])
+
+
+def test_a_long_column_of_calls_is_written_row_by_row(tmp_path):
+    """Rows that are there, rows that a spill needs and rows of no formula, in their order."""
+
+    def fill(book, sheet):
+        for row in range(9, 300, 2):
+            sheet.write(row, 5, row / 10)
+            sheet.write_formula(row, 6, f'=MOLE_CSTR({RANGE},,F{row + 1},"A")')
+        sheet.write_dynamic_array_formula("K305:K305", f"=MOLE_CSTR({RANGE},,G1)")
+
+    path, out = write(tmp_path / "b.xlsx", fill), tmp_path / "out.xlsx"
+    assert recalc(path, "--out", out)[0] == 0
+    sheet = openpyxl.load_workbook(out, data_only=True)["Design"]
+    for row in range(9, 300, 2):
+        assert sheet.cell(row + 1, 7).value == near(tank(row / 10)[0])
+        assert sheet.cell(row + 2, 7).value is None
+    assert [sheet[f"K{row}"].value for row in (305, 306, 307)] == [near(x) for x in tank(4.0)]
+    numbers = [int(n) for n in re.findall(rb'<row r="(\d+)"', parts(out)["xl/worksheets/sheet1.xml"])]
+    assert numbers == sorted(numbers)
+
+
+def test_formulas_are_shown_as_a_person_would_write_them():
+    for stored, shown in (
+        ('MOLE_CSTR(A1,,B1,"mole_cstr(x)!_xlfn.")', 'MOLE_CSTR(A1,,B1,"mole_cstr(x)!_xlfn.")'),
+        ("mole_cstr(A1)+Mole_Pfr(A1)", "MOLE_CSTR(A1)+MOLE_PFR(A1)"),
+        ("SUM(Sheet2!A1,'x y'!B2)", "SUM(Sheet2!A1,'x y'!B2)"),
+        ("[1]!MOLE_CSTR(Sheet2!A1)", "MOLE_CSTR(Sheet2!A1)"),
+        ("'a b.xlam'!mole_pfr(A1)", "MOLE_PFR(A1)"),
+        ("_xlfn.LET(_xlpm.a,1,_xlpm.a)", "LET(a,1,a)"),
+    ):
+        assert plain(stored, FUNCTIONS) == shown

@@ -17,7 +17,7 @@ KNOWN = ("k(1)", "K_A", "in(A)", "in([2-pentene])")
 
 
 def reactor(argument):
-    return read_reactor(argument, KNOWN.__contains__, KNOWN)
+    return read_reactor(argument, KNOWN)
 
 
 def reasons(rows):
@@ -46,7 +46,7 @@ def test_a_reactor_that_is_not_there(argument, words):
 @pytest.mark.parametrize("argument", [0.0, 0, ((0.0,),), "0"])
 def test_zero_is_a_residence_time(argument):
     read = reactor(argument)
-    assert (read.rows, read.shape, read.bare, read.single) == (((0.0,),), None, True, True)
+    assert (read.rows, read.shape, read.layout.bare, read.single) == (((0.0,),), None, True, True)
 
 
 @pytest.mark.parametrize(
@@ -117,7 +117,7 @@ def test_a_block_in_any_order_with_units_behind_or_beside():
         "Temperature": (25.0, "degC"), "Residence time": (5.0, "min"), "Phase": "liquid",
         "in([2-pentene])": (1.0, "mol/L"), "k(1)": (2.0, "1/h"), "K_A": (0.0, None), "Cross-section": (1.0, "m^2"),
     }  # fmt: skip
-    assert (read.rows, read.single, read.bare) == (((),), True, False)
+    assert (read.rows, read.single, read.layout.bare) == (((),), True, False)
 
 
 @pytest.mark.parametrize(
@@ -166,7 +166,7 @@ def test_a_bad_cell_costs_its_own_case():
         (1.0, None, "3"), ("n/a", 2.0, 3.0), (1.0, ExcelError("#NUM!"), 3.0), (1.0, True, 3.0),
     ))  # fmt: skip
     assert read.fixed == {"Heat": "isothermal"}
-    assert [(c.label, c.unit) for c in read.columns] == [
+    assert [(c.label, c.unit) for c in read.layout.columns] == [
         ("Residence time", "h"),
         ("in(A)", "mol/L"),
         ("K_A", None),

@@ -138,7 +138,7 @@ KNOWN = {"k(1)", "K_A", "in(Am)"}
 
 
 def reactor(argument):
-    return read_reactor(argument, KNOWN.__contains__, KNOWN)
+    return read_reactor(argument, KNOWN)
 
 
 def test_reactor_forms():
@@ -152,7 +152,7 @@ def test_reactor_forms():
         (("Phase", "liquid", None), (None, None, None), ("Residence time [h]", "in(Am) [mol/L]", "K_A"),
          (1.0, 2.0, 3.0), (ExcelError("#N/A"), 1.0, 2.0), (None, 3.0, "1,5"))
     )  # fmt: skip
-    assert [c.unit for c in cases.columns] == ["h", "mol/L", None]
+    assert [c.unit for c in cases.layout.columns] == ["h", "mol/L", None]
     assert cases.rows[0] == (1.0, 2.0, 3.0)
     assert cases.rows[1].code == "#N/A"
     assert "row 6" in cases.rows[2].reason

@@ -8,9 +8,12 @@ from numpy.typing import NDArray
 
 from moletally.chemistry.expression import MATHS, Binary, Call, Name, Node, Num, Unary, fold
 
-__all__ = ["Values", "evaluate"]
+__all__ = ["Steps", "Values", "evaluate", "run", "steps_of"]
 
 Values: TypeAlias = NDArray[np.float64] | np.float64
+Leaf: TypeAlias = Name | Call
+# (a name or call, 0), (a number, 0), or (an operation, how many of the last values it takes)
+Steps: TypeAlias = tuple[tuple[Any, int], ...]
 
 OPERATORS: dict[str, Callable[[Any, Any], Any]] = {
     "+": np.add, "-": np.subtract, "*": np.multiply, "/": np.divide, "^": np.power,
@@ -41,23 +44,48 @@ def evaluate(
     float64 or ndarray, in the shape that the resolved values broadcast to
     """
 
-    def value(node: Node, branches: list[Values]) -> Values:
-        match node:
-            case Num(number, _):
-                return np.float64(number)
-            case Name():
-                return _array(resolve_name(node))
-            case Unary():
-                return _array(np.negative(branches[0]))
-            case Binary(op, _, _, _):
-                return _array(OPERATORS[op](*branches))
-            case Call(function, _, _):
-                if _of_the_caller(node):
-                    return _array(resolve_call(node))
-                return _array(FUNCTIONS[function](*branches))
+    def resolved(leaf: Leaf) -> Values:
+        return _array(resolve_name(leaf) if isinstance(leaf, Name) else resolve_call(leaf))
 
     with np.errstate(all="ignore"):
-        return fold(tree, value, _of_the_caller)
+        return run(steps_of(tree), resolved)
+
+
+def steps_of(tree: Node) -> Steps:
+    """A tree as the steps that evaluate it, branches before what takes them."""
+    steps: list[tuple[Any, int]] = []
+
+    def write(node: Node, branches: list[None]) -> None:
+        match node:
+            case Num(number, _):
+                steps.append((np.float64(number), 0))
+            case Name():
+                steps.append((node, 0))
+            case Unary():
+                steps.append((np.negative, 1))
+            case Binary(op, _, _, _):
+                steps.append((OPERATORS[op], 2))
+            case Call(function, _, _):
+                steps.append((node, 0) if _of_the_caller(node) else (FUNCTIONS[function], len(branches)))
+
+    fold(tree, write, _of_the_caller)
+    return tuple(steps)
+
+
+def run(steps: Steps, resolve: Callable[[Leaf], Values]) -> Values:
+    """The value of `steps_of` a tree; call within np.errstate.
+
+    resolve : the value of a name or of a call that is no plain mathematics
+    """
+    values: list[Values] = []
+    for what, takes in steps:
+        if takes:
+            parts = values[-takes:]
+            del values[-takes:]
+            values.append(what(*parts))
+        else:
+            values.append(resolve(what) if isinstance(what, Name | Call) else what)
+    return values[0]
 
 
 def _of_the_caller(node: Node) -> bool:

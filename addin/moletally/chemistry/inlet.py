@@ -1,7 +1,9 @@
 """What enters a vessel: streams in concentrations or flows, moles or mass, mixed by moles and volume."""
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -117,14 +119,14 @@ class Inlet:
             for row in self.feed.species
         ])  # fmt: skip
 
-    @property
+    @cached_property
     def needs_flow(self) -> bool:
         """True where concentrations follow from flows only."""
         return len(self.feed.streams) > 1 or any(
             "flow" in KINDS.get(u.dims, "") for row in self._units for u in row
         )
 
-    @property
+    @cached_property
     def flow(self) -> float:
         """Volumetric flow of all streams, nan if one is unknown."""
         return float(self.stream_flow.sum())
@@ -134,29 +136,43 @@ class Inlet:
 
         place : of that flow, for complaints
         """
+        if not self.needs_flow:
+            known = flow if math.isnan(self.flow) else np.where(np.isnan(flow), self.flow, flow)
+            return self._given[None, :].repeat(len(flow), axis=0), known
         own = self.flow
         total = np.where(np.isnan(flow), own, flow)
-        if self.needs_flow and np.isnan(total).any():
+        if np.isnan(total).any():
             raise InputError(self._missing_flow(), place)
         if len(self.feed.streams) > 1:
             per_stream = self.stream_flow
             if np.isnan(per_stream).any():
                 raise InputError(self._missing_flow(), self.feed.streams[0].place)
-            molar = sum(
-                (self._moles(s, q) for s, q in enumerate(per_stream)), np.zeros(len(self.feed.species))
-            )
-            return np.repeat((molar / own)[None, :], len(flow), axis=0), total
-        by_flow = np.array(["flow" in KINDS.get(row[0].dims, "") for row in self._units])
-        amounts = self._amounts(0)
+            return np.repeat((self._molar / own)[None, :], len(flow), axis=0), total
+        by_flow, amounts = self._by_flow(0), self._given
         with np.errstate(invalid="ignore"):
             c = np.where(by_flow[None, :], amounts[None, :] / total[:, None], amounts[None, :])
         return self._clean(c), total
 
+    @cached_property
+    def _given(self) -> Floats:
+        """Concentrations or flows of the one stream, shape (S,)."""
+        return self._clean(self._amounts(0))
+
+    @cached_property
+    def _molar(self) -> Floats:
+        """Molar flows of all streams together, shape (S,)."""
+        return sum(
+            (self._moles(s, q) for s, q in enumerate(self.stream_flow)), np.zeros(len(self.feed.species))
+        )
+
+    def _by_flow(self, stream: int) -> NDArray[np.bool_]:
+        return np.array(["flow" in KINDS.get(row[stream].dims, "") for row in self._units])
+
     def start(self, c: Floats) -> Floats | None:
         """First contents, shape (N, S); what is not given is the feed. None where nothing is given."""
-        rows = self.feed.species
-        if all(row.start is None for row in rows):
+        if not self._has_start:
             return None
+        rows = self.feed.species
         first = c.copy()
         for i, row in enumerate(rows):
             if row.start is not None:
@@ -164,6 +180,10 @@ class Inlet:
                 if row.start.value < 0:
                     raise InputError(f"Start of {row.name} is negative", row.start.place)
         return self._clean(first)
+
+    @cached_property
+    def _has_start(self) -> bool:
+        return any(row.start is not None for row in self.feed.species)
 
     def temperature(self) -> float:
         """Temperature of the streams, nan where none is given or where they differ."""
@@ -231,8 +251,7 @@ class Inlet:
     def _moles(self, stream: int, flow: float) -> Floats:
         """Molar flows of one stream, mol/s."""
         amounts = self._amounts(stream)
-        by_flow = np.array(["flow" in KINDS.get(row[stream].dims, "") for row in self._units])
-        return np.where(by_flow, amounts, amounts * flow)
+        return np.where(self._by_flow(stream), amounts, amounts * flow)
 
     @staticmethod
     def _clean(c: Floats) -> Floats:

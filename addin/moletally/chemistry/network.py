@@ -65,7 +65,7 @@ class Network:
         """The units of the constants, as given."""
         return tuple(p.unit for p in self.parameters.items if p.unit is not None)
 
-    @property
+    @cached_property
     def needs_temperature(self) -> Parameter | str | None:
         """What makes a temperature necessary: a parameter, a law's text, or None."""
         for reaction in self.reactions:
@@ -73,7 +73,7 @@ class Network:
                 return f"the law {reaction.law.text}"
         return next((p for p in self.parameters.items if p.needs_temperature), None)
 
-    @property
+    @cached_property
     def uses_pressure(self) -> bool:
         """True where a law is in partial pressures."""
         return any(reaction.law.uses_pressure for reaction in self.reactions)

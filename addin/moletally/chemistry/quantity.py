@@ -63,7 +63,7 @@ class Unit:
 
     def from_si(self, value: Value) -> Value:
         """An SI number, or an array of them, in this unit."""
-        return (value - self.offset) / self.factor
+        return (value - self.offset) / self.factor if self.offset else value / self.factor
 
 
 DIMENSIONLESS = Unit("", 1.0, ONE)

@@ -1,7 +1,6 @@
 """What is asked of a vessel and what it answers: arrays with a row per case."""
 
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -40,17 +39,19 @@ class Batch:
     def __len__(self) -> int:
         return len(self.size)
 
-    @cached_property
+    @property
     def residence_time(self) -> Floats:
         """tau = V/q [s], shape (N,); nan where only a catalyst mass is known."""
         return self.size / self.density if self.network.per_mass else self.size
 
-    @cached_property
+    @property
     def key(self) -> tuple[object, ...]:
         """Equal for batches of equal numbers: what an answer is remembered under."""
         start = None if self.start is None else self.start.tobytes()
-        arrays = (self.feed, self.size, self.temperature, self.parameters)
-        return (id(self.network), *(a.tobytes() for a in arrays), start)
+        return (
+            id(self.network), self.feed.tobytes(), self.size.tobytes(), self.temperature.tobytes(),
+            self.parameters.tobytes(), start,
+        )  # fmt: skip
 
     def at(self, rows: NDArray[np.intp]) -> "Batch":
         """The cases in `rows`."""

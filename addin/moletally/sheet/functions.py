@@ -114,9 +114,8 @@ def _fitted(function: Function, args: Sequence[cells.Argument]) -> list[cells.Ar
     if len(given) > len(declared):
         raise InputError(f"{function.name} takes {len(declared)} arguments at the most: {function.signature}")
     given += [cells.OMITTED] * (len(declared) - len(given))
-    required = [i for i, a in enumerate(declared) if not a.optional and a not in (FEED, AT)]
-    for i in required:
-        if given[i] is cells.OMITTED:
-            raise InputError(f"the argument {declared[i].name} is missing: {function.signature}",
+    for value, argument in zip(given, declared, strict=True):
+        if value is cells.OMITTED and not argument.optional and argument not in (FEED, AT):
+            raise InputError(f"the argument {argument.name} is missing: {function.signature}",
                              Place(function.name))  # fmt: skip
     return given

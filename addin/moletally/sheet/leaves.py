@@ -1,5 +1,6 @@
 """What a `want` may name: species, tau, conversion(A), flow(A) ...; each a value with its dimension."""
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -29,14 +30,16 @@ class Leaf:
 
     si : ndarray, shape (M,); dims : its dimension; unit : the unit it is shown in if none is asked for
     undefined : why it is not finite, where it is not
-    in_mass : the same counted in kg instead of mol, with its dimension, where a molar mass is known
+    molar_mass, mass_dims : of an amount [kg/mol], and the dimension it has when it is counted in mass instead
+        of moles; nan where no molar mass is known
     """
 
     si: Floats
     dims: Dims
     unit: Unit
     undefined: str = ""
-    in_mass: tuple[Floats, Dims] | None = None
+    molar_mass: float = math.nan
+    mass_dims: Dims = ONE
 
     @property
     def shown(self) -> Floats:
@@ -45,13 +48,16 @@ class Leaf:
 
     def within(self, unit: Unit) -> Floats:
         """The value in a unit that `fits`."""
-        if self.in_mass is not None and unit.dims == self.in_mass[1] != self.dims:
-            return unit.from_si(self.in_mass[0])
+        if unit.dims != self.dims and self._in_mass(unit):
+            return unit.from_si(self.si * self.molar_mass)
         return unit.from_si(self.si)
 
     def fits(self, unit: Unit) -> bool:
         """True where `within` can answer."""
-        return unit.dims == self.dims or (self.in_mass is not None and unit.dims == self.in_mass[1])
+        return unit.dims == self.dims or self._in_mass(unit)
+
+    def _in_mass(self, unit: Unit) -> bool:
+        return unit.dims == self.mass_dims and not math.isnan(self.molar_mass)
 
 
 def _ratio(one: Floats, other: Floats) -> Floats:
@@ -100,15 +106,10 @@ def _inlet(state: State, tree: Call) -> Leaf:
 
 def _concentration(state: State, i: int, values: Floats) -> Leaf:
     """A concentration; what was fed in mass is shown in mass, though balances run in moles."""
+    units = state.units
     return Leaf(
-        values[:, i], state.units.common.dims, state.units.species[i],
-        in_mass=_in_mass(state, i, values[:, i], MASS_CONCENTRATION),
-    )  # fmt: skip
-
-
-def _in_mass(state: State, i: int, values: Floats, dims: Dims) -> tuple[Floats, Dims] | None:
-    molar_mass = state.molar_mass[i]
-    return None if np.isnan(molar_mass) else (values * molar_mass, dims)
+        values[:, i], units.common.dims, units.species[i], "", state.molar_mass[i], MASS_CONCENTRATION
+    )
 
 
 def _flow(state: State, tree: Call) -> Leaf:
@@ -116,7 +117,7 @@ def _flow(state: State, tree: Call) -> Leaf:
     if np.isnan(state.flow).all():
         raise InputError("flow() needs the volumetric flow: give Flow in the reactor block or below the feed")
     flow = state.concentration[:, i] * state.flow
-    return Leaf(flow, state.units.flow.dims, state.units.flow, in_mass=_in_mass(state, i, flow, MASS_FLOW))
+    return Leaf(flow, state.units.flow.dims, state.units.flow, "", state.molar_mass[i], MASS_FLOW)
 
 
 def _fraction(state: State, tree: Call) -> Leaf:

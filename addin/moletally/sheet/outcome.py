@@ -29,16 +29,17 @@ class Outcome:
 
 def outcome(rows: Sequence[Sequence[Cell | SheetError]]) -> Outcome:
     """A block from cells; an error in it becomes a true Excel error and a problem."""
-    problems: list[Problem] = []
+    problems = tuple(
+        Problem(i, j, value.code, value.reason)
+        for i, row in enumerate(rows)
+        for j, value in enumerate(row)
+        if isinstance(value, SheetError)
+    )
+    return Outcome(tuple([tuple([_shown(value) for value in row]) for row in rows]), problems)
 
-    def shown(value: Cell | SheetError, row: int, column: int) -> Cell:
-        if not isinstance(value, SheetError):
-            return value
-        problems.append(Problem(row, column, value.code, value.reason))
-        return ExcelError(value.code)
 
-    block = tuple(tuple(shown(value, i, j) for j, value in enumerate(row)) for i, row in enumerate(rows))
-    return Outcome(block, tuple(problems))
+def _shown(value: Cell | SheetError) -> Cell:
+    return ExcelError(value.code) if isinstance(value, SheetError) else value
 
 
 def failed(error: SheetError) -> Outcome:

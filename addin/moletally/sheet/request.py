@@ -1,6 +1,7 @@
 """A call read whole: tables, network, cases and the units of its results."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -8,11 +9,10 @@ from numpy.typing import NDArray
 from moletally.chemistry.errors import Finding, SheetError
 from moletally.chemistry.inlet import Inlet, feed_quantities, is_mass_basis
 from moletally.chemistry.network import Network, build_network
-from moletally.chemistry.tables import Quantity
 from moletally.reactors.batch import Batch
 from moletally.sheet.cells import Argument
 from moletally.sheet.reading.grid import is_empty
-from moletally.sheet.reading.reactor import ReactorInput, read_reactor
+from moletally.sheet.reading.reactor import NOTHING, Layout, ReactorInput, read_reactor
 from moletally.sheet.reading.tables import Tables, read_tables
 from moletally.sheet.setup import Setup
 from moletally.sheet.state import ResultUnits, State
@@ -26,22 +26,37 @@ ALWAYS_UNITS = ("Temperature", "Pressure", "E", "dH", "T ref", "dH T ref", "Keq 
 NO_UNIT = (None, "", "-", "1")
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, slots=True)
 class Request:
     """What a call asks, in SI: see Batch and Cases.
 
+    setup : what tables and layout mean together
     cases : for each case of the sheet its row in `batch`, or the fault that makes it an error
+    pressure : ndarray, shape (N,) [Pa], nan where none is given
+    findings : what an audit should say of tables and labels
     """
 
-    tables: Tables
-    network: Network
-    inlet: Inlet
+    setup: Setup
     reactor: ReactorInput
     batch: Batch
     cases: tuple[int | SheetError, ...]
     pressure: Floats
-    units: ResultUnits
     findings: tuple[Finding, ...]
+
+    @property
+    def network(self) -> Network:
+        """The network of the tables."""
+        return self.setup.network
+
+    @property
+    def inlet(self) -> Inlet:
+        """What enters."""
+        return self.setup.inlet
+
+    @property
+    def units(self) -> ResultUnits:
+        """The units of results that name none of their own."""
+        return self.setup.units
 
     def state(self, concentration: Floats) -> State:
         """The outlets as a `want` sees them."""
@@ -63,34 +78,24 @@ def read_request(reactions: Argument, feed: Argument, reactor: Argument, constan
         For what can't be used in any case; a fault in one case stays with that case.
     """
     tables = read_tables(reactions, feed, constants)
-    read = ReactorInput() if not sized and is_empty(reactor) else _read_reactor(reactor, tables)
-    with_units = _carries_units(tables, read)
-    network = _network(tables, with_units)
-    setup = Setup(tables, network, read, with_units, sized)
-    batch, cases, pressure = setup.batch()
-    findings = tuple(setup.findings + setup.inlet.findings)
-    return Request(tables, network, setup.inlet, read, batch, cases, pressure, setup.units(), findings)
+    read = NOTHING if not sized and is_empty(reactor) else read_reactor(reactor, tables.labels)
+    setup = _setup(tables, read.layout, sized)
+    return Request(setup, read, *setup.batch(read), setup.findings)
 
 
-def _read_reactor(argument: Argument, tables: Tables) -> ReactorInput:
-    labels = _labels(tables)
-    return read_reactor(argument, labels.__contains__, labels)
+@lru_cache(maxsize=256)
+def _setup(tables: Tables, layout: Layout, sized: bool) -> Setup:
+    """Tables and layouts are found by identity: those of equal content are one object each."""
+    with_units = _carries_units(tables, layout)
+    setup = Setup(tables, layout, _network(tables, with_units), with_units, sized)
+    setup.check_words()
+    return setup
 
 
-def _labels(tables: Tables) -> list[str]:
-    """Labels of this call that a reactor may carry: in(A), K_A, k(2)."""
-    labels = [f"in({name})" for name in tables.feed.names] + [row.name for row in tables.constants]
-    for number, row in enumerate(tables.reactions.rows, start=1):
-        labels += [f"{name}({number})" for name, _ in row.constants]
-        labels += [name for name, _ in row.constants if name not in labels]
-    return labels
-
-
-def _carries_units(tables: Tables, reactor: ReactorInput) -> bool:
+def _carries_units(tables: Tables, layout: Layout) -> bool:
     """True as soon as a concentration, constant, flow or time has a unit."""
     named = [(name, n.unit) for row in tables.reactions.rows for name, n in row.constants]
-    named += [(label, q.unit) for label, q in reactor.fixed.items() if isinstance(q, Quantity)]
-    named += [(column.label, column.unit) for column in reactor.columns]
+    named += [(column.label, column.unit) for column in (*layout.fixed, *layout.columns)]
     texts = [unit for name, unit in named if name.partition("(")[0].partition(" of ")[0] not in ALWAYS_UNITS]
     texts += [q.unit for q in feed_quantities(tables.feed)]
     texts += [row.value.unit for row in tables.constants]

@@ -1,6 +1,7 @@
 """The state a `want` may ask about: outlet, inlet, flows, and the unit each is shown in."""
 
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,6 +28,12 @@ class ResultUnits:
     time: Unit = DIMENSIONLESS
     volume: Unit = DIMENSIONLESS
     pressure: Unit = DIMENSIONLESS
+
+    @cached_property
+    def in_common(self) -> "ResultUnits":
+        """The same with every concentration in one unit."""
+        same = (self.common,) * len(self.species)
+        return self if self.species == same else replace(self, species=same)
 
 
 @dataclass(frozen=True)
@@ -56,5 +63,5 @@ class State:
 
     def in_common_units(self) -> "State":
         """The same with every concentration in one unit: what expressions are evaluated in."""
-        same = (self.units.common,) * len(self.names)
-        return self if self.units.species == same else replace(self, units=replace(self.units, species=same))
+        units = self.units.in_common
+        return self if units is self.units else replace(self, units=units)

@@ -5,6 +5,7 @@ alone, so an expression reads like the cells beside it. With a unit, everything 
 with its dimension, and converted.
 """
 
+import math
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import lru_cache
@@ -12,8 +13,8 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from moletally.chemistry.errors import InputError, Place, SheetError, Undefined
-from moletally.chemistry.evaluate import evaluate
+from moletally.chemistry.errors import InputError, SheetError, Undefined
+from moletally.chemistry.evaluate import Steps, run, steps_of
 from moletally.chemistry.expression import (
     MATHS,
     Binary,
@@ -48,31 +49,36 @@ class Answer:
     def cell(self, row: int) -> float | SheetError:
         """The value of one state, or why there is none."""
         value = float(self.values[row])
-        return value if np.isfinite(value) or self.fault is None else self.fault
+        return value if self.fault is None or math.isfinite(value) else self.fault
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class _Want:
+    """A text as it is understood: its tree, the steps that evaluate it, and the unit it ends in."""
+
+    tree: Node
+    steps: Steps
+    unit: Unit | None
 
 
 @lru_cache(maxsize=4096)
-def _read(text: str, species: tuple[str, ...]) -> tuple[Node, Unit | None]:
+def _read(text: str, species: tuple[str, ...]) -> _Want:
     expression, unit = split_unit(text)
     tree = parse(expression, WANT)
     check_reserved(expression, tree, species)
-    return tree, None if unit is None else parse_unit(unit)
+    return _Want(tree, steps_of(tree), None if unit is None else parse_unit(unit))
 
 
-def answer(text: str, state: State, place: Place) -> Answer:
-    """Values of a want in M states.
+def answer(text: str, state: State) -> Answer:
+    """Values of a want in M states; call within np.errstate, as functions.call does.
 
     Raises
     ------
     InputError
         Where the text can't be read, or asks for what these states do not have.
     """
-    try:
-        tree, unit = _read(text, state.names)
-        with np.errstate(all="ignore"):
-            return _plain(tree, state) if unit is None else _converted(tree, unit, state)
-    except SheetError as error:
-        raise error.at(place) from None
+    want = _read(text, state.names)
+    return _plain(want, state) if want.unit is None else _converted(want, want.unit, state)
 
 
 def species_answer(state: State, index: int) -> Answer:
@@ -81,33 +87,37 @@ def species_answer(state: State, index: int) -> Answer:
     return Answer(leaf.shown, leaf.unit.text)
 
 
-def _plain(tree: Node, state: State) -> Answer:
-    single = _single(tree, state)
+def _plain(want: _Want, state: State) -> Answer:
+    single = _single(want.tree, state)
     if single is not None:
         return _finish(single.shown, single.unit.text, [single], state)
     leaves = _Leaves(state.in_common_units())
-    values = evaluate(tree, lambda n: leaves.name(n).shown, lambda n: leaves.call(n).shown)
+    values = run(want.steps, lambda node: leaves.of(node).shown)
     return _finish(values, "", leaves.met, state)
 
 
-def _converted(tree: Node, unit: Unit, state: State) -> Answer:
-    single = _single(tree, state)
+def _converted(want: _Want, unit: Unit, state: State) -> Answer:
+    single = _single(want.tree, state)
     if single is not None and single.fits(unit):
         return _finish(single.within(unit), unit.text, [single], state)
     leaves = _Leaves(state.in_common_units())
-    dims = _dimension(tree, leaves)
+    dims = _dimension(want.tree, leaves)
     if not np.allclose(dims, unit.dims, rtol=0, atol=1e-9):
         hint = " (units of mass need the MW column)" if unit.dims[3] and not dims[3] else ""
         raise InputError(
             f"the result is not a quantity that {unit.text} measures: mend the unit or leave it out{hint}"
         )
-    values = evaluate(tree, lambda n: leaves.name(n).si, lambda n: leaves.call(n).si)
+    values = run(want.steps, lambda node: leaves.of(node).si)
     return _finish(unit.from_si(np.asarray(values)), unit.text, leaves.met, state)
 
 
 def _finish(values: object, unit: str, leaves: list[Leaf], state: State) -> Answer:
     """Values as an array, with the reason for those that are not finite."""
-    array = np.broadcast_to(np.asarray(values, dtype=np.float64), (len(state),))
+    array = np.asarray(values, dtype=np.float64)
+    if array.shape != (len(state),):
+        array = np.broadcast_to(array, (len(state),))
+    if np.isfinite(array).all():
+        return Answer(array, unit)
     solved = np.isfinite(state.concentration).all(axis=1)
     if np.isfinite(array[solved]).all():
         return Answer(array, unit)
@@ -126,13 +136,8 @@ class _Leaves:
         self.state = state
         self.met: list[Leaf] = []
 
-    def name(self, node: Name) -> Leaf:
-        return self._keep(name_leaf(self.state, node))
-
-    def call(self, node: Call) -> Leaf:
-        return self._keep(call_leaf(self.state, node))
-
-    def _keep(self, leaf: Leaf) -> Leaf:
+    def of(self, node: Name | Call) -> Leaf:
+        leaf = name_leaf(self.state, node) if isinstance(node, Name) else call_leaf(self.state, node)
         self.met.append(leaf)
         return leaf
 
@@ -154,13 +159,13 @@ def _dimension(tree: Node, leaves: _Leaves) -> Dims:
             case Num():
                 return ONE
             case Name():
-                return leaves.name(node).dims
+                return leaves.of(node).dims
             case Unary():
                 return parts[0]
             case Binary(op, _, right, _):
                 return _combine(op, parts[0], parts[1], right)
             case Call(function, _, _):
-                return _of_function(function, parts) if function in MATHS_NAMES else leaves.call(node).dims
+                return _of_function(function, parts) if function in MATHS_NAMES else leaves.of(node).dims
 
     return fold(tree, value, lambda node: isinstance(node, Call) and node.function not in MATHS_NAMES)
 

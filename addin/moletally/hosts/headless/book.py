@@ -13,6 +13,7 @@ from moletally.hosts.headless.references import Rect, column_number, parse_area,
 __all__ = ["Book", "BookError", "FormulaCell", "Sheet", "StoredError", "Table", "Value", "open_book"]
 
 MAIN = "{http://schemas.openxmlformats.org/spreadsheetml/2006/main}"
+MAIN_FORMULA, MAIN_VALUE = MAIN + "f", MAIN + "v"
 RELATED = "{http://schemas.openxmlformats.org/officeDocument/2006/relationships}id"
 DATE_FORMATS = frozenset((*range(14, 23), *range(27, 37), *range(45, 48), *range(50, 59)))
 DATE_CODE = re.compile(r"[ymdhs]", re.IGNORECASE)
@@ -267,8 +268,13 @@ class _Cells:
             self.clear_children(formula)
 
     def cell(self, cell: Any, row: int, column: int) -> None:
-        value = self.value(cell)
-        formula = cell.find(MAIN + "f")
+        formula = stored = None
+        for child in cell:
+            if child.tag == MAIN_FORMULA:
+                formula = child
+            elif child.tag == MAIN_VALUE:
+                stored = child
+        value = self.value(cell, stored)
         if formula is not None:
             self.formula(cell, formula, row, column, value)
             return
@@ -277,12 +283,11 @@ class _Cells:
             if isinstance(value, float) and cell.get("s") in self.dates:
                 self.sheet.dates.add((row, column))
 
-    def value(self, cell: Any) -> Value:
+    def value(self, cell: Any, stored: Any) -> Value:
         kind = cell.get("t", "n")
         if kind == "inlineStr":
             inline = cell.find(MAIN + "is")
             return None if inline is None else _text(inline)
-        stored = cell.find(MAIN + "v")
         if stored is None or stored.text is None:
             return "" if kind == "str" and stored is not None else None
         text = stored.text

@@ -1,6 +1,6 @@
 """A book recalculated: the engine does the formulas around, our function table does our calls."""
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -122,7 +122,10 @@ class _Run:
     def prepared(self) -> Any:
         import formualizer as fz
 
-        engine = fz.Workbook(mode=fz.WorkbookMode.Ephemeral)
+        # One thread: our functions are Python, and a second thread only waits for the first to let go of it.
+        how = fz.EvaluationConfig()
+        how.enable_parallel = False
+        engine = fz.Workbook(config=fz.WorkbookConfig(mode=fz.WorkbookMode.Ephemeral, eval_config=how))
         for name in self.book.sheets:
             engine.add_sheet(name)
         for name, function in matrix.FUNCTIONS.items():
@@ -165,8 +168,8 @@ class _Run:
     def load(self) -> None:
         """Hand values and formulas to the engine."""
         for name, sheet in self.book.sheets.items():
-            for (row, column), value in sheet.constants.items():
-                self.engine.set_value(name, row, column, _plain(value))
+            for row, column, values in _runs(sheet.constants):
+                self.engine.set_values_batch(name, row, column, values)
         for number, cell in enumerate(self.cells):
             place = (cell.sheet, cell.row, cell.column)
             if place in self.stale:
@@ -266,6 +269,21 @@ class _Run:
              for c in range(cell.area.left, cell.area.right + 1)]
             for r in range(cell.area.top, cell.area.bottom + 1)
         ]  # fmt: skip
+
+
+def _runs(constants: Mapping[tuple[int, int], Value]) -> Iterator[tuple[int, int, list[list[Any]]]]:
+    """Constants as pieces of columns: first row, column, values. The engine takes one by one in quadratic time."""
+    run: list[list[Any]] = []
+    first = (0, 0)
+    for column, row in sorted((column, row) for row, column in constants):
+        if run and (column, row) != (first[0], first[1] + len(run)):
+            yield first[1], first[0], run
+            run = []
+        if not run:
+            first = (column, row)
+        run.append([_plain(constants[row, column])])
+    if run:
+        yield first[1], first[0], run
 
 
 def _is_array(held: Any) -> bool:

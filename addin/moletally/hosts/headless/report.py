@@ -1,6 +1,7 @@
 """What a recalculation found: a table for people, and the same as JSON."""
 
-from collections.abc import Container, Iterator
+import json
+from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 from typing import Any
 
@@ -9,7 +10,7 @@ from moletally.hosts.headless.calculate import Calculation, Result
 from moletally.hosts.headless.references import Rect, address
 from moletally.hosts.headless.spelling import plain
 
-__all__ = ["Trouble", "as_json", "as_text", "troubles"]
+__all__ = ["Trouble", "as_json", "as_text", "json_text", "troubles"]
 
 MOST_ROWS = 12  # of a block shown on a terminal; JSON has all
 
@@ -75,7 +76,7 @@ def _shown(value: Value) -> Any:
     return value.code if isinstance(value, StoredError) else value
 
 
-def as_json(calculation: Calculation, names: Container[str]) -> dict[str, Any]:
+def as_json(calculation: Calculation, names: Collection[str]) -> dict[str, Any]:
     """The answers and problems as the command line prints them with --json."""
     cells = []
     for result in calculation.results:
@@ -91,18 +92,30 @@ def as_json(calculation: Calculation, names: Container[str]) -> dict[str, Any]:
     return {"cells": cells, "problems": problems}
 
 
-def as_text(calculation: Calculation, names: Container[str]) -> str:
+def json_text(report: dict[str, Any]) -> str:
+    """The report as JSON, a line per cell: each line is written by the compiled encoder."""
+    lists = (
+        f' "{name}": [' + ",".join("\n  " + json.dumps(item, ensure_ascii=False) for item in items) + "\n ]"
+        for name, items in report.items()
+    )
+    return "{\n" + ",\n".join(lists) + "\n}"
+
+
+def as_text(calculation: Calculation, names: Collection[str]) -> str:
     """A line per answer, the reason under each failing cell."""
     lines: list[str] = []
-    told = list(troubles(calculation))
+    told = troubles(calculation)
+    of_cell: dict[str, list[Trouble]] = {}
+    for trouble in told:
+        of_cell.setdefault(trouble.cell, []).append(trouble)
     for result in calculation.results:
         if not result.calls and not result.stale:
             continue
         formula = "=" + plain(result.cell.formula, names)
         lines.append(f"{_address(result)}  {formula}")
         lines += [f"    {line}" for line in _block_lines(result)]
-        here = {_address(result, i, j) for i, row in enumerate(result.block) for j in range(len(row))}
-        for trouble in (t for t in told if t.cell in here):
+        here = (_address(result, i, j) for i, row in enumerate(result.block) for j in range(len(row)))
+        for trouble in (t for cell in here for t in of_cell.get(cell, ())):
             where = "" if trouble.cell == _address(result) else f"{trouble.cell}: "
             reason = trouble.reason.replace("\n", "\n        ")
             lines.append(f"    ! {where}{trouble.error}  {reason}")

@@ -174,7 +174,7 @@ class _Writer:
             return
         rect = Rect(self.sheet_name(sheet), *area)
         self.needs.append(rect)
-        if not rect.single and self.intersects(pieces, i):
+        if self.cell.kind == "plain" and not rect.single and self.intersects(pieces, i):
             rect = self.intersection(rect) or rect
             self.out.append(address(rect))
             return
@@ -182,11 +182,11 @@ class _Writer:
 
     def intersects(self, pieces: list[Token], i: int) -> bool:
         """True for a range that stands where a plain formula takes one value: outside of any function."""
-        inside = any(o.function and o.function != TOP for o in self.open)
-        alone = not self.open or self.open[-1].function in ("", TOP)
+        if any(o.function not in ("", TOP) for o in self.open):
+            return False
         before, after = significant(pieces, i - 1, -1), significant(pieces, i + 1, 1)
         joined = any(p is not None and p.text in (":", "#") for p in (before, after))
-        return self.cell.kind == "plain" and alone and not inside and not joined
+        return not joined
 
     def intersection(self, rect: Rect) -> Rect | None:
         """The cell of a column or row that lies beside the formula."""

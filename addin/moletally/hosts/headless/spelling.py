@@ -5,7 +5,7 @@ Excel writes functions of an add-in as `[1]!NAME` or with the add-in's path, a w
 """
 
 import re
-from collections.abc import Container
+from collections.abc import Collection, Container
 
 from moletally.hosts.headless.lexer import SHEET, tokens
 
@@ -13,6 +13,15 @@ __all__ = ["builtin", "own", "plain"]
 
 _OWNER = re.compile(rf"^(?:{SHEET})?(?:_xll\.|_xldudf_|_xludf\.|_xlfn\.)?", re.IGNORECASE)
 _FUTURE = re.compile(r"^(?:_xlfn\.|_xlws\.|_xll\.)+", re.IGNORECASE)
+
+
+_MARKED = re.compile(r"_xl|![\w.\\]+\(", re.IGNORECASE)  # what a formula holds that is not shown as it stands
+
+
+def _lower(formula: str, names: Collection[str]) -> bool:
+    """True where a name of ours may stand in small letters."""
+    folded = formula.upper()
+    return folded != formula and any(folded.count(name) != formula.count(name) for name in names)
 
 
 def own(spelled: str, names: Container[str]) -> str | None:
@@ -26,8 +35,10 @@ def builtin(spelled: str) -> str:
     return _FUTURE.sub("", spelled).upper()
 
 
-def plain(formula: str, names: Container[str]) -> str:
+def plain(formula: str, names: Collection[str]) -> str:
     """A formula as a person would read it: our functions bare, no prefixes of the file format."""
+    if not _MARKED.search(formula) and not _lower(formula, names):
+        return formula
     shown = []
     for kind, text in tokens(formula):
         if kind == "function":

@@ -15,6 +15,7 @@ CODES = {
     "Value": "#VALUE!", "Spill": "#SPILL!", "Calc": "#CALC!",
 }  # fmt: skip
 KINDS = {code: kind for kind, code in CODES.items()}
+AS_THEY_ARE = frozenset({float, str, bool, type(None)})  # what the engine hands in and a cell may be
 EPOCH = dt.datetime(1899, 12, 30)
 
 
@@ -53,7 +54,7 @@ def argument(value: Any, area: Rect | None, book: Book) -> Argument:
     if value == OMITTED_MARK:
         return OMITTED
     if isinstance(value, list):
-        block = tuple(tuple(_cell(v) for v in row) for row in value)
+        block = tuple(map(_row, value))
     elif area is not None:
         block = ((_cell(value),),)
     else:
@@ -74,6 +75,10 @@ def _dated(block: tuple[tuple[Cell, ...], ...], area: Rect | None, book: Book) -
         )
         for i, row in enumerate(block)
     )
+
+
+def _row(values: list[Any]) -> tuple[Cell, ...]:
+    return tuple(values) if AS_THEY_ARE.issuperset(map(type, values)) else tuple(map(_cell, values))
 
 
 def _cell(value: Any) -> Cell:

@@ -100,13 +100,17 @@ class _Edit:
         for (row, column), value in self.values.items():
             wanted[row][row, column] = value
         out: list[bytes] = []
+        left = sorted(wanted, reverse=True)
         at = number = 0
         for match in ROW.finditer(inside):
             out.append(inside[at : match.start()])
             at = match.end()
             number = int(_attribute(match["attributes"], b"r") or number + 1)
-            before = sorted(r for r in wanted if r < number)
-            out += [self.new_row(missing, wanted.pop(missing), prefix) for missing in before]
+            while left and left[-1] < number:
+                missing = left.pop()
+                out.append(self.new_row(missing, wanted.pop(missing), prefix))
+            if left and left[-1] == number:
+                left.pop()
             cells = wanted.pop(number, None)
             out.append(match[0] if cells is None else self.row(match, number, cells, prefix))
         out.append(inside[at:])

@@ -16,6 +16,8 @@ from moletally.sheet.want import Answer, answer, species_answer
 
 __all__ = ["Question", "answers", "ask", "pfr_outlet", "tank_outlet"]
 
+OK = int(Status.OK)
+
 Question = tuple[Request, Wants | None, Outlets]
 
 
@@ -55,9 +57,9 @@ def answers(wants: Wants | None, state: State) -> list[Answer | SheetError | Non
             found.append(text)
             continue
         try:
-            found.append(answer(text, state, want_place(i, wants.shape)))
+            found.append(answer(text, state))
         except SheetError as error:
-            found.append(error)
+            found.append(error.at(want_place(i, wants.shape)))
     return found
 
 
@@ -67,7 +69,7 @@ def _row(kind: str, request: Request, outlets: Outlets, columns: Sequence[Answer
     row = request.cases[case]
     if isinstance(row, SheetError):
         return [row] * len(columns)
-    if outlets.status[row] != Status.OK:
+    if outlets.status[row] != OK:
         fault: SheetError = NoAnswer(failure(kind, request, outlets, case))
         return [
             column if isinstance(column, SheetError) else "" if column is None else fault

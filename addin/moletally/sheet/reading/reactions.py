@@ -1,5 +1,6 @@
 """The reactions table, a row per reaction; and the row's quantities, which other layouts share."""
 
+from collections.abc import Iterable
 from difflib import get_close_matches
 
 from moletally.chemistry.equations import parse_equation
@@ -18,8 +19,8 @@ TABLE = "Reactions"
 class Numbers:
     """The numbers of a call's reactions and constants, in slots: structure apart from value."""
 
-    def __init__(self) -> None:
-        self.values: list[float] = []
+    def __init__(self, before: Iterable[float] = ()) -> None:
+        self.values: list[float] = list(before)
 
     def put(self, columns: Columns, column: Column, row: int) -> Number:
         """Read the number of a column in a row."""

@@ -1,8 +1,11 @@
 """The reactor argument: a number, a range of numbers, a block of labels, or a table of cases."""
 
-from collections.abc import Callable, Iterable
-from dataclasses import dataclass, field
-from math import nan
+import marshal
+from collections.abc import Callable, Collection
+from dataclasses import dataclass
+from functools import cached_property, lru_cache
+from math import isfinite, nan
+from typing import Any
 
 from moletally.chemistry.errors import InputError, Place, SheetError, near_miss
 from moletally.chemistry.tables import Quantity
@@ -11,7 +14,7 @@ from moletally.sheet.reading.grid import Grid, as_block, fold, is_empty, split_h
 from moletally.sheet.reading.labels import LABELS, Kind, canonical
 from moletally.sheet.reading.numbers import check_length, is_blank, read_number, refuse_odd
 
-__all__ = ["CaseColumn", "ReactorInput", "read_reactor"]
+__all__ = ["BARE", "NOTHING", "CaseColumn", "Layout", "ReactorInput", "read_reactor"]
 
 TABLE = "Reactor"
 HEADERS = {"label", "value", "unit", "quantity", "name"}
@@ -19,42 +22,141 @@ HEADERS = {"label", "value", "unit", "quantity", "name"}
 
 @dataclass(frozen=True, slots=True)
 class CaseColumn:
-    """A label that has a value per case."""
+    """A label that has a number, or a number per case."""
 
     label: str
     unit: str | None
     place: Place
 
 
-@dataclass(frozen=True, slots=True)
-class ReactorInput:
-    """What the reactor argument says.
+@dataclass(frozen=True, eq=False)
+class Layout:
+    """What the reactor argument says apart from its numbers; there is one object for all that say the same.
 
-    fixed : label -> quantity or word, the same for all cases
-    columns, rows : labels that vary, and their values per case (nan where a cell is empty), or the fault
-        that makes a case an error
-    shape : of the answer to one want, where the argument is a range of residence times
+    fixed, columns : labels with a number for all cases, labels with a number per case
+    words : label -> word
     bare : True where the values are residence times without a label, in the time unit of the constants
     single : True where there is one case that is not a row of a table
     """
 
-    fixed: dict[str, Quantity | str] = field(default_factory=dict)
+    fixed: tuple[CaseColumn, ...] = ()
     columns: tuple[CaseColumn, ...] = ()
-    rows: tuple[tuple[float, ...] | SheetError, ...] = ((),)
-    shape: tuple[int, int] | None = None
+    words: tuple[tuple[str, str], ...] = ()
     bare: bool = False
     single: bool = True
 
+    @cached_property
+    def where(self) -> dict[str, int]:
+        """Label -> index in `columns`, or that in `fixed` less their number, and so negative."""
+        fixed = {column.label: i - len(self.fixed) for i, column in enumerate(self.fixed)}
+        return fixed | {column.label: i for i, column in enumerate(self.columns)}
+
+    def column(self, label: str) -> CaseColumn | None:
+        """Unit and place of a label that has numbers."""
+        where = self.where.get(label)
+        return None if where is None else self.columns[where] if where >= 0 else self.fixed[where]
+
+    @property
+    def labels(self) -> tuple[str, ...]:
+        """All labels, those that vary last."""
+        return (*(word for word, _ in self.words), *self.where)
+
+
+# A fresh object per content, so that what is worked out for a layout is found by identity.
+_layout = lru_cache(maxsize=512)(Layout)
+NO_LABELS = _layout()
+
+
+@dataclass(frozen=True, slots=True)
+class ReactorInput:
+    """What the reactor argument says.
+
+    numbers : those of the layout's fixed labels
+    rows : the numbers of its columns per case (nan where a cell is empty), or the fault that makes a case an error
+    shape : of the answer to one want, where the argument is a range of residence times
+    """
+
+    layout: Layout
+    numbers: tuple[float, ...] = ()
+    rows: tuple[tuple[float, ...] | SheetError, ...] = ((),)
+    shape: tuple[int, int] | None = None
+
+    @property
+    def fixed(self) -> dict[str, Quantity | str]:
+        """Label -> quantity or word, the same for all cases."""
+        found: dict[str, Quantity | str] = dict(self.layout.words)
+        for column, value in zip(self.layout.fixed, self.numbers, strict=True):
+            found[column.label] = Quantity(value, column.unit, column.place)
+        return found
+
+    @property
+    def single(self) -> bool:
+        """True where there is one case that is not a row of a table."""
+        return self.layout.single
+
+
+NOTHING = ReactorInput(NO_LABELS)  # where no vessel is meant
+BARE = CaseColumn("Residence time", None, Place(TABLE))
+ONE_TIME = _layout(columns=(BARE,), bare=True)
+MANY_TIMES = _layout(columns=(BARE,), bare=True, single=False)
+MOST_LINES = 50  # of a block of labels that is remembered
 
 Known = Callable[[str], bool]
 
 
-def read_reactor(argument: Argument, known: Known, names: Iterable[str]) -> ReactorInput:
+def read_reactor(argument: Argument, names: Collection[str]) -> ReactorInput:
     """Read the reactor argument.
 
-    known : says whether a text is the label of a constant, `k(2)` or `in(A)` of this call
-    names : those labels, for hints
+    names : the labels of constants, `k(2)` and `in(A)` of this call
     """
+    block = argument if isinstance(argument, tuple) else None
+    cell = block[0][0] if block is not None and len(block) == len(block[0]) == 1 else argument
+    if type(cell) is float and isfinite(cell):
+        return ReactorInput(ONE_TIME, rows=((cell,),))
+    if block is not None and len(block) <= MOST_LINES and all(type(row[0]) is str for row in block):
+        known = _read_like_before(block, tuple(names))
+        if known is not None:
+            return known
+    return _read(argument, names)
+
+
+def _read_like_before(block: Block, names: tuple[str, ...]) -> ReactorInput | None:
+    """A block of labels that differs in its numbers alone from one that was read; None for all else.
+
+    What remains without the finite numbers of its second column is the key, in bytes as in `tables`.
+    """
+    rest: list[Any] = []
+    numbers: list[float] = []
+    for row in block:
+        value = row[1] if len(row) > 1 else None
+        if type(value) is float and isfinite(value):
+            numbers.append(value)
+            rest.append((row[0], ..., *row[2:]))
+        else:
+            rest.append(row)
+    try:
+        layout = _layout_without_numbers(marshal.dumps(tuple(rest), 2), names) if numbers else None
+    except ValueError:  # dates and error values
+        return None
+    return None if layout is None else ReactorInput(layout, tuple(numbers))
+
+
+@lru_cache(maxsize=512)
+def _layout_without_numbers(key: bytes, names: tuple[str, ...]) -> Layout | None:
+    """The layout of a block of labels, None where the numbers left out have a say in it."""
+    rest = marshal.loads(key)
+    block = tuple(tuple(0.0 if cell is ... else cell for cell in row) for row in rest)
+    left_out = [i for i, row in enumerate(rest, start=1) if ... in row]
+    try:
+        read = _read(block, names)
+    except SheetError:  # it may quote a number, so the true one has to be there
+        return None
+    layout = read.layout
+    places = [column.place.row for column in layout.fixed]
+    return layout if layout.single and not layout.columns and places == left_out else None
+
+
+def _read(argument: Argument, names: Collection[str]) -> ReactorInput:
     if is_empty(argument):
         raise InputError(
             f"the reactor {_emptiness(argument)}: give a residence time, a range of them, a block of"
@@ -64,11 +166,11 @@ def read_reactor(argument: Argument, known: Known, names: Iterable[str]) -> Reac
     block = as_block(argument, Place(TABLE))
     if len(block) == 1 and len(block[0]) == 1:
         place = Place(TABLE, 1, 1) if isinstance(argument, tuple) else Place(TABLE)
-        return _bare(((read_number(block[0][0], place),),), None)
+        return ReactorInput(ONE_TIME, rows=((read_number(block[0][0], place),),))
     cells = trimmed(block)
     if _is_range(cells):
         return _range(cells)
-    return _labelled(Grid(TABLE, cells), known, tuple(names))
+    return _labelled(Grid(TABLE, cells), names.__contains__, tuple(names))
 
 
 def _emptiness(argument: Argument) -> str:
@@ -100,11 +202,6 @@ def _is_range(cells: Block) -> bool:
     return number or not any(_is_word(cell) for row in cells for cell in row)
 
 
-def _bare(rows: tuple[tuple[float, ...] | SheetError, ...], shape: tuple[int, int] | None) -> ReactorInput:
-    column = CaseColumn("Residence time", None, Place(TABLE))
-    return ReactorInput(columns=(column,), rows=rows, shape=shape, bare=True, single=shape is None)
-
-
 def _range(block: Block) -> ReactorInput:
     """A case for every cell of the range, in reading order; its shape is kept."""
     rows = tuple(
@@ -112,7 +209,7 @@ def _range(block: Block) -> ReactorInput:
         for i, row in enumerate(block, start=1)
         for j, cell in enumerate(row, start=1)
     )
-    return _bare(rows, (len(block), len(block[0])))
+    return ReactorInput(MANY_TIMES, rows=rows, shape=(len(block), len(block[0])))
 
 
 def _guarded(read: Callable[[], tuple[float, ...]]) -> tuple[float, ...] | SheetError:
@@ -135,7 +232,20 @@ def _labelled(grid: Grid, known: Known, names: tuple[str, ...]) -> ReactorInput:
         return _cases(grid, cut + 1, fixed, known, names)
     if _starts_cases(grid, known):
         return _cases(grid, 0, {}, known, names)
-    return ReactorInput(fixed=_block(grid, 0, len(grid.cells), known, names))
+    return _laid_out(_block(grid, 0, len(grid.cells), known, names))
+
+
+def _laid_out(fixed: dict[str, Quantity | str], columns: tuple[CaseColumn, ...] = (),
+              rows: tuple[tuple[float, ...] | SheetError, ...] = ((),), single: bool = True) -> ReactorInput:  # fmt: skip
+    """Layout and numbers apart."""
+    given = {label: q for label, q in fixed.items() if isinstance(q, Quantity)}
+    layout = _layout(
+        fixed=tuple(CaseColumn(label, q.unit, q.place) for label, q in given.items()),
+        columns=columns,
+        words=tuple((label, q) for label, q in fixed.items() if isinstance(q, str)),
+        single=single,
+    )
+    return ReactorInput(layout, tuple(q.value for q in given.values()), rows)
 
 
 def _starts_cases(grid: Grid, known: Known) -> bool:
@@ -239,7 +349,7 @@ def _cases(grid: Grid, head: int, fixed: dict[str, Quantity | str], known: Known
                  for i in range(head + 1, len(grid.cells)))  # fmt: skip
     if not rows:
         raise InputError("the table of cases has a header row but no case", grid.place(head, 0, ""))
-    return ReactorInput(fixed, tuple(column for _, column in columns), rows, single=False)
+    return _laid_out(fixed, tuple(column for _, column in columns), rows, single=False)
 
 
 def _case(grid: Grid, row: int, columns: list[tuple[int, CaseColumn]]) -> tuple[float, ...]:

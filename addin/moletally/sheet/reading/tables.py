@@ -1,13 +1,14 @@
 """The tables of one call, whatever their layout: reactions, feed, constants."""
 
 import marshal
+from collections.abc import Callable
 from dataclasses import dataclass
-from functools import lru_cache
-from typing import Any
+from functools import cached_property, lru_cache
+from typing import Any, TypeVar
 
 from moletally.chemistry.errors import InputError, Place
 from moletally.chemistry.tables import ConstantRow, FeedTable, ReactionTable
-from moletally.sheet.cells import OMITTED, Argument, Omitted
+from moletally.sheet.cells import OMITTED, Argument
 from moletally.sheet.reading.constants import read_constants
 from moletally.sheet.reading.feed import read_feed
 from moletally.sheet.reading.grid import Grid, is_empty
@@ -19,7 +20,7 @@ __all__ = ["Tables", "read_tables"]
 MOST_ROWS = 2000  # of a range that is remembered: whole columns would fill the memory
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, eq=False)
 class Tables:
     """What the tables say; `numbers` fills the slots of `reactions` and `constants`."""
 
@@ -27,6 +28,15 @@ class Tables:
     constants: tuple[ConstantRow, ...]
     feed: FeedTable
     numbers: tuple[float, ...]
+
+    @cached_property
+    def labels(self) -> tuple[str, ...]:
+        """Labels of these tables that a reactor may carry: in(A), K_A, k(2)."""
+        labels = [f"in({name})" for name in self.feed.names] + [row.name for row in self.constants]
+        for number, row in enumerate(self.reactions.rows, start=1):
+            labels += [f"{name}({number})" for name, _ in row.constants]
+            labels += [name for name, _ in row.constants if name not in labels]
+        return tuple(labels)
 
 
 def read_tables(reactions: Argument, feed: Argument, constants: Argument) -> Tables:
@@ -39,38 +49,57 @@ def read_tables(reactions: Argument, feed: Argument, constants: Argument) -> Tab
     SheetError
         With the place: table, row and column of the range, header.
     """
-    arguments = (reactions, feed, constants)
-    if any(isinstance(a, tuple) and len(a) > MOST_ROWS for a in arguments):
-        return _read(*arguments)
-    try:
-        # Bytes, because TRUE and 1 are equal as cells but not as content; version 2 does not depend on identity.
-        plain: Any = tuple(... if isinstance(a, Omitted) else a for a in arguments)
-        key = marshal.dumps(plain, 2)
-    except ValueError:  # dates and error values: rare, and refused anyway
-        return _read(*arguments)
-    return _remembered(key)
+    return _tables(*[... if a is OMITTED else a for a in (reactions, feed, constants)])
 
 
-@lru_cache(maxsize=256)
-def _remembered(key: bytes) -> Tables:
-    reactions, feed, constants = (OMITTED if a is ... else a for a in marshal.loads(key))
-    return _read(reactions, feed, constants)
+Read = TypeVar("Read")
 
 
-def _read(reactions: Argument, feed: Argument, constants: Argument) -> Tables:
+def _by_content(read: Callable[..., Read]) -> Callable[..., Read]:
+    """`read`, which remembers what it made of the same content."""
+    remembered = lru_cache(maxsize=256)(lambda key: read(*marshal.loads(key)))
+
+    def by_content(*arguments: Any) -> Read:
+        for argument in arguments:
+            if type(argument) is tuple and len(argument) > MOST_ROWS:
+                return read(*arguments)
+        try:
+            # Bytes, because TRUE and 1 are equal as cells but not as content; version 2 does not depend on identity.
+            key = marshal.dumps(arguments, 2)
+        except ValueError:  # dates and error values: rare, and refused anyway
+            return read(*arguments)
+        return remembered(key)
+
+    return by_content
+
+
+@_by_content
+def _tables(*arguments: Any) -> Tables:
+    """The tables of a call; what is left out comes as an ellipsis, which can be written as bytes."""
+    reactions, feed, constants = (OMITTED if a is ... else a for a in arguments)
     if is_empty(reactions):
         raise InputError("the reactions are missing: give the range of their table", Place("Reactions"))
-    numbers = Numbers()
-    grid = Grid.of("Reactions", reactions)
-    own: FeedTable | None = None
-    if is_matrix(grid):
-        table, own = read_matrix(grid, numbers)
-    else:
-        table = read_list(grid, numbers)
-    given = own if is_empty(feed) else read_feed(Grid.of("Feed", feed))
+    table, own, values = _reactions(reactions)
+    given = own if is_empty(feed) else _feed(feed)
     if given is None:
         raise InputError(
             "the feed is missing: give the range of the feed table as second argument", Place("Feed")
         )
+    numbers = Numbers(values)
     rows = () if is_empty(constants) else read_constants(Grid.of("Constants", constants), numbers)
     return Tables(table, rows, given, tuple(numbers.values))
+
+
+@_by_content
+def _reactions(argument: Argument) -> tuple[ReactionTable, FeedTable | None, tuple[float, ...]]:
+    """The reactions, the feed if their table holds it, and their numbers."""
+    numbers = Numbers()
+    grid = Grid.of("Reactions", argument)
+    if is_matrix(grid):
+        return (*read_matrix(grid, numbers), tuple(numbers.values))
+    return read_list(grid, numbers), None, tuple(numbers.values)
+
+
+@_by_content
+def _feed(argument: Argument) -> FeedTable:
+    return read_feed(Grid.of("Feed", argument))

@@ -1,6 +1,7 @@
 """The want argument: a text, or a range of texts with a result of the same shape."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 from moletally.chemistry.errors import InputError, Place, SheetError
 from moletally.sheet.cells import Argument, Cell
@@ -20,12 +21,19 @@ class Wants:
 
 def read_wants(argument: Argument) -> Wants | None:
     """None where the argument is left out or blank."""
+    if isinstance(argument, str):
+        return _one(argument)
     if is_empty(argument):
         return None
     block = as_block(argument, Place("want"))
     shape = (len(block), len(block[0]))
     cells = [cell for row in block for cell in row]
     return Wants(tuple(_text(cell, want_place(i, shape)) for i, cell in enumerate(cells)), shape)
+
+
+@lru_cache(maxsize=4096)
+def _one(text: str) -> Wants | None:
+    return Wants((text.strip(),), (1, 1)) if text.strip() else None
 
 
 def want_place(index: int, shape: tuple[int, int]) -> Place:
