@@ -9,6 +9,7 @@
 #include "kernel.h"
 
 #define MOST_STEPS 1500
+#define MOST_ITERATIONS 20000 /* of Newton's method, in all steps and looks; ten times what any tank that rests took */
 #define ERROR 0.02   /* of a concentration, per step */
 #define TRACE 1e-12  /* of the largest concentration: below it a species may change as it likes */
 #define FIRST 1e-9   /* residence times: first step, and when to stop */
@@ -49,7 +50,8 @@ int creep(desk *d, const tank *t, double *c, int *iterations)
         trend[i] = 0.0;
         largest = fmax(largest, fmax(c[i], t->feed[i]));
     }
-    for (int step = 1; step <= MOST_STEPS && !found; step++) {
+    int before = *iterations;
+    for (int step = 1; step <= MOST_STEPS && !found && *iterations - before < MOST_ITERATIONS; step++) {
         double size = 1e-6;
         if (!euler(d, t, c, h, mixed, after, iterations))
             size = INFINITY;

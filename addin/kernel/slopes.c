@@ -12,6 +12,7 @@
 #include "tables.h"
 
 #define MOST_STEPS 12000
+#define MOST_CARRIED 400000 /* columns times steps: a step costs as much per column as two steps of the tube */
 #define ABSOLUTE 1e-25
 #define SHARE_OF_DEPTH 0.1
 #define STEADY_NOTHING 1e-200
@@ -399,7 +400,8 @@ static void tube_slopes(desk *d, carried *y, stepper *s, double *least, double *
     memset(y->s, 0, (size_t)y->x.columns * (size_t)S * sizeof *y->s);
     for (int i = 0; i < S; i++)
         y->s[(ptrdiff_t)i * S + i] = 1.0;
-    stepper_start(d, s, &y->f, &o, NULL, feed, MOST_STEPS, EXPLICIT);
+    int most = MOST_CARRIED / y->x.columns;
+    stepper_start(d, s, &y->f, &o, NULL, feed, most < MOST_STEPS ? most : MOST_STEPS, EXPLICIT);
     while (s->active && s->t < tau && tau - s->t > 1e-15 * tau) {
         s->h = fmin(s->h, tau - s->t);
         if (!attempt(d, s) || cross_ends(y, s))

@@ -9,7 +9,7 @@
 
 #include "kernel.h"
 
-#define MOST_STEPS 12000
+#define MOST_STEPS 12000 /* of the mesh, and again of all steps between its points */
 #define ABSOLUTE 1e-25
 #define NOTHING 1e-40  /* shown as zero */
 #define VANISHING 1e-5 /* of the feed: where a law of negative order is about to end */
@@ -34,6 +34,7 @@ typedef struct {
     totals w, none;
     stepper s, inner;
     int waiting; /* points not reached yet */
+    int between; /* steps that may still be taken between mesh points */
     int odd;     /* a law takes a root of a negative number right at the inlet */
 } run_state;
 
@@ -134,18 +135,21 @@ static void note_ends(run_state *u)
     }
 }
 
-/* The state a time h after c, in as many steps as it takes; nan if they are too many. */
+/* The state a time h after c, in as many steps as it takes; nan if they are too many, this time or of all points
+ * together: a profile of a thousand points has the same allowance as one of ten. */
 static void many_steps(run_state *u, const double *c, double h, double *out)
 {
     desk *d = u->d;
     stepper *s = &u->inner;
-    stepper_start(d, s, &u->f, &u->o, NULL, c, MOST_STEPS, STIFF);
+    stepper_start(d, s, &u->f, &u->o, NULL, c, u->between, STIFF);
+    s->active = u->between > 0;
     while (s->active && s->t < h) {
         s->h = fmin(s->h, h - s->t);
         attempt(d, s);
         if (h - s->t <= 1e-15 * h)
             break;
     }
+    u->between -= s->steps;
     for (int i = 0; i < d->net->species; i++)
         out[i] = s->active ? s->c[i] : NAN;
 }
@@ -226,7 +230,7 @@ static int check_point(run_state *u, double asked, double *c)
         if (u->odd || takes_odd_root(d, u->f.cut, u->slope))
             return MT_NOT_FINITE;
     }
-    return !finite ? MT_NOT_CONVERGED : negative ? MT_NEGATIVE : lost ? MT_INVARIANT : MT_OK;
+    return !finite ? (u->between > 0 ? MT_NOT_CONVERGED : MT_WORK_CAP) : negative ? MT_NEGATIVE : lost ? MT_INVARIANT : MT_OK;
 }
 
 /* Why the tube was given up: beside a vanishing species it is that species' doing. */
@@ -271,7 +275,7 @@ static void follow(run_state *u, int64_t row)
     const network *w = u->d->net;
     const mt_tubes *a = u->all;
     load(u, row);
-    u->waiting = 0;
+    u->waiting = 0, u->between = MOST_STEPS;
     for (int i = 0; i < w->all; i++)
         a->exhausted_at[row * w->all + i] = w->wanted[i] ? 0.0 : NAN;
     for (int64_t m = 0; m < a->m; m++) {

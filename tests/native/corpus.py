@@ -23,6 +23,15 @@ NETWORKS = {
     "negative order": ("A B", ["A -> B : k/A", "B -> A : K*A/B"]),
     "reversible": ("A B C", ["A + B -> C : k*A*B - K*C", "2 C -> A : 1e4*C^2 - 1e-4*A"]),
     "stiff": ("A B C", ["A -> B : 0.04*A", "2 B -> B + C : 3e7*B^2", "B + C -> A + C : 1e4*B*C"]),
+    "damped by a long step": (
+        "A B C",
+        [
+            "2 A -> 2 C : 1.2e5*A",
+            "2 C + A -> 4.5 B : 550*C^1.5*A^2.5/(1 + 21*A)^2",
+            "A + C -> 3 B : 6*A^2.5*C^2 - 0.0153*B",
+            "2 B + C -> 2.3333333333333335 A : 0.0094*B^1.5*C^0.5",
+        ],
+    ),
     "two states": ("A B C", ["A + 2 B -> 3 B : k*A*B^2", "B -> C : 0.025*B", "2 C -> A : K*C^2"]),
     "chain branching": ("A B C D E", ["A + B -> 2 B : k*A*B", "B -> 0 : K*B", "C + D -> 2 D : C*D", "D -> E : D"]),
     "inhibited": ("U P", ["U -> P : k*U/(1 + K*U)^2"]),

@@ -1,4 +1,5 @@
 /* Feeds the kernel with damaged networks and with all kinds of numbers: fuzz CORPUS SEED COUNT [FIRST]
+ * or, without a seed, with every network of the corpus that has one thing wrong: fuzz CORPUS
  *
  * Built with sanitizers (test_sanitizers.py), so that any step outside memory, any undefined operation and
  * any leak ends it. What it asks besides: each call ends with a known status; an answer that is reported
@@ -16,11 +17,11 @@
 
 #include "moletally.h"
 
-/* What one case may cost at most; test_work.py says how these follow from the kernel's allowances. */
-#ifndef MOST_TANK_WORK
-#define MOST_TANK_WORK INT32_MAX
-#define MOST_TUBE_WORK INT32_MAX
-#endif
+/* What one case may cost at most, in evaluations of all laws: what the kernel's allowances add up to.
+ * Tank: 1500 steps of 13, 375 looks of 32, 20,000 iterations of creep.c, and some 300 before and after.
+ * Tube: 12,000 steps of 17 along the mesh, as many of 12 between mesh points, and 17 for each point. */
+#define MOST_TANK_WORK 52000
+#define MOST_TUBE_WORK 350000
 #define MOST_TUBE_STEPS 12000
 #define HANGS_AFTER 120 /* s of one case: no judgement on speed, sanitizers are slow */
 #define LAST_STATUS MT_STEP_TOO_SMALL
@@ -372,27 +373,33 @@ static void refuse(const mt_network *w)
     mt_network_free(NULL);
 }
 
-static void solve_tubes(const mt_network *w, sizes z)
+static void check_tubes(const mt_network *w, mt_tubes t, sizes z)
 {
-    int64_t n = below(3), m = below(4) ? below(4) : 12;
-    mt_tubes t = {.n = n, .m = m};
-    t.feed = numbers(n * z.species, -3, 2), t.asked = numbers(n * m, -4, 4), t.T = temperatures(n);
-    t.p = numbers(n * z.parameters, -3, 3);
-    t.c = keep_block(n * m * z.species, sizeof(double)), t.status = keep_block(n * m, sizeof(int32_t));
-    t.exhausted_at = keep_block(n * z.species, sizeof(double));
-    t.steps = keep_block(n, sizeof(int32_t)), t.work = keep_block(n, sizeof(int32_t));
+    int64_t points = t.n * t.m;
+    t.c = keep_block(points * z.species, sizeof(double)), t.status = keep_block(points, sizeof(int32_t));
+    t.exhausted_at = keep_block(t.n * z.species, sizeof(double));
+    t.steps = keep_block(t.n, sizeof(int32_t)), t.work = keep_block(t.n, sizeof(int32_t));
     check(mt_solve_tubes(w, &t) == MT_DONE, "tubes: a return code that there is not");
-    for (int64_t k = 0; k < n * m; k++) {
+    for (int64_t k = 0; k < points; k++) {
         note_status(t.status[k]);
         if (t.status[k] == MT_OK)
             check_finite(t.c + k * z.species, z.species, "tubes: a fine state is not finite");
     }
-    for (int64_t k = 0; k < n; k++) {
+    for (int64_t k = 0; k < t.n; k++) {
         check(t.steps[k] >= 0 && t.steps[k] <= MOST_TUBE_STEPS, "tubes: more steps than allowed");
         check(t.work[k] >= 0 && t.work[k] <= MOST_TUBE_WORK, "tubes: more work than allowed");
         note_most(&most_tube_work, &worst_tube, t.work[k]);
         most_steps = t.steps[k] > most_steps ? t.steps[k] : most_steps;
     }
+}
+
+static void solve_tubes(const mt_network *w, sizes z)
+{
+    int64_t n = below(3), m = below(4) ? below(4) : 12;
+    mt_tubes t = {.n = n, .m = m};
+    t.feed = numbers(n * z.species, -3, 2), t.asked = numbers(n * m, -6, 4), t.T = temperatures(n);
+    t.p = numbers(n * z.parameters, -3, 3);
+    check_tubes(w, t, z);
 }
 
 static void find_slopes(const mt_network *w, sizes z, int of_tubes)
@@ -476,6 +483,117 @@ static void run_case(void)
     mt_network_free(w);
 }
 
+/* ---- sweeps ---- */
+
+/* Linked with --wrap: allocations of the kernel fail where they are told to. */
+void *__real_malloc(size_t size);
+void *__real_calloc(size_t count, size_t size);
+static int64_t fails_at = -1; /* how many allocations succeed before one fails; below 0: none fails */
+
+static int fails(void) { return fails_at >= 0 && fails_at-- == 0; }
+
+void *__wrap_malloc(size_t size) { return fails() ? NULL : __real_malloc(size); }
+void *__wrap_calloc(size_t count, size_t size) { return fails() ? NULL : __real_calloc(count, size); }
+
+/* A call with each of its allocations failing in turn has to say so; returns how many it makes. */
+static int without_memory(const mt_network *w, sizes z, int which)
+{
+    severity = 0.0;
+    for (int k = 0; k < 100; k++) {
+        const double *feed = numbers(z.species, -3, 2), *p = numbers(z.parameters, -3, 3), *T = temperatures(1);
+        double *x = keep_block(z.species * (z.species + 2 + z.parameters) + z.terms + 1, sizeof *x), y[4];
+        uint8_t *u = keep_block(z.species + 1, 1), b[2];
+        int32_t i[3];
+        mt_tanks tanks = {1, MT_FROM_FEED, feed, T, T, p, NULL, NULL, NULL, x, i, b, b + 1, u, y, y + 1, y + 2,
+                          x + z.species, i + 1, i + 2};
+        mt_tubes tubes = {1, 1, feed, T, T, p, x, i, x + z.species, i + 1, i + 2};
+        mt_slopes slopes = {1, feed, T, T, p, feed, x, i};
+        mt_rates rates = {1, 0, feed, T, p, x, NULL, NULL, NULL};
+        fails_at = k;
+        int code = which == 0   ? mt_solve_tanks(w, &tanks)
+                   : which == 1 ? mt_solve_tubes(w, &tubes)
+                   : which == 2 ? mt_tank_slopes(w, &slopes)
+                   : which == 3 ? mt_tube_slopes(w, &slopes)
+                   : which == 4 ? mt_evaluate(w, &rates)
+                                : mt_step(w, 0, feed, 300.0, p, feed, 1.0, x, x + z.species);
+        int spared = fails_at >= 0;
+        fails_at = -1;
+        for (int j = 0; j < n_blocks; j++)
+            free(blocks[j].memory);
+        n_blocks = 0;
+        if (spared)
+            return k;
+        check(code == MT_NO_MEMORY, "out of memory was not told");
+    }
+    return 0;
+}
+
+/* A thousand points, closer than the steps of a tube of the first species alone: where a long step damps a fast
+ * transient the points are reached by steps of their own. */
+static void profile(const mt_network *w, sizes z)
+{
+    severity = 0.0;
+    mt_tubes t = {.n = 1, .m = 1000};
+    double *feed = keep_block(z.species, sizeof *feed);
+    for (int64_t i = 0; i < z.species; i++)
+        feed[i] = i ? 0.0 : 30.786;
+    t.feed = sealed(feed);
+    double *asked = keep_block(t.m, sizeof *asked);
+    for (int64_t k = 0; k < t.m; k++)
+        asked[k] = 3.78e-9 * pow(10.0, 6.0 * (double)k / (double)(t.m - 1));
+    t.asked = sealed(asked);
+    t.T = temperatures(1), t.p = numbers(z.parameters, -1, 1);
+    check_tubes(w, t, z);
+    drop_blocks();
+}
+
+static int64_t starve(const packed *p)
+{
+    mt_network *w = NULL;
+    int64_t failed = 0;
+    for (int64_t k = 0; !w; k++) {
+        fails_at = k;
+        w = mt_network_new(p->ints, p->n_ints, p->reals, p->n_reals);
+        check((w != NULL) == (fails_at >= 0), "out of memory was not told");
+        failed += !w;
+    }
+    fails_at = -1;
+    profile(w, (sizes){p->ints[2], p->ints[4], p->ints[6]});
+    for (int which = 0; which < 6; which++)
+        failed += without_memory(w, (sizes){p->ints[2], p->ints[4], p->ints[6]}, which);
+    mt_network_free(w);
+    return failed;
+}
+
+/* Sound networks with one thing wrong, one after the other: each has to be refused. */
+static void sweep(void)
+{
+    static const int32_t WRONG[] = {-1, INT32_MAX, INT32_MIN};
+    int64_t tried = 0, starved = 0;
+    for (const packed *p = corpus; p < corpus + n_corpus; p++) {
+        number = p - corpus;
+        starved += starve(p);
+        for (int64_t k = 0; k <= p->n_ints + p->n_reals + 1; k++, tried++) { /* too short by k, or too long by one */
+            int64_t ints = k < p->n_ints ? k : p->n_ints, reals = k < p->n_ints ? p->n_reals : k - p->n_ints;
+            if (reals == p->n_reals && ints == p->n_ints)
+                continue;
+            packed whole = splice(p, p->n_ints, p->n_reals, p, p->n_ints - 1, 0); /* so that too long can be read */
+            packed damaged = splice(&whole, ints, reals, p, p->n_ints, p->n_reals);
+            check(!mt_network_new(damaged.ints, ints, damaged.reals, reals), "a network of another length was taken");
+            free_packed(&damaged);
+            free_packed(&whole);
+        }
+        for (int64_t k = 0; k < p->n_ints; k++)
+            for (int j = 0; j < 3; j++, tried++) {
+                packed damaged = copy_of(p);
+                damaged.ints[k] = WRONG[j];
+                check(!mt_network_new(damaged.ints, p->n_ints, damaged.reals, p->n_reals), "a wrong int was taken");
+                free_packed(&damaged);
+            }
+    }
+    printf("refused, one by one: %" PRId64 ", for want of memory: %" PRId64 "\n", tried, starved);
+}
+
 static void report(void)
 {
     printf("networks kept %" PRId64 ", refused %" PRId64 "\n", kept, refused);
@@ -491,15 +609,17 @@ static void report(void)
 
 int main(int argc, char **argv)
 {
-    if (argc < 4 || argc > 5) {
-        fprintf(stderr, "usage: fuzz CORPUS SEED COUNT [FIRST]\n");
+    if (argc != 2 && argc != 4 && argc != 5) {
+        fprintf(stderr, "usage: fuzz CORPUS [SEED COUNT [FIRST]]\n");
         return 2;
     }
-    seed = strtoll(argv[2], NULL, 10);
-    int64_t count = strtoll(argv[3], NULL, 10), first = argc > 4 ? strtoll(argv[4], NULL, 10) : 0;
+    seed = argc > 2 ? strtoll(argv[2], NULL, 10) : 0;
+    int64_t count = argc > 2 ? strtoll(argv[3], NULL, 10) : 0, first = argc > 4 ? strtoll(argv[4], NULL, 10) : 0;
     signal(SIGALRM, hangs);
     signal(SIGABRT, aborts); /* sanitizers abort where they are told to: abort_on_error=1 */
     read_corpus(argv[1]);
+    if (argc == 2)
+        sweep();
     for (number = first; number < first + count; number++) {
         state = (uint64_t)seed * 0x100000001b3u + (uint64_t)number;
         chance();
@@ -510,6 +630,7 @@ int main(int argc, char **argv)
     for (int64_t k = 0; k < n_corpus; k++)
         free_packed(corpus + k);
     free(corpus);
-    report();
+    if (count)
+        report();
     return 0;
 }
