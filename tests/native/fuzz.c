@@ -528,12 +528,12 @@ static int without_memory(const mt_network *w, sizes z, int which)
     return 0;
 }
 
-/* A thousand points, closer than the steps of a tube of the first species alone: where a long step damps a fast
+/* Three hundred points, closer than the steps of a tube of the first species alone: where a long step damps a fast
  * transient the points are reached by steps of their own. */
 static void profile(const mt_network *w, sizes z)
 {
     severity = 0.0;
-    mt_tubes t = {.n = 1, .m = 1000};
+    mt_tubes t = {.n = 1, .m = 300};
     double *feed = keep_block(z.species, sizeof *feed);
     for (int64_t i = 0; i < z.species; i++)
         feed[i] = i ? 0.0 : 30.786;
