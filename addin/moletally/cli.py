@@ -166,13 +166,16 @@ def _reasons_told() -> Iterator[None]:
 
 @main.command()
 def functions() -> None:
-    """Print the table of worksheet functions."""
+    """Print the table of worksheet functions, and what computes them here."""
+    from moletally.sheet.engine import engine_in_use
+
     for function in FUNCTIONS.values():
         click.echo(f"{function.signature}\n    {function.summary}")
         for argument in function.arguments:
             optional = " (optional)" if argument.optional else ""
             click.echo(f"      {argument.name:10} {argument.help}{optional}")
         click.echo(f"    Result: {function.result}\n")
+    click.echo(f"Computed by the {engine_in_use()}.")
 
 
 def _collect_seldom() -> None:

@@ -8,6 +8,8 @@ import openpyxl
 import pytest
 from books import RANGE, near, recalc, run, tank, write
 
+from moletally.kernel.engine import engine_name, using
+
 
 def settings_book(tmp_path):
     def fill(book, sheet):
@@ -109,4 +111,11 @@ def test_the_installed_command_answers(tmp_path):
         [sys.executable, "-m", "moletally", "recalc", str(path)], capture_output=True, text=True, check=False
     )
     assert done.returncode == 0, done.stderr
-    assert "MOLE_CSTR" in run("functions").output
+
+
+def test_the_table_of_functions_ends_with_what_computes_them():
+    said = run("functions").output
+    assert "MOLE_CSTR" in said
+    assert said.endswith(f"Computed by the {engine_name()}.\n")
+    with using("reference"):
+        assert run("functions").output.endswith("Computed by the reference engine (numpy).\n")

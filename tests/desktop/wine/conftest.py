@@ -39,6 +39,13 @@ class Windows:
     def executable(self) -> str:
         return self.path(self.folder / "py" / "python.exe")
 
+    @property
+    def library(self) -> Path:
+        """The compiled kernel."""
+        return (
+            self.folder / "py" / "Lib" / "site-packages" / "moletally" / "kernel" / "compiled" / "_kernel.dll"
+        )
+
     @staticmethod
     def path(file: Path) -> str:
         """A file of this machine as Windows names it."""

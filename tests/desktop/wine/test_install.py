@@ -104,6 +104,7 @@ def test_installed_looked_at_and_taken_away_without_trace(user, registry):
         "kernel",
     ):
         assert re.search(rf"^ok +{link}: ", said, re.MULTILINE), said
+    assert re.search(r"^ok +kernel: compiled engine \(C\), numpy \d+\.\d+\.\d+$", said, re.MULTILINE), said
     code, said = user.excel("uninstall")
     assert code == 0
     assert "removed our entry from the trusted locations of Excel 16.0" in said
@@ -163,6 +164,19 @@ def test_status_names_the_broken_link_and_its_mend(user, old, new, link, mend):
     code, said = user.excel("status")
     assert code == 1
     assert re.search(rf"^broken +{link}: .*\n +-> .*{re.escape(mend)}", said, re.MULTILINE), said
+
+
+def test_a_library_that_is_gone_is_told_and_numpy_answers(user):
+    user.excel("install")
+    library = user.windows.library
+    aside = library.rename(library.with_suffix(".aside"))
+    try:
+        code, said = user.excel("status")
+    finally:
+        aside.rename(library)
+    assert code == 0, said
+    told = r"^ok +kernel: reference engine \(numpy\), numpy [\d.]+: right but slower, .*\n +-> .*--force-reinstall"
+    assert re.search(told, said, re.MULTILINE), said
 
 
 HOLD = """

@@ -34,6 +34,11 @@ for name in {NEEDED!r}:
         found[name] = str(getattr(module, "__version__", "there"))
     except Exception as error:
         found[name] = "! " + " ".join(str(error).split())
+try:
+    from moletally.sheet.engine import engine_in_use
+    found["engine"] = engine_in_use()
+except Exception as error:
+    found["engine"] = "! " + " ".join(str(error).split())
 with open(sys.argv[1], "w", encoding="utf-8") as answer:
     json.dump(found, answer)
 """
@@ -44,7 +49,7 @@ class Link:
     """A link of the chain.
 
     state : True if it holds, False if it is broken, None if that can't be told
-    mend : what to do if it does not hold; "" where another link has to be mended first
+    mend : what to do if it does not hold or could do better; "" where another link has to be mended first
     """
 
     name: str
@@ -206,11 +211,18 @@ def _dll(found: Settings, file: str, name: str) -> Link:
 
 
 def _kernel(imports: dict[str, str]) -> Link:
+    """What computes: the compiled library, or numpy in its place, as right but slower."""
     if not imports:
         return Link("kernel", None, NOT_TRIED)
-    version = imports["numpy"]
-    holds = not version.startswith("! ")
-    return Link("kernel", holds, f"numpy {version}" if holds else "none", "" if holds else REINSTALL)
+    engine, version = imports["engine"], imports["numpy"]
+    if engine.startswith("! "):
+        return Link("kernel", False, f"none: {engine.removeprefix('! ')}", REINSTALL)
+    found = f"{engine}, numpy {version}"
+    if not engine.startswith("compiled"):
+        return Link(
+            "kernel", True, f"{found}: right but slower, the compiled kernel can't be loaded", REINSTALL
+        )
+    return Link("kernel", True, found)
 
 
 def _imports(python: str) -> dict[str, str]:

@@ -15,6 +15,7 @@ from xlwings.conversion import Accessor, Pipeline
 import moletally
 from moletally.hosts.windows.values import argument, exact, has_currency, marked, variants
 from moletally.sheet.cells import OMITTED, Argument
+from moletally.sheet.engine import engine_in_use
 from moletally.sheet.functions import FUNCTIONS, Function, call
 from moletally.sheet.outcome import Outcome
 
@@ -92,7 +93,7 @@ def about() -> list[list[str]]:
     return [
         ["moletally", moletally.__version__],
         ["Python", f"{sys.version.split()[0]} ({sys.executable})"],
-        ["kernel", f"numpy {numpy.__version__}"],
+        ["kernel", f"{engine_in_use()}, numpy {numpy.__version__}"],
         ["xlwings", str(xw.__version__)],
         ["process", str(os.getpid())],
     ]
