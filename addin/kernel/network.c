@@ -10,6 +10,7 @@
 
 #define MOST 100000       /* of anything: far above a workbook's needs, far below overflow of a product */
 #define MOST_SPECIES 1000 /* matrices are stored dense */
+#define MOST_ROOM ((int64_t)1 << 27) /* doubles of a desk: derivatives take parameters times registers of them */
 
 typedef struct {
     const int32_t *i, *i_end;
@@ -305,6 +306,8 @@ int desk_open(desk *d, const network *w, int64_t extra)
     int64_t need = 2 * (int64_t)w->laws.registers + F + entries + R + w->nets + S + 2 * cuts + w->steady.n +
                    w->moving.n + 3 * S * S + (21 + 60) * S + whole + sums + 2 * S + w->plan.lower_start[S] + w->plan.upper_start[S] + 2 * w->n_totals + 64 + extra;
     memset(d, 0, sizeof *d);
+    if (need > MOST_ROOM) /* systems that promise more than they have would let it be filled until they end us */
+        return 0;
     d->net = w;
     d->memory = malloc((size_t)need * sizeof(double));
     d->pivots = malloc((size_t)(S + 1) * sizeof(int32_t));

@@ -22,7 +22,7 @@ from moletally.reactors.solve import MEMORY
 from moletally.sheet.functions import call
 
 sys.path.insert(0, str(Path(__file__).parent / "client"))
-import kernel as alone
+import alone
 
 RANDOM_TANKS, RANDOM_TUBES = 300, 60
 WELL_CONDITIONED = 1e3
@@ -93,9 +93,9 @@ def told(windows, asked, tmp_path_factory):
     assert done.returncode == 0, (done.stdout + done.stderr)[-3000:]
     with np.load(folder / "told.npz") as archive:
         there = {name: archive[name] for name in archive.files}
-    assert str(there.pop("file")).endswith("_kernel.dll")
+    assert str(there.pop("library")).endswith("_kernel.dll")
     here = alone.play(asked)
-    assert str(here.pop("file")).endswith("_kernel.so")
+    assert str(here.pop("library")).endswith("_kernel.so")
     assert there.keys() == here.keys()
     return there, here
 

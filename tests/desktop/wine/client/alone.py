@@ -1,4 +1,4 @@
-"""The compiled kernel alone, with numpy and nothing else of ours but its binding: kernel.py ASKED.npz TOLD.npz
+"""The compiled kernel alone, with numpy and nothing else of ours but its binding: alone.py ASKED.npz TOLD.npz
 
 ASKED: by job number, the network as two flat arrays and the arrays of its cases; `tubes` names the jobs that
 are tubes. TOLD: what came back. Runs in Windows Python; the tests call `play` on Linux for the same jobs.
@@ -16,11 +16,11 @@ IN = {"feed", "tau", "T", "p", "start", "fed", "scale", "asked"}
 
 def play(asked):
     """Answers by job number and name; asked: arrays by the same."""
-    jobs, told = {}, {"file": np.array(str(FILE))}
+    jobs, told = {}, {"library": np.array(str(FILE))}
     for key in asked:
         if "/" in key:
             job, name = key.split("/")
-            jobs.setdefault(int(job), {})[name] = np.ascontiguousarray(asked[key])
+            jobs.setdefault(int(job), {})[name] = np.asarray(asked[key], order="C")
     for number, job in jobs.items():
         for name, array in solve(job).items():
             told[f"{number}/{name}"] = array
