@@ -547,6 +547,25 @@ static void profile(const mt_network *w, sizes z)
     drop_blocks();
 }
 
+/* A hundred thousand parameters that nothing reads: their derivatives ask for more than a machine has. */
+static void ask_too_much(const packed *p)
+{
+    packed large = copy_of(p);
+    sizes z = {p->ints[2], p->ints[4], large.ints[6] = 100000};
+    mt_network *w = mt_network_new(large.ints, large.n_ints, large.reals, large.n_reals);
+    if (w) { /* else it has instructions, whose registers are others now */
+        mt_slopes s = {.n = 1};
+        s.feed = s.outlet = numbers(z.species, -3, 2), s.tau = s.T = temperatures(1), s.p = numbers(z.parameters, 0, 1);
+        s.slope = keep_block(z.species * (z.species + 2 + z.parameters), sizeof(double));
+        s.status = keep_block(1, sizeof(int32_t));
+        check(mt_tube_slopes(w, &s) == MT_NO_MEMORY && mt_tank_slopes(w, &s) == MT_NO_MEMORY, "too much was taken");
+        memset(s.slope, 0, blocks[n_blocks - 2].size), s.status[0] = 0; /* nothing was written: nothing to digest */
+        drop_blocks();
+    }
+    free_packed(&large);
+    mt_network_free(w);
+}
+
 static int64_t starve(const packed *p)
 {
     mt_network *w = NULL;
@@ -573,6 +592,7 @@ static void sweep(void)
     for (const packed *p = corpus; p < corpus + n_corpus; p++) {
         number = p - corpus;
         starved += starve(p);
+        ask_too_much(p);
         for (int64_t k = 0; k <= p->n_ints + p->n_reals + 1; k++, tried++) { /* too short by k, or too long by one */
             int64_t ints = k < p->n_ints ? k : p->n_ints, reals = k < p->n_ints ? p->n_reals : k - p->n_ints;
             if (reals == p->n_reals && ints == p->n_ints)
