@@ -355,18 +355,18 @@ static void leave(void *self)
     free(s);
 }
 
-mt_again *mt_tank_again(const mt_network *w, const mt_tanks *tank)
+mt_again *mt_tank_again(const mt_network *w, const mt_tanks *one)
 {
-    if (!w || !tank || tank->n != 1 || !is_complete(w, tank))
+    if (!w || !one || one->n != 1 || !is_complete(w, one))
         return NULL;
     seat *s = calloc(1, sizeof *s);
     if (!s)
         return NULL;
-    s->all = *tank;
+    s->all = *one;
     if (!desk_open(&s->d, w, 0)) {
         leave(s);
         return NULL;
     }
     open_job(&s->j, &s->d, &s->all);
-    return keep_vessel(w, s, (vessel){again, leave, tank->feed, tank->T, tank->p});
+    return keep_vessel(w, s, (vessel){again, leave, one->feed, one->T, one->p});
 }
