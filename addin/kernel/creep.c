@@ -17,8 +17,20 @@
 #define MOST_GROWTH 3.0
 #define MOST_SHRINK 0.2
 #define LOOK_EVERY 10 /* steps between two looks for the state ahead */
+#define BEGIN 1e-6    /* depths of the cut: where Newton's method begins */
 #define NEARBY 1e-2   /* relative distance at which it is reached, but for traces */
 #define NEARBY_TRACE 1e-9
+
+/* Where Newton's method begins: at c, but for species far below the depth at which their laws are cut, from
+ * where it would take too many steps up to where supply holds them. */
+static void begin_at(const desk *d, const tank *t, const double *c, double *out)
+{
+    memcpy(out, c, (size_t)d->net->species * sizeof *c);
+    for (int k = 0; k < t->laws.rule->n; k++) {
+        double *x = out + t->laws.rule->species[k], least = BEGIN * t->laws.depth[k];
+        *x = *x > least ? *x : least;
+    }
+}
 
 /* `after`: c after an implicit step of size h; returns whether there is such a step. */
 static int euler(desk *d, const tank *t, const double *c, double h, double *mixed, double *after, int *iterations)
@@ -28,8 +40,8 @@ static int euler(desk *d, const tank *t, const double *c, double h, double *mixe
     for (int i = 0; i < S; i++)
         mixed[i] = (c[i] / h + t->feed[i] / t->tau) / rate;
     tank step = {t->laws, mixed, 1.0 / rate, t->nothing};
-    memcpy(after, c, (size_t)S * sizeof *c);
-    return newton(d, &step, after, 30, iterations);
+    begin_at(d, &step, c, after);
+    return newton(d, &step, after, 60, iterations);
 }
 
 static int is_near(const double *ahead, const double *now, int S, double largest)
@@ -67,7 +79,7 @@ int creep(desk *d, const tank *t, double *c, int *iterations)
             }
         }
         if (step % LOOK_EVERY == 0 || time > LAST * t->tau) {
-            memcpy(after, c, (size_t)S * sizeof *c);
+            begin_at(d, t, c, after);
             if (newton(d, t, after, 60, iterations) && is_near(after, c, S, largest)) {
                 memcpy(c, after, (size_t)S * sizeof *c);
                 found = 1;

@@ -260,3 +260,8 @@ def test_a_proven_tank_takes_few_iterations() -> None:
     assert result.unique[0]
     assert result.iterations[0] <= 8
     assert result.residual[0] < 1e-14
+
+
+@pytest.mark.parametrize("tau", [np.nan, -1.0])
+def test_a_time_that_is_none_is_refused(tau: float) -> None:
+    assert tank(network("A B", ["A -> B : k*A"], "k"), (2, 0), tau, 0.1).status[0] == Status.NOT_FINITE

@@ -258,3 +258,8 @@ def test_many_cases_are_what_each_is_alone() -> None:
 def test_a_plain_tube_takes_few_steps() -> None:
     result = tube(network("A B C", ["A + B -> C : 0.8*A*B"]), (1, 1.5, 0), 5)
     assert result.steps[0] <= 30
+
+
+@pytest.mark.parametrize("tau", [np.nan, -1.0])
+def test_a_time_that_is_none_is_refused(tau: float) -> None:
+    assert tube(network("A B", ["A -> B : k*A"], "k"), (2, 0), tau, 0.1).status[0] == Status.NOT_FINITE

@@ -72,6 +72,8 @@ def solve_tanks(
         if len(running):
             unique[running] = structure.unique
             answers.put(running, _group(model, structure, _at(cases, running)))
+    no_time = ~(tau >= 0)  # nan, or less than none
+    answers.status[no_time], answers.c[no_time] = Status.NOT_FINITE, np.nan
     return _result(unique, answers)
 
 

@@ -18,6 +18,7 @@ TRACE = 1e-12  # of the largest concentration: below it a species may change as 
 FIRST, LAST = 1e-9, 100.0  # residence times: first step, and when to stop
 MOST_GROWTH, MOST_SHRINK = 3.0, 0.2
 LOOK_EVERY = 10  # steps between two looks for the state ahead
+BEGIN = 1e-6  # depths of the cut: where Newton's method begins
 NEARBY = 1e-2  # relative distance at which it is reached, but for traces
 NEARBY_TRACE = 1e-9  # of the largest concentration
 
@@ -36,7 +37,7 @@ def creep(tanks: Tanks, c: Floats) -> tuple[Floats, int]:
         if size <= 1.0 or h < 1e-30 * tau:
             t, trend, now = t + h, (new - now) / h, new
         if step % LOOK_EVERY == 0 or t > LAST * tau:
-            ahead = newton(tanks, now)
+            ahead = newton(tanks, _beginning(tanks, now))
             iterations += int(ahead.iterations[0])
             near = np.abs(ahead.c - now) <= NEARBY * ahead.c + NEARBY_TRACE * largest
             if ahead.settled[0] and near.all():
@@ -50,7 +51,17 @@ def _euler(tanks: Tanks, c: Floats, h: float) -> tuple[Floats, int]:
     tau = float(tanks.tau[0])
     rate = 1.0 / h + 1.0 / tau
     mixed = (c / h + tanks.feed / tau) / rate
-    roots = newton(
-        Tanks(tanks.laws, tanks.coefficients, mixed, np.array([1.0 / rate]), tanks.nothing), c, most=30
-    )
+    step = Tanks(tanks.laws, tanks.coefficients, mixed, np.array([1.0 / rate]), tanks.nothing)
+    roots = newton(step, _beginning(tanks, c))
     return (roots.c if roots.settled[0] else np.full_like(c, np.nan)), int(roots.iterations[0])
+
+
+def _beginning(tanks: Tanks, c: Floats) -> Floats:
+    """Where Newton's method begins: at c, but for species far below the depth at which their laws are cut.
+
+    From there it would take too many steps up to where supply holds them.
+    """
+    out = c.copy()
+    edged = tanks.laws.edged
+    out[:, edged] = np.maximum(c[:, edged], BEGIN * tanks.laws.depth)
+    return out

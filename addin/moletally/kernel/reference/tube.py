@@ -159,7 +159,7 @@ class _Run:
             (lost, Status.INVARIANT),
             (negative, Status.NEGATIVE),
             (~np.isfinite(self.points).all(axis=2), Status.NOT_CONVERGED),
-            (self._undefined(c), Status.NOT_FINITE),
+            (self._undefined(c) | ~(self.asked >= 0), Status.NOT_FINITE),
             (self.asked > self.endless_from[:, None], Status.UNBOUNDED_AT_ZERO),
         ):
             self.status[bad] = status
