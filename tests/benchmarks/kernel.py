@@ -6,9 +6,11 @@ Nothing is asserted: machines differ, ratios less so. docs/performance.md explai
 """
 
 import argparse
+import gc
 import warnings
 
 import numpy as np
+import sheets
 from kernel_batches import batches
 from kernel_book import book
 from kernel_floor import floor
@@ -30,6 +32,9 @@ def main(quick: bool) -> None:
     book(60 if quick else 10_000, 1 if quick else 3)
     reference_solvers(tolerances, seconds)
     floor(seconds)
+    print()
+    gc.set_threshold(200_000, 50, 100)  # as the command does
+    sheets.book(100 if quick else 10_000)
 
 
 if __name__ == "__main__":

@@ -13,12 +13,11 @@ import numpy as np
 from measure import amount, in_turn
 from problems import PROBLEMS, Problem, error
 
-from moletally.kernel.again import TankAgain
+from moletally.kernel.again import TankAgain, TubeAgain
 from moletally.kernel.cases import How, TankAnswers, TubeAnswers
 from moletally.kernel.compiled.library import Tanks, Tubes, library
 from moletally.kernel.compiled.network import network_of
 from moletally.kernel.structure import structures
-from moletally.kernel.tube import solve_tubes
 
 __all__ = ["floor"]
 
@@ -61,7 +60,9 @@ def _compiled(compiler: str, symbol: str, folder: str) -> ctypes.CDLL:
 
     library_file = Path(folder, f"{symbol}.so")
     sources = [str(HERE / "floor.c"), f"-D{symbol}", f"-I{KERNEL}"]
-    subprocess.run([compiler, *FLAGS, "-fvisibility=default", *sources, "-lm", "-o", str(library_file)], check=True)
+    subprocess.run(
+        [compiler, *FLAGS, "-fvisibility=default", *sources, "-lm", "-o", str(library_file)], check=True
+    )
     found = ctypes.CDLL(str(library_file))
     pointer, real, whole = ctypes.c_void_p, ctypes.c_double, ctypes.c_int64
     found.floor_tanks.restype = found.floor_tubes.restype = whole
@@ -92,7 +93,12 @@ class _Both:
     def _many(self, n: int, tau: float) -> dict[str, np.ndarray]:
         rng = np.random.default_rng(1)
         feed = np.repeat(self.problem.feed[None], n, axis=0)
-        return {"feed": feed, "tau": tau * rng.uniform(0.8, 1.2, n), "T": np.full(n, T), "p": np.zeros((n, 0))}
+        return {
+            "feed": feed,
+            "tau": tau * rng.uniform(0.8, 1.2, n),
+            "T": np.full(n, T),
+            "p": np.zeros((n, 0)),
+        }
 
     def tanks(self) -> _Pairs:
         n, p = 500, self.problem
@@ -144,13 +150,13 @@ class _Both:
         hard_inside(), soft_inside()
         assert not out.status.any()
         assert max(map(error, c, out.c[:, 0])) < 1e-7
-        rows, one = (p.feed[None], np.array([p.tubes[0]]), np.array([T]), NONE), np.empty(len(p.feed))
-        hard, feed, where = self.hard.floor_tubes, _at(p.feed), (_at(rows[1]), *control, _at(one))
+        tau, one = np.array([p.tubes[0]]), np.empty(len(p.feed))
+        hard, feed, where = self.hard.floor_tubes, _at(p.feed), (_at(tau), *control, _at(one))
 
-        def hard_outside(_kept: object = (rows, one)) -> int:
+        def hard_outside(_kept: object = (tau, one)) -> int:
             return hard(1, feed, *where)
 
-        return _Pairs(n, (hard_inside, soft_inside), (hard_outside, lambda: solve_tubes(p.model, *rows)))
+        return _Pairs(n, (hard_inside, soft_inside), (hard_outside, TubeAgain(p.model, p.feed, p.tubes[0], T, NONE[0]).solve))
 
 
 def _at(array: np.ndarray) -> int:

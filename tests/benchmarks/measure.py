@@ -8,6 +8,7 @@ from typing import NamedTuple
 __all__ = ["HEAD", "Times", "amount", "in_turn", "line", "median_of"]
 
 Work = Callable[[], object]
+UNITS = (("s", 1.0), ("ms", 1e-3), ("µs", 1e-6))
 BLOCK = 2e-4  # s: calls shorter than that are timed several at a time
 HEAD = "| work | ours | scipy as a user writes it | ratio | target | remarks |\n|---|---|---|---|---|---|"
 
@@ -53,9 +54,7 @@ def _timed(work: Work, repeats: int) -> float:
 
 def amount(seconds: float) -> str:
     """A time to three digits, in the unit that suits it."""
-    for unit, size in (("s", 1.0), ("ms", 1e-3), ("µs", 1e-6)):
-        if seconds >= size:
-            break
+    unit, size = next((u for u in UNITS if seconds >= u[1]), UNITS[-1])
     value = seconds / size
     return f"{value:.3g} {unit}" if value < 1000 else f"{value:.0f} {unit}"
 

@@ -6,7 +6,12 @@ import numpy as np
 from scipy.integrate import solve_ivp
 from scipy.optimize import fsolve
 
-__all__ = ["Change", "as_arrays", "as_expressions", "chain_rates", "fsolved", "integrated", "law_text"]
+__all__ = [
+    "Change", "as_arrays", "as_expressions", "chain_rates", "fsolved", "integrated", "law_text", "plain_tank",
+    "plain_tube",
+]  # fmt: skip
+
+RTOL, ATOL = 1e-9, 1e-12  # of LSODA on the chain: gives about 1e-8
 
 Change = Callable[[np.ndarray], np.ndarray]
 
@@ -85,3 +90,13 @@ def chain_rates(species: int) -> Change:
         return r @ nu
 
     return change
+
+
+def plain_tank(change: Change, feed: np.ndarray, tau: float) -> np.ndarray:
+    """A tank of the chain, from its feed."""
+    return fsolved(change, feed, tau, feed)[0]
+
+
+def plain_tube(change: Change, feed: np.ndarray, tau: float) -> np.ndarray:
+    """A tube of the chain."""
+    return integrated(change, feed, tau, RTOL, ATOL)

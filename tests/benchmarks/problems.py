@@ -16,7 +16,8 @@ from plain import Change, as_arrays, as_expressions, fsolved, law_text
 from scipy.integrate import solve_ivp
 
 TESTS = Path(__file__).parents[1]
-sys.path += [str(TESTS / "kernel"), str(TESTS / "external")]
+sys.path.append(str(TESTS / "kernel"))
+sys.path.append(str(TESTS / "external"))
 
 from external_stiff import EIGHT, HIRES, POLLU_TABLE, TWENTY
 from kernel_cases import network
