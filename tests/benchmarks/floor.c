@@ -16,7 +16,6 @@
 #define MOST_FALL 0.1
 #define SAFETY 0.9
 #define MOST_SHRINK 0.1
-#define MOST_GROWTH 6.0
 #define LEAST 1e-25 /* of the largest concentration */
 #define EACH for (int i = 0; i < S; i++)
 
@@ -244,8 +243,13 @@ static inline void step_stiff(const double *c, double h, double *first, double *
 }
 #endif
 
+/* Error of a step that is accepted, change that a first step may make, growth of steps: explicit, stiff. */
+typedef struct {
+    double relative[2], first_change, growth[2];
+} control;
+
 /* Follows one tube; returns the steps tried. */
-static int64_t follow(const double *feed, double tau, const double *relative, double first_change, double *out)
+static int64_t follow(const double *feed, double tau, const control *q, double *out)
 {
     double c[S], first[S], after[S], error[S], end[S], largest = 0, change = 0, made = 0, t = 0;
     int64_t steps = 0;
@@ -261,15 +265,14 @@ static int64_t follow(const double *feed, double tau, const double *relative, do
             made = fast > made ? fast : made;
     }
     made /= largest;
-    double h = first_change / (made > change ? made : change);
+    double h = q->first_change / (made > change ? made : change);
     for (; t < tau && steps < 12000; steps++) {
-        int last = t + h >= tau, order = 7;
-        double accepted = relative[0];
+        int last = t + h >= tau, stiff = 0;
         double stride = last ? tau - t : h, size = 1e-10;
         memcpy(end, first, sizeof end);
 #ifdef STIFF_FROM
         if (t >= STIFF_FROM) {
-            order = 4, accepted = relative[1];
+            stiff = 1;
             step_stiff(c, stride, end, after, error);
         } else
 #endif
@@ -277,10 +280,11 @@ static int64_t follow(const double *feed, double tau, const double *relative, do
         EACH
         {
             double there = fabs(after[i]) > fabs(c[i]) ? fabs(after[i]) : fabs(c[i]);
-            double miss = fabs(error[i]) / (LEAST * largest + accepted * there);
+            double miss = fabs(error[i]) / (LEAST * largest + q->relative[stiff] * there);
             size = miss <= size ? size : miss;
         }
-        double shrink = SAFETY * pow(size, -1.0 / (order + 1)), most = rejected && size <= 1 ? 1.0 : MOST_GROWTH;
+        double shrink = SAFETY * (stiff ? pow(size, -0.2) : 1 / sqrt(sqrt(sqrt(size))));
+        double most = rejected && size <= 1 ? 1.0 : q->growth[stiff];
         shrink = shrink > most ? most : shrink > MOST_SHRINK ? shrink : MOST_SHRINK;
         rejected = !(size <= 1);
         if (!rejected) {
@@ -294,12 +298,11 @@ static int64_t follow(const double *feed, double tau, const double *relative, do
     return steps;
 }
 
-/* n tubes; relative: error of a step, explicit and stiff. Returns the sum of all steps. */
-int64_t floor_tubes(int64_t n, const double *feed, const double *tau, const double *relative, double first_change,
-                    double *c)
+/* n tubes. Returns the sum of all steps. */
+int64_t floor_tubes(int64_t n, const double *feed, const double *tau, const control *q, double *c)
 {
     int64_t steps = 0;
     for (int64_t row = 0; row < n; row++)
-        steps += follow(feed + row * S, tau[row], relative, first_change, c + row * S);
+        steps += follow(feed + row * S, tau[row], q, c + row * S);
     return steps;
 }

@@ -24,7 +24,7 @@ from moletally.kernel.engine import engine_name
 def main(quick: bool) -> None:
     """Print the tables."""
     print(f"Kernel: {engine_name()}; numpy {np.__version__}\n\n{HEAD}")
-    seconds = 0.05 if quick else 3.0
+    seconds = 0.05 if quick else 1.5
     single_tanks(seconds)
     tolerances = single_tubes(seconds)
     batches(tolerances["P1"], seconds, 200 if quick else 10_000, 20 if quick else 1_000)

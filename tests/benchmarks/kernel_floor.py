@@ -1,6 +1,7 @@
 """The distance to the floor: the same networks as hard-coded C (floor.c), compiled with the kernel's flags."""
 
 import ctypes
+import re
 import shutil
 import subprocess
 import sys
@@ -25,8 +26,13 @@ HERE = Path(__file__).parent
 KERNEL = HERE.parents[1] / "addin" / "kernel"
 SYMBOLS = {"P1": "P1", "P2": "P2", "Langmuir–Hinshelwood": "LH", "ROBER": "ROBER"}
 T, NONE = 300.0, np.zeros((1, 0))
-# As in tube.c and stepper.c: relative error of a step (explicit, stiff), change that a first step may make.
-RELATIVE, FIRST_CHANGE = np.array([1e-8, 1e-8]), 0.01
+# What controls the steps stands in the kernel's sources; the floor has to follow them.
+CONTROL = (
+    ("tube.c", r"RELATIVE\[2\] = \{(\S+), (\S+)\};"),  # explicit, stiff
+    ("stepper.c", r"#define FIRST_CHANGE (\S+)"),
+    ("stepper.c", r"([\d.]+), step_explicit\}"),  # growth of a step
+    ("stepper.c", r"([\d.]+), step_stiff\}"),
+)
 HEAD = """
 | beside the floor | kernel in C | floor in C | ratio | kernel from Python | floor from Python | ratio |
 |---|---|---|---|---|---|---|"""
@@ -64,11 +70,19 @@ def _compiled(compiler: str, symbol: str, folder: str) -> ctypes.CDLL:
         [compiler, *FLAGS, "-fvisibility=default", *sources, "-lm", "-o", str(library_file)], check=True
     )
     found = ctypes.CDLL(str(library_file))
-    pointer, real, whole = ctypes.c_void_p, ctypes.c_double, ctypes.c_int64
+    pointer, whole = ctypes.c_void_p, ctypes.c_int64
     found.floor_tanks.restype = found.floor_tubes.restype = whole
     found.floor_tanks.argtypes = (whole, pointer, pointer, pointer)
-    found.floor_tubes.argtypes = (whole, pointer, pointer, pointer, real, pointer)
+    found.floor_tubes.argtypes = (whole, pointer, pointer, pointer, pointer)
     return found
+
+
+def _control() -> np.ndarray:
+    """The five numbers."""
+    found = [re.search(pattern, (KERNEL / name).read_text(encoding="utf-8")) for name, pattern in CONTROL]
+    if not all(found):
+        raise SystemExit("the kernel's step control has changed: mend CONTROL in kernel_floor.py and floor.c")
+    return np.array([float(x) for match in found for x in match.groups()])
 
 
 Work = Callable[[], object]
@@ -139,10 +153,10 @@ class _Both:
         out = TubeAnswers.empty(n, 1, len(p.feed))
         record = Tubes(n=n, m=1)
         _fill(record, {"asked" if k == "tau" else k: v for k, v in given.items()} | out._asdict())
-        control = _at(RELATIVE), FIRST_CHANGE
+        control = _control()
 
         def hard_inside() -> int:
-            return self.hard.floor_tubes(n, _at(given["feed"]), _at(given["tau"]), *control, _at(c))
+            return self.hard.floor_tubes(n, _at(given["feed"]), _at(given["tau"]), _at(control), _at(c))
 
         def soft_inside(_kept: object = out) -> int:
             return self.soft.mt_solve_tubes(self.network.handle, ctypes.addressof(record))
@@ -151,12 +165,16 @@ class _Both:
         assert not out.status.any()
         assert max(map(error, c, out.c[:, 0])) < 1e-7
         tau, one = np.array([p.tubes[0]]), np.empty(len(p.feed))
-        hard, feed, where = self.hard.floor_tubes, _at(p.feed), (_at(tau), *control, _at(one))
+        hard, feed, where = self.hard.floor_tubes, _at(p.feed), (_at(tau), _at(control), _at(one))
 
-        def hard_outside(_kept: object = (tau, one)) -> int:
+        def hard_outside(_kept: object = (tau, one, control)) -> int:
             return hard(1, feed, *where)
 
-        return _Pairs(n, (hard_inside, soft_inside), (hard_outside, TubeAgain(p.model, p.feed, p.tubes[0], T, NONE[0]).solve))
+        return _Pairs(
+            n,
+            (hard_inside, soft_inside),
+            (hard_outside, TubeAgain(p.model, p.feed, p.tubes[0], T, NONE[0]).solve),
+        )
 
 
 def _at(array: np.ndarray) -> int:

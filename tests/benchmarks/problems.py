@@ -15,14 +15,13 @@ import numpy as np
 from plain import Change, as_arrays, as_expressions, fsolved, law_text
 from scipy.integrate import solve_ivp
 
-TESTS = Path(__file__).parents[1]
-sys.path.append(str(TESTS / "kernel"))
-sys.path.append(str(TESTS / "external"))
+sys.path.append(str(Path(__file__).parents[1] / "kernel"))
+sys.path.append(str(Path(__file__).parents[1] / "external"))
 
 from external_stiff import EIGHT, HIRES, POLLU_TABLE, TWENTY
 from kernel_cases import network
 
-DIGITS = json.loads((TESTS / "external" / "stiff.json").read_text(encoding="utf-8"))
+DIGITS = json.loads((Path(__file__).parents[1] / "external" / "stiff.json").read_text(encoding="utf-8"))
 SEEN = 1e-13  # of the largest concentration: below that no digits are asked for
 
 
