@@ -1,5 +1,7 @@
 """Many vessels in one call, against a loop of scipy; and derivatives, against differences."""
 
+from copy import copy
+
 import numpy as np
 from kernel_single import Tolerance
 from measure import Times, in_turn, line
@@ -26,6 +28,12 @@ class _Vessels:
         self.k = np.array([0.8, 0.3]) * 10 ** rng.uniform(-spread, spread, (n, 2))
         self.tau = 2.0 * 10 ** rng.uniform(-spread, spread, n)
         self.feed = np.column_stack([rng.uniform(0.3, 3.0, (n, 2)), np.zeros((n, 2))])
+
+    def chosen(self, places: np.ndarray) -> "_Vessels":
+        """Some of them."""
+        other = copy(self)
+        other.k, other.tau, other.feed = self.k[places], self.tau[places], self.feed[places]
+        return other
 
     @property
     def rows(self) -> tuple[np.ndarray, ...]:
@@ -67,8 +75,7 @@ def _against_loop(ours, one, n: int, seconds: float) -> Times:
 
 def batches(tolerance: Tolerance, seconds: float, n_tanks: int, n_tubes: int) -> None:
     """The rows of the table."""
-    tanks, tubes = _Vessels(n_tanks, 1.0), _Vessels(n_tubes, 0.7)
-    _, rtol, atol = tolerance
+    tanks = _Vessels(n_tanks, 1.0)
     result = solve_tanks(P1, *tanks.rows)
     found = [tanks.tank(i) for i in range(n_tanks)]
     failed = sum(not says for _, says in found)
@@ -78,16 +85,26 @@ def batches(tolerance: Tolerance, seconds: float, n_tanks: int, n_tubes: int) ->
         _against_loop(lambda: solve_tanks(P1, *tanks.rows), tanks.tank, n_tanks, seconds), "≥ 80",
         f"{np.count_nonzero(result.status)} refused; fsolve: {failed} not converged, {wrong} elsewhere",
     )  # fmt: skip
+    drawn = _Vessels(2 * n_tubes, 0.7)
+    lasts = np.isnan(solve_tubes(P1, *drawn.rows).exhausted_at[:, 1])
+    lasting = drawn.chosen(np.flatnonzero(lasts)[:n_tubes])
+    mixed = drawn.chosen(np.arange(n_tubes))
+    _tubes("B lasts", "≥ 45", lasting, tolerance, seconds)
+    _tubes(f"B is used up in {np.count_nonzero(~lasts[:n_tubes])}", "≥ 45", mixed, tolerance, seconds)
+    _sensitivities(seconds, *tolerance[1:])
+
+
+def _tubes(what: str, target: str, tubes: _Vessels, tolerance: Tolerance, seconds: float) -> None:
+    n, (_, rtol, atol) = len(tubes.tau), tolerance
     result = solve_tubes(P1, *tubes.rows)
-    lost = sum(_far(tubes.tube(i, rtol, atol), result.c[i]) for i in range(n_tubes))
+    lost = sum(_far(tubes.tube(i, rtol, atol), result.c[i]) for i in range(n))
+    times = _against_loop(
+        lambda: solve_tubes(P1, *tubes.rows), lambda i: tubes.tube(i, rtol, atol), n, seconds
+    )
     line(
-        f"{n_tubes:,} tubes P1, all different, in one call",
-        _against_loop(
-            lambda: solve_tubes(P1, *tubes.rows), lambda i: tubes.tube(i, rtol, atol), n_tubes, seconds
-        ), "≥ 45",
+        f"{n:,} tubes P1, all different, in one call; {what}", times, target,
         f"{np.count_nonzero(result.status)} refused; LSODA (rtol {rtol:.0e}): {lost} elsewhere or no number",
     )  # fmt: skip
-    _sensitivities(seconds, rtol, atol)
 
 
 def _far(c: np.ndarray, other: np.ndarray) -> bool:

@@ -67,7 +67,7 @@ def loosest(p: Problem, tau: float, change: Change, method: str) -> tuple[float,
     answer, best = p.tube_outlet(tau), (np.inf, 0.0, 0.0)
     for k in range(20):
         rtol = 10.0 ** (-6 - k / 3)
-        atol = p.atol or rtol * 1e-6
+        atol = p.atol * rtol
         try:
             off = error(integrated(change, p.feed, tau, rtol, atol, method), answer)
         except ValueError:  # Radau and BDF raise on what is not finite
@@ -89,7 +89,7 @@ def single_tubes(seconds: float) -> dict[str, Tolerance]:
                 return integrated(change, p.feed, tau, rtol, atol)
 
             (style, change), (other, slower) = quicker_first(
-                p, lambda f, p=p, x=plain: x(f, 1e-8, p.atol or 1e-14)
+                p, lambda f, p=p, x=plain: x(f, 1e-8, p.atol * 1e-8)
             )
             rtol, atol, off = loosest(p, tau, change, "LSODA")
             result, again = solve_tubes(p.model, *rows), TubeAgain(p.model, p.feed, tau, 300.0, NONE[0])

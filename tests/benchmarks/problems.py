@@ -30,7 +30,7 @@ class Problem:
     """A network with a tank and tubes.
 
     tank, tubes : residence times; answers : published outlets, by residence time
-    atol : absolute tolerance that scipy is given for the tube; None: a millionth of the relative one
+    atol : absolute tolerance that scipy is given for the tube, over the relative one
     """
 
     name: str
@@ -41,7 +41,7 @@ class Problem:
     tubes: tuple[float, ...]
     tank_answer: list[str] = field(default_factory=list)
     tube_answers: dict[float, list[str]] = field(default_factory=dict)
-    atol: float | None = None
+    atol: float = 1e-6
 
     @cached_property
     def model(self):
