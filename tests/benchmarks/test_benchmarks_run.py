@@ -1,24 +1,27 @@
-"""The benchmark script runs, and its two ways agree; times are not judged."""
+"""The benchmark scripts run, and their two ways agree; times are not judged."""
 
 import subprocess
 import sys
 from pathlib import Path
 
+import pytest
 
-def test_the_script_prints_its_table():
-    script = Path(__file__).with_name("run.py")
+HERE = Path(__file__).parent
+
+
+@pytest.mark.parametrize(
+    ("script", "arguments", "rows", "words"),
+    [
+        ("run.py", ["--quick"], 13, "a column of"),  # 8 single calls, 4 tables of cases, a column
+        ("sheets.py", ["--quick"], 8, "times `import numpy`"),
+        ("kernel.py", ["--quick"], 45, "beside the floor"),  # tanks, tubes, batches, starts, books, the floor
+        ("random_networks.py", ["20", "10", "1"], 0, "wrong though called right: none"),
+    ],
+)
+def test_the_script_prints_its_tables(script, arguments, rows, words):
     done = subprocess.run(
-        [sys.executable, str(script), "--quick"], capture_output=True, text=True, check=False
+        [sys.executable, str(HERE / script), *arguments], capture_output=True, text=True, check=False
     )
     assert done.returncode == 0, done.stderr
-    assert done.stdout.count("\n| ") >= 14
-
-
-def test_the_script_about_sheets_prints_its_table():
-    script = Path(__file__).with_name("sheets.py")
-    done = subprocess.run(
-        [sys.executable, str(script), "--quick"], capture_output=True, text=True, check=False
-    )
-    assert done.returncode == 0, done.stderr
-    assert "times `import numpy`" in done.stdout
-    assert done.stdout.count("\n| ") == 8
+    assert words in done.stdout
+    assert sum(text.startswith("| ") for text in done.stdout.splitlines()) >= rows
