@@ -187,6 +187,7 @@ typedef struct {
     double tau, nothing;
 } tank;
 int newton(desk *d, const tank *t, double *c, int most, int *iterations);
+int vouch(desk *d, const tank *t, const double *c, const uint8_t *gone, double *residual, double *error);
 int polish(desk *d, const tank *t, double *c, const uint8_t *gone, double *residual, double *condition,
            double *error);
 void tank_matrix(desk *d, const tank *t, const double *c, double *f, double *terms, double *matrix);

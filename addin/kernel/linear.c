@@ -339,7 +339,9 @@ void solve(const desk *d, double *b)
  *
  * Then every eigenvalue of the matrix itself has a positive real part (A. Berman, R. J. Plemmons,
  * Nonnegative Matrices in the Mathematical Sciences, 1994, chapter 6): a proof of stability at the price of
- * one elimination, where eigenvalues cost twenty times as much. Uses the desk's factors.
+ * one elimination, where eigenvalues cost twenty times as much. Afterwards `solve` solves with that matrix: no
+ * entry of its inverse is smaller than the size of the same entry of the true one (A. M. Ostrowski, Comment.
+ * Math. Helv. 10 (1937) 69).
  */
 int is_m_matrix(desk *d, const double *matrix)
 {
@@ -356,5 +358,7 @@ int is_m_matrix(desk *d, const double *matrix)
         if (!(d->diagonal[i] > 0 && d->diagonal[i] * least < 1.0 && matrix[(ptrdiff_t)i * S + i] > 0))
             return 0;
     }
+    pack(d);
+    d->dense = 0;
     return 1;
 }

@@ -65,7 +65,7 @@ typedef struct {
     uint8_t *faded;      /* (N) what was there at the start only has been washed out: not solved */
     uint8_t *exhausted;  /* (N, S) used up by laws of order zero */
     double *residual;    /* (N) over the sum of a balance's terms */
-    double *condition;   /* (N) */
+    double *condition;   /* (N), or NULL: not asked for, which saves a fifth of the time */
     double *error;       /* (N) estimated relative error of an outlet, before it was judged */
     double *root;        /* (N, S) the outlet as it was before it was judged */
     int32_t *iterations, *work; /* (N) */

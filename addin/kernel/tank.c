@@ -162,30 +162,41 @@ static int totals_lost(const job *j, const double *c)
     return 0;
 }
 
+/* How right a root is, and what a disturbance does there: MT_OK, MT_UNSTABLE or MT_OSCILLATES. */
+static int judge(job *j)
+{
+    desk *d = j->d;
+    int unstable, known = 0;
+    double rate, swing, unused, *c = j->c;
+    if (j->all->how == MT_CHECK_ONLY) {
+        memcpy(j->f, c, (size_t)d->net->species * sizeof *c);
+        polish(d, &j->t, j->f, j->gone, &j->residual, &j->condition, &unused);
+    } else {
+        mark_gone(j, c, j->gone);
+        if (!j->all->condition && vouch(d, &j->t, c, j->gone, &j->residual, &j->error))
+            return MT_OK;
+        known = polish(d, &j->t, c, j->gone, &j->residual, &j->condition, &j->error);
+    }
+    growth(d, &j->t, c, known, &rate, &swing, &unstable);
+    return !unstable ? MT_OK : swing > 0 ? MT_OSCILLATES : MT_UNSTABLE;
+}
+
 /* Polishes a root and checks it: the last check that fails is the status, as in the reference engine. */
 static void settle(job *j)
 {
     desk *d = j->d;
     const network *w = d->net;
-    int S = w->species, unstable, known, status = MT_OK;
-    double rate, swing, *c = j->c;
-    if (j->all->how != MT_CHECK_ONLY) {
-        mark_gone(j, c, j->gone);
-        known = polish(d, &j->t, c, j->gone, &j->residual, &j->condition, &j->error);
-    } else {
-        double unused;
-        known = 0;
-        polish(d, &j->t, memcpy(j->f, c, (size_t)S * sizeof *c), j->gone, &j->residual, &j->condition, &unused);
-    }
+    int S = w->species, status = MT_OK;
+    double *c = j->c;
+    int moves = judge(j);
     for (int i = 0; i < S; i++)
         j->all->root[j->row * w->all + w->present[i]] = c[i];
-    growth(d, &j->t, c, known, &rate, &swing, &unstable);
     if (!(j->error <= BELIEVED))
         status = MT_ILL_CONDITIONED;
     if (!(j->residual <= CLOSED))
         status = MT_RESIDUAL;
-    if (unstable)
-        status = swing > 0 ? MT_OSCILLATES : MT_UNSTABLE;
+    if (moves != MT_OK)
+        status = moves;
     if (!w->unique && j->all->how != MT_FROM_GUESS &&
         invaded(d, j->all->T[j->row], w->laws.parameters ? j->all->p + j->row * w->laws.parameters : NULL, c, j->t.tau))
         status = MT_UNSTABLE;
@@ -237,7 +248,9 @@ static void store(job *j)
     }
     a->status[row] = j->out.status;
     a->faded[row] = (uint8_t)j->out.faded;
-    a->residual[row] = j->residual, a->condition[row] = j->condition, a->error[row] = j->error;
+    a->residual[row] = j->residual, a->error[row] = j->error;
+    if (a->condition)
+        a->condition[row] = j->condition;
     a->iterations[row] = j->out.iterations;
     a->work[row] = (int32_t)(j->d->work < INT32_MAX ? j->d->work : INT32_MAX);
 }
@@ -305,7 +318,7 @@ static void solve_one(job *j, int64_t row)
 static int is_complete(const network *w, const mt_tanks *a)
 {
     return a->how >= MT_FROM_FEED && a->how <= MT_CHECK_ONLY && a->feed && a->tau && a->T && (a->p || !w->laws.parameters) &&
-           a->c && a->status && a->from_start && a->faded && a->exhausted && a->residual && a->condition && a->error &&
+           a->c && a->status && a->from_start && a->faded && a->exhausted && a->residual && a->error &&
            a->root && a->iterations && a->work;
 }
 

@@ -54,9 +54,9 @@ class CompiledEngine:
 
     def tank_again(self, structure: Structure, cases: TankCases, out: TankAnswers, how: How) -> Again:
         """Solves one tank anew at each call, from arrays to arrays whose addresses are taken once."""
-        return self._again(
-            self._library.mt_tank_again, structure, Tanks(n=1, how=how), _tank_rows(cases, out)
-        )
+        rows = _tank_rows(cases, out) | {"condition": None}  # a search has no use for it
+        out.condition[:] = np.nan
+        return self._again(self._library.mt_tank_again, structure, Tanks(n=1, how=how), rows)
 
     def tube_again(self, structure: Structure, cases: TankCases, out: TubeAnswers) -> Again:
         """The same for a tube."""
