@@ -54,9 +54,9 @@ typedef struct {
     int n, length;
     int32_t *program;             /* pivot by pivot, row operations as places in the matrix */
     int32_t *order;               /* (n) pivots */
-    int32_t *lower_start, *lower; /* (n + 1) by pivot in order; rows below it */
-    int32_t *upper_start, *upper; /* (n + 1) by pivot in order; columns right of it */
-    int32_t *lower_column, *upper_row;
+    int n_lower, n_upper;
+    int32_t *lower, *lower_column; /* (n_lower) rows and columns in the order of substitution */
+    int32_t *upper, *upper_column; /* (n_upper) */
     int32_t *lower_at, *upper_at; /* their places in the matrix */
     int32_t *row_start, *column;  /* (n + 1) the pattern itself */
     int32_t *memory;

@@ -111,20 +111,24 @@ static void list_pattern(const uint8_t *mark, int S, int32_t *start, int32_t *co
     start[S] = at;
 }
 
+/* Both factors column by column: what one column takes from many unknowns is independent work, what a row
+ * gathers from many is a chain of additions. */
 static void list_factors(elimination *p, const uint8_t *mark, const int32_t *rank)
 {
     int S = p->n, low = 0, up = 0;
     for (int step = 0; step < S; step++) {
         int k = p->order[step];
-        p->lower_start[step] = low, p->upper_start[step] = up;
-        for (int i = 0; i < S; i++) {
+        for (int i = 0; i < S; i++)
             if (rank[i] > step && mark[(size_t)i * S + k])
                 p->lower_at[low] = i * S + k, p->lower_column[low] = k, p->lower[low++] = i;
-            if (rank[i] > step && mark[(size_t)k * S + i])
-                p->upper_at[up] = k * S + i, p->upper_row[up] = k, p->upper[up++] = i;
-        }
     }
-    p->lower_start[S] = low, p->upper_start[S] = up;
+    for (int step = S - 1; step >= 0; step--) {
+        int k = p->order[step];
+        for (int i = 0; i < S; i++)
+            if (rank[i] < step && mark[(size_t)i * S + k])
+                p->upper_at[up] = i * S + k, p->upper_column[up] = k, p->upper[up++] = i;
+    }
+    p->n_lower = low, p->n_upper = up;
 }
 
 int plan_elimination(elimination *p, const network *w)
@@ -146,22 +150,20 @@ int plan_elimination(elimination *p, const network *w)
             int64_t length = write_program(mark, order, rank, S, NULL);
             int with_fill = count(mark, (int64_t)places);
             p->memory = length > INT32_MAX ? NULL
-                                           : malloc(((size_t)length + 4 * (size_t)S + 3 + 6 * (size_t)with_fill +
+                                           : malloc(((size_t)length + 2 * (size_t)S + 1 + 6 * (size_t)with_fill +
                                                      (size_t)filled) * sizeof *p->memory);
             if (p->memory) {
                 p->length = (int)length;
                 p->program = p->memory;
                 p->order = p->program + length;
-                p->lower_start = p->order + S;
-                p->upper_start = p->lower_start + S + 1;
-                p->row_start = p->upper_start + S + 1;
+                p->row_start = p->order + S;
                 p->lower = p->row_start + S + 1;
                 p->upper = p->lower + with_fill;
                 p->lower_at = p->upper + with_fill;
                 p->upper_at = p->lower_at + with_fill;
                 p->lower_column = p->upper_at + with_fill;
-                p->upper_row = p->lower_column + with_fill;
-                p->column = p->upper_row + with_fill;
+                p->upper_column = p->lower_column + with_fill;
+                p->column = p->upper_column + with_fill;
                 memcpy(p->order, order, (size_t)S * sizeof *order);
                 write_program(mark, order, rank, S, p->program);
                 list_factors(p, mark, rank);
@@ -205,10 +207,10 @@ static void eliminate(const elimination *p, double *m, double *diagonal)
 static void pack(desk *d)
 {
     const elimination *p = &d->net->plan;
-    for (int e = 0; e < p->lower_start[p->n]; e++)
+    for (int e = 0; e < p->n_lower; e++)
         d->lower[e] = d->factors[p->lower_at[e]];
-    for (int e = 0; e < p->upper_start[p->n]; e++)
-        d->upper[e] = d->factors[p->upper_at[e]] * d->diagonal[p->upper_row[e]];
+    for (int e = 0; e < p->n_upper; e++)
+        d->upper[e] = d->factors[p->upper_at[e]] * d->diagonal[p->upper[e]];
 }
 
 /* One flat loop each way: nested loops of two or three rounds are mostly mispredicted branches. */
@@ -216,13 +218,12 @@ static void solve_sparse(const desk *d, double *restrict b)
 {
     const elimination *p = &d->net->plan;
     const double *restrict lower = d->lower, *restrict upper = d->upper, *restrict diagonal = d->diagonal;
-    int S = p->n, n_lower = p->lower_start[S], n_upper = p->upper_start[S];
-    for (int e = 0; e < n_lower; e++)
+    for (int e = 0; e < p->n_lower; e++)
         b[p->lower[e]] -= lower[e] * b[p->lower_column[e]];
-    for (int i = 0; i < S; i++)
+    for (int i = 0; i < p->n; i++)
         b[i] *= diagonal[i];
-    for (int e = 0; e < n_upper; e++)
-        b[p->upper_row[n_upper - 1 - e]] -= upper[n_upper - 1 - e] * b[p->upper[n_upper - 1 - e]];
+    for (int e = 0; e < p->n_upper; e++)
+        b[p->upper[e]] -= upper[e] * b[p->upper_column[e]];
 }
 
 /* Rows and columns scaled (unknowns relative to `size`, rows to their largest entry), rows exchanged. */

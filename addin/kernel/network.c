@@ -304,7 +304,7 @@ int desk_open(desk *d, const network *w, int64_t extra)
     int64_t whole = w->has_whole ? 2 * (int64_t)w->whole.registers + (int64_t)w->absent * (w->absent + 4) : 0;
     int64_t sums = (int64_t)w->n_totals * (w->n_totals + 6) + S;
     int64_t need = 2 * (int64_t)w->laws.registers + F + entries + R + w->nets + S + 2 * cuts + w->steady.n +
-                   w->moving.n + 3 * S * S + (21 + 60) * S + whole + sums + 2 * S + w->plan.lower_start[S] + w->plan.upper_start[S] + 2 * w->n_totals + 64 + extra;
+                   w->moving.n + 3 * S * S + (21 + 60) * S + whole + sums + 2 * S + w->plan.n_lower + w->plan.n_upper + 2 * w->n_totals + 64 + extra;
     memset(d, 0, sizeof *d);
     if (need > MOST_ROOM) /* systems that promise more than they have would let it be filled until they end us */
         return 0;
@@ -333,8 +333,8 @@ int desk_open(desk *d, const network *w, int64_t extra)
     d->factors = take(d, S * S);
     d->diagonal = take(d, S);
     d->probe = take(d, S);
-    d->lower = take(d, w->plan.lower_start[S]);
-    d->upper = take(d, w->plan.upper_start[S]);
+    d->lower = take(d, w->plan.n_lower);
+    d->upper = take(d, w->plan.n_upper);
     d->known_at = take(d, S);
     d->known_slope = take(d, S);
     d->row_scale = take(d, S);
