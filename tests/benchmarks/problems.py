@@ -53,7 +53,7 @@ class Problem:
         """dc/dt as a user writes it, in two styles."""
         laws = [law_text(text.split(":")[1]) for text in self.reactions]
         names, nu = self.species.split(), self.model.stoichiometry
-        return {"expressions": as_expressions(names, laws, nu), "arrays": as_arrays(names, laws, nu)}
+        return {"floats": as_expressions(names, laws, nu), "arrays": as_arrays(names, laws, nu)}
 
     @property
     def guess(self) -> np.ndarray:
@@ -69,7 +69,7 @@ class Problem:
         """The tank's answer."""
         if self.tank_answer:
             return np.array([float(x) for x in self.tank_answer])
-        rates = self.styles["expressions"].of_scalars
+        rates = self.styles["floats"].of_scalars
 
         def balance(*c: mpmath.mpf) -> list[mpmath.mpf]:
             return [f - x + self.tank * g for f, x, g in zip(self.feed.tolist(), c, rates(*c), strict=True)]

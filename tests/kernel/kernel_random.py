@@ -7,6 +7,7 @@ adsorption term, a fifth can run backwards.
 
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import count
 
 import mpmath
 import numpy as np
@@ -16,6 +17,7 @@ from scipy.integrate import solve_ivp
 from moletally.kernel.program import Model
 
 DIGITS, MORE_DIGITS = 60, 250
+MOST_EVALUATIONS = 20_000  # of the laws, for the judge of a tube
 
 
 @dataclass(frozen=True)
@@ -117,13 +119,21 @@ def tube_error(case: Case, c: np.ndarray) -> float | None:
     laws of order one and more: beside a root of nothing the judge itself is lost.
     """
 
+    evaluations = count()
+
     def change(_: float, now: np.ndarray) -> np.ndarray:
+        if next(evaluations) > MOST_EVALUATIONS:
+            raise OverflowError
         there = np.maximum(now, 0.0).tolist()
         return sum(term.nu * term.rate(there, float) for term in case.terms)
 
-    run = solve_ivp(
-        change, (0.0, case.tau), case.feed, method="Radau", rtol=1e-10, atol=1e-14 * case.feed.max()
-    )
+    try:
+        with np.errstate(all="ignore"):
+            run = solve_ivp(
+                change, (0.0, case.tau), case.feed, method="Radau", rtol=1e-10, atol=1e-14 * case.feed.max()
+            )
+    except (OverflowError, ValueError):  # too long, or its differences for a Jacobian run away
+        return None
     if run.status != 0:
         return None
     exact = run.y[:, -1]
