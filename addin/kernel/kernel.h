@@ -218,6 +218,7 @@ typedef struct {
     const tolerance *tolerance;
     const totals *totals;
     double t, h, late, stiff_steps, reviewed, largest;
+    double h_before, size_before; /* of the last accepted explicit step */
     double *c, *before, *after, *error; /* (species) */
     double from, stride;                /* the last accepted step: its start and size, from `before` */
     int mode, active, status, steps, most_steps, rejected, last_mode;

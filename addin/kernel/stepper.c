@@ -135,6 +135,7 @@ void stepper_start(desk *d, stepper *s, const flow *f, const tolerance *o, const
         largest = fabs(c[i]) > largest ? fabs(c[i]) : largest;
     s->largest = largest > 0 ? largest : INFINITY;
     d->known = 0;
+    s->h_before = s->size_before = 1e-300; /* no step before the first: nothing is foreseen */
     s->h = first_step(d, f, c);
 }
 
@@ -214,6 +215,14 @@ int attempt(desk *d, stepper *s)
     if (!fine)
         approach_zero(d, s, h);
     s->rejected = !fine;
+    if (fine && m == &METHODS[EXPLICIT]) {
+        /* Where steps have to become shorter and shorter, towards the end of a species of fractional order, the
+         * next is foreseen to (K. Gustafsson, ACM Trans. Math. Softw. 20 (1994) 496): else every second fails. */
+        double trend = h / s->h_before, next = h * SAFETY * trend * m->root(size * size / s->size_before);
+        if (trend < 1.0 && next < s->h)
+            s->h = next;
+        s->h_before = h, s->size_before = size;
+    }
     if (fine) {
         double begun = s->t, step = h + s->late; /* time is kept to twice the digits */
         memcpy(s->before, s->c, (size_t)S * sizeof *s->c);

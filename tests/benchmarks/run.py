@@ -3,7 +3,7 @@
     python tests/benchmarks/run.py [--quick]
 
 Ratios above 1: ours is that many times faster. Nothing is asserted: machines differ, ratios less so. The
-kernel below the worksheet is in kernel.py, where the time of a book goes in sheets.py.
+kernel below the worksheet is in kernel_tables.py, where the time of a book goes in sheets.py.
 """
 
 import argparse

@@ -14,7 +14,12 @@ HERE = Path(__file__).parent
     [
         ("run.py", ["--quick"], 13, "a column of"),  # 8 single calls, 4 tables of cases, a column
         ("sheets.py", ["--quick"], 8, "times `import numpy`"),
-        ("kernel.py", ["--quick"], 45, "beside the floor"),  # tanks, tubes, batches, starts, books, the floor
+        (
+            "kernel_tables.py",
+            ["--quick"],
+            45,
+            "beside the floor",
+        ),  # tanks, tubes, batches, starts, books, the floor
         ("random_networks.py", ["20", "10", "1"], 0, "wrong though called right: none"),
     ],
 )

@@ -84,6 +84,8 @@ class Stepper:
         self.steps = np.zeros(n, dtype=np.int_)
         self.work = np.zeros(n, dtype=np.int_)
         self._stiff_steps = np.zeros(n)
+        self._h_before = np.full(n, 1e-300)  # of the last explicit step; nothing is foreseen before the first
+        self._size_before = np.full(n, 1e-300)
         self._reviewed = np.zeros(n)  # time at the last review
         self._rejected = np.zeros(n, dtype=np.bool_)
         largest = np.abs(c).max(axis=1)
@@ -143,6 +145,8 @@ class Stepper:
         if not fine.all() and len(self.flow.laws.edged):
             self._approach_zero(rows[~fine], h[~fine])
         self._rejected[rows] = ~fine
+        if method == EXPLICIT:
+            self._foresee(rows[fine], h[fine], size[fine])
         done = rows[fine]
         self._pass_time(done, h[fine])
         self.c[done] = (
@@ -165,6 +169,19 @@ class Stepper:
         with np.errstate(all="ignore"):
             left = np.where((f < 0) & (c > laws.depth[rows]), -c / f, np.inf).min(axis=1)
         self.h[rows] = np.where(left < h, AHEAD * left, self.h[rows])
+
+    def _foresee(self, rows: Ints, h: Floats, size: Floats) -> None:
+        """Where steps have to become shorter and shorter the next one is foreseen to.
+
+        Towards the end of a species of fractional order every second step would fail else. Reference:
+        K. Gustafsson, ACM Trans. Math. Softw. 20 (1994) 496.
+        """
+        trend = h / self._h_before[rows]
+        with np.errstate(all="ignore"):
+            root = (size * size / self._size_before[rows]) ** (-1.0 / (METHODS[EXPLICIT].error_order + 1))
+            ahead = h * SAFETY * trend * root
+        self.h[rows] = np.where((trend < 1.0) & (ahead < self.h[rows]), ahead, self.h[rows])
+        self._h_before[rows], self._size_before[rows] = h, size
 
     def _pass_time(self, rows: Ints, h: Floats) -> None:
         before = self.t[rows]

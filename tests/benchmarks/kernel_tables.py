@@ -1,6 +1,6 @@
 """What the compiled kernel is worth: tables of medians, ours beside scipy as a user writes it.
 
-    uv run python tests/benchmarks/kernel.py [--quick]
+    uv run python tests/benchmarks/kernel_tables.py [--quick]
 
 Nothing is asserted: machines differ, ratios less so. docs/performance.md explains the tables.
 """
