@@ -14,7 +14,9 @@
 
 #include "kernel.h"
 
-#define BACKWARD 1e-11 /* largest backward error that is taken */
+#define BACKWARD 1e-11     /* largest backward error that is taken */
+#define MOST_ORDERED 300   /* species: to look for the best order costs their number cubed */
+#define LONGEST 50000000   /* of a plan: 200 MB; a full matrix of 400 species has as much */
 
 static void mark_pattern(const network *w, uint8_t *mark)
 {
@@ -49,7 +51,7 @@ static int cheapest(const uint8_t *mark, const uint8_t *done, int S)
 static void order_pivots(uint8_t *mark, uint8_t *done, int32_t *order, int S)
 {
     for (int step = 0; step < S; step++) {
-        int k = cheapest(mark, done, S);
+        int k = S <= MOST_ORDERED ? cheapest(mark, done, S) : step;
         order[step] = k;
         done[k] = 1;
         for (int i = 0; i < S; i++)
@@ -149,7 +151,7 @@ int plan_elimination(elimination *p, const network *w)
                 rank[order[step]] = step;
             int64_t length = write_program(mark, order, rank, S, NULL);
             int with_fill = count(mark, (int64_t)places);
-            p->memory = length > INT32_MAX ? NULL
+            p->memory = length > LONGEST ? NULL
                                            : malloc(((size_t)length + 2 * (size_t)S + 1 + 6 * (size_t)with_fill +
                                                      (size_t)filled) * sizeof *p->memory);
             if (p->memory) {

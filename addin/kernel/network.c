@@ -9,7 +9,7 @@
 #include "kernel.h"
 
 #define MOST 100000       /* of anything: far above a workbook's needs, far below overflow of a product */
-#define MOST_SPECIES 1000 /* matrices are stored dense */
+#define MOST_SPECIES 3000 /* matrices are stored dense */
 #define MOST_ROOM ((int64_t)1 << 27) /* doubles of a desk: derivatives take parameters times registers of them */
 
 typedef struct {

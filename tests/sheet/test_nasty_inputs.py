@@ -344,3 +344,13 @@ def test_a_bare_residence_time_takes_the_one_time_unit_of_the_constants():
     refused(tank(mixed), "have several (h, min)", "Residence time | value | unit")
     minutes = tank(reactor=(("Residence time", 120.0, "min"),)).block
     assert [row[0] for row in minutes] == [pytest.approx(row[0], rel=1e-12) for row in tank().block]
+
+
+def test_many_species():
+    """1100 species, most of them only passing through, and a chain of 120: closed forms."""
+    fed = (("Species", "Feed"), *((f"S{i}", 1.0) for i in range(1100)))
+    one = (("Reaction", "Rate", "k"), ("S0 -> S1", "k*S0", 0.5))
+    assert call("MOLE_CSTR", [one, fed, 1.0, "S0"]).block[0][0] == pytest.approx(1 / 1.5, rel=1e-12)
+    chain = (("Reaction", "Rate", "k"), *((f"S{i} -> S{i + 1}", f"k*S{i}", 0.5) for i in range(119)))
+    fed = (("Species", "Feed"), *((f"S{i}", float(i == 0)) for i in range(120)))
+    assert call("MOLE_CSTR", [chain, fed, 1.0, "S5"]).block[0][0] == pytest.approx(0.5**5 / 1.5**6, rel=1e-11)

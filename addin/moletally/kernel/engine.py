@@ -86,7 +86,7 @@ def _choose(wanted: str) -> Engine:
         return ENGINES[wanted]()
     try:
         return _compiled()
-    except OSError:  # no library, or one that this machine refuses
+    except (OSError, AttributeError):  # no library, one that this machine refuses, or an older one
         return _reference()
 
 

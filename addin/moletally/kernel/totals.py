@@ -44,7 +44,9 @@ def conserved(nu: Floats) -> Floats:
         for other in range(len(rows)):
             factor = rows[other][i]
             if other != top and factor:
-                rows[other] = [x - factor * y for x, y in zip(rows[other], rows[top], strict=True)]
+                rows[other] = [
+                    x - factor * y if y else x for x, y in zip(rows[other], rows[top], strict=True)
+                ]
         pivots.append(i)
     free = [i for i in range(species) if i not in pivots]
     basis = np.zeros((len(free), species))

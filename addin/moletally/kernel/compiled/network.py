@@ -29,7 +29,7 @@ class Network:
             len(reals),
         )
         if not self.handle:
-            raise MemoryError("the kernel could not take this network: out of memory, or over 1000 species")
+            raise MemoryError("the kernel could not take this network: out of memory, or over 3000 species")
 
     def __del__(self) -> None:
         if getattr(self, "handle", None):
